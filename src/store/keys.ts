@@ -1,0 +1,13 @@
+/** Where things stand in a store. `message` below is the object key of the raw message without `inbound/`. */
+export const keys = {
+  desk: 'config/desk.json',
+  tokenKey: 'config/token-key',
+  inbound: 'inbound/',
+  confirmations: 'confirmations/',
+  histories: 'histories/',
+  manifest: 'model/manifest.json',
+  bases: 'model/bases/',
+  tables: 'model/tables/',
+  segments: 'model/segments/',
+  reports: 'reports/',
+} as const;
