@@ -25,6 +25,11 @@ export interface Schema {
 /** Tokens are integers below 2^40: SipHash-2-4 under the desk's secret, cut to 40 bits. Exact in a double. */
 export const tokenBits = 40;
 
+/** A token as it is shown and keyed: 10 hex digits. */
+export function tokenHex(token: number): string {
+  return token.toString(16).padStart(10, '0');
+}
+
 /** A message as the model sees it. No words in it. */
 export interface Features {
   readonly schema: string;

@@ -1,0 +1,31 @@
+import { bounds } from '../bounds.ts';
+import type { Desk } from '../desk/desk.ts';
+import type { RegionSchema, Schema, SlotSchema } from './schema.ts';
+import { slotsOf } from './slots.ts';
+import { fingerprint } from './token-hash.ts';
+
+/** Raised whenever the same message would give other features under the same desk's file: old tables are refused then. */
+export const schemaVersion = 1;
+
+/** Where tokens are drawn from, in the order of every array of regions. */
+export const regionSchemas: readonly RegionSchema[] = [
+  { id: 'subject', tokensMax: bounds.subjectTokensMax },
+  { id: 'word', tokensMax: bounds.wordTokensMax },
+  { id: 'pair', tokensMax: bounds.pairTokensMax },
+  { id: 'gram', tokensMax: bounds.gramTokensMax },
+];
+
+/** What a table of this desk counts. Queues are no part of it: opening one leaves every table valid.
+ *  Throws TallypostError `token-key-length`. */
+export function schemaOf(desk: Desk, tokenKey: Uint8Array): Schema {
+  return schemaFrom(
+    slotsOf(desk).map((each) => each.schema),
+    tokenKey,
+  );
+}
+
+/** The id is a keyed fingerprint, so that tables hashed under another key are refused and the key stays unknown. */
+export function schemaFrom(slots: readonly SlotSchema[], tokenKey: Uint8Array): Schema {
+  const body = { version: schemaVersion, slots, regions: regionSchemas };
+  return { id: fingerprint(tokenKey, JSON.stringify(body)), ...body };
+}
