@@ -1,8 +1,8 @@
 import { TallypostError } from '../errors.ts';
+import { tokenHex } from '../features/schema.ts';
 import type { Counts, RegionCounts } from './counts.ts';
 import { nameOf } from './fold.ts';
 import { recordBands } from './record.ts';
-import { hexOf } from './sparse.ts';
 
 /** Refuses a table that cannot have come from counting: Σ_v d_jc(v) = c_c for every slot j and column c, cells between 1
  *  and c_c, totals no smaller than the sum of their cells, everything ascending and finite.
@@ -80,14 +80,14 @@ function checkRegion(region: RegionCounts, counts: Counts, broken: Broken): void
   const sums = new Float64Array(columns.length);
   for (let i = 0; i < tokens.length; i++) {
     if (i > 0 && !(tokens[i - 1] < tokens[i]))
-      throw broken(`token ${hexOf(tokens[i])}`, 'ascending tokens', 'disorder');
-    if (!(start[i] < start[i + 1])) throw broken(`token ${hexOf(tokens[i])}`, 'at least one cell', 'none');
+      throw broken(`token ${tokenHex(tokens[i])}`, 'ascending tokens', 'disorder');
+    if (!(start[i] < start[i + 1])) throw broken(`token ${tokenHex(tokens[i])}`, 'at least one cell', 'none');
     for (let p = start[i]; p < start[i + 1]; p++) {
       const isOrdered = column[p] < columns.length && (p === start[i] || column[p - 1] < column[p]);
       if (!isOrdered)
-        throw broken(`token ${hexOf(tokens[i])}`, `ascending columns below ${columns.length}`, column[p]);
+        throw broken(`token ${tokenHex(tokens[i])}`, `ascending columns below ${columns.length}`, column[p]);
       if (!(count[p] > 0 && count[p] <= messages[column[p]])) {
-        const cell = `token ${hexOf(tokens[i])}, column ${nameOf(columns[column[p]])}`;
+        const cell = `token ${tokenHex(tokens[i])}, column ${nameOf(columns[column[p]])}`;
         throw broken(cell, `a count from 1 to the column's ${messages[column[p]]} messages`, count[p]);
       }
       sums[column[p]] += count[p];

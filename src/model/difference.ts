@@ -1,6 +1,6 @@
+import { tokenHex } from '../features/schema.ts';
 import type { CellDifference, Column, Counts, RegionCounts } from './counts.ts';
 import { nameOf } from './fold.ts';
-import { hexOf } from './sparse.ts';
 
 /** Where two tables of one schema differ, cell by cell, in the order of the table; at most `max` cells, so that two
  *  unrelated tables do not fill the memory. Empty when they are equal. */
@@ -26,7 +26,11 @@ export function diffCounts(a: Counts, b: Counts, max: number): CellDifference[] 
   }
   a.schema.regions.forEach(({ id }, g) => {
     diffRegion(a, b, g, (token, column, left, right) => {
-      note(`region ${id}, token ${hexOf(token)}, queue ${column.queue}, epoch ${column.epoch}`, left, right);
+      note(
+        `region ${id}, token ${tokenHex(token)}, queue ${column.queue}, epoch ${column.epoch}`,
+        left,
+        right,
+      );
       return found.length < max;
     });
   });

@@ -1,4 +1,5 @@
 import { TallypostError } from '../errors.ts';
+import { tokenHex } from '../features/schema.ts';
 import type { RegionCounts } from './counts.ts';
 
 /** What to do with a cell that would fall below zero: a fold refuses it, since something would be taken out that was never
@@ -58,7 +59,7 @@ export function addRegions(
       if (left <= right) sum += a.count[p++];
       if (right <= left) sum += b.count[q++];
       if (sum < 0) {
-        if (shortfall === 'refuse') throw negative(`${place}, token ${hexOf(token)}`, sum);
+        if (shortfall === 'refuse') throw negative(`${place}, token ${tokenHex(token)}`, sum);
         if (shortfall === 'zero') sum = 0;
       }
       if (sum === 0) continue;
@@ -162,11 +163,6 @@ export function indexOfToken(tokens: Float64Array, token: number): number {
     else high = guess - 1;
   }
   return -1;
-}
-
-/** A token's hash as 10 hex digits, the form in which it is shown; it tells nothing without the desk's secret. */
-export function hexOf(token: number): string {
-  return token.toString(16).padStart(10, '0');
 }
 
 export function negative(place: string, got: number): TallypostError {
