@@ -22,4 +22,32 @@ export const bounds = {
   gramTokensMax: 3072,
   /** Hashes of tokens held in memory between messages, twice this at most: about 15 MB. */
   rememberedTokensMax: 64 * 1024,
+
+  // Labelled histories (src/cli/labelled)
+  /** A JSON line holds one raw message, at worst with an escape of two characters for every line end and quote. */
+  labelledLineBytesMax: 64 * 1024 * 1024,
+  /** A CSV row holds one form; far above any text a form takes, so that an unclosed quote ends early. */
+  csvRecordCharsMax: 8 * 1024 * 1024,
+  /** Mail stores nest by year and month; deeper is a loop of links. */
+  labelledFolderDepthMax: 8,
+  /** Faults of a history that are listed one by one; the rest is only counted. */
+  faultsListedMax: 20,
+
+  // Stores (src/store)
+  /** Amazon S3 User Guide, "Naming Amazon S3 objects": 1,024 bytes of UTF-8. */
+  keyBytesMax: 1024,
+  /** Amazon S3 User Guide, "Working with object metadata": 2 KB of user metadata, keys and values. */
+  metadataBytesMax: 2048,
+  /** A streamed body comes in pieces of at most this size. */
+  streamChunkBytesMax: 256 * 1024,
+  /** Directory store: characters of an encoded key kept in one file name, 3 bytes each at worst; file systems take 255 bytes. */
+  nameUnitsMax: 80,
+  /** Directory store: ids of predecessors kept in a version's header, by which a slow writer finds that it had won. */
+  lineageMax: 16,
+  /** Directory store: times an unconditional write starts again when others write the same key. */
+  directoryAttemptsMax: 1000,
+  /** Directory store: temporary files of crashed processes are swept after this; no write takes nearly as long. */
+  temporaryAgeMsMax: 60 * 60 * 1000,
+  /** Directory store: what stands for a deleted object is swept after this; no process stalls so long between two calls. */
+  tombstoneAgeMsMax: 24 * 60 * 60 * 1000,
 } as const;
