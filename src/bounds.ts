@@ -50,4 +50,58 @@ export const bounds = {
   temporaryAgeMsMax: 60 * 60 * 1000,
   /** Directory store: what stands for a deleted object is swept after this; no process stalls so long between two calls. */
   tombstoneAgeMsMax: 24 * 60 * 60 * 1000,
+
+  // The desk's file (src/desk). A desk that needs more of any is better served by two desks.
+  /** All lists below filled with short items fit; read at every cold start. */
+  deskBytesMax: 1024 * 1024,
+  /** Ten times the largest desk measured; a score costs one addend a queue and token. */
+  queuesMax: 1000,
+  /** Shown in one line. */
+  titleCharsMax: 200,
+  /** Two months of staff time: beyond it a typing error is likelier. */
+  costMinutesMax: 100_000,
+  /** RFC 5321 section 4.5.3.1: 64 octets of local part, 255 of domain. */
+  addressCharsMax: 320,
+  /** Values of one slot: each costs a count in every column of the table. */
+  ownAddressesMax: 200,
+  domainsMax: 1000,
+  senderClassesMax: 50,
+  /** Each is one search through the text. */
+  referencesMax: 50,
+  patternCharsMax: 40,
+  formsMax: 200,
+  fieldsMax: 200,
+  fieldNameCharsMax: 100,
+  choicesMax: 200,
+  choiceCharsMax: 200,
+  /** All phrases together are looked up by their first word, so a message costs its own length. */
+  guardsMax: 200,
+  phrasesMax: 500,
+  phraseCharsMax: 200,
+  sendersMax: 1000,
+
+  // Ledger (src/ledger)
+  /** Superseded objects stay this long: longer than any delivery is retried (SQS keeps a message 14 days at most). */
+  horizonMs: 15 * 24 * 3600 * 1000,
+  /** A claim being folded by another process is left to it for this long before it is taken over: a batch takes seconds. */
+  foldPatienceMs: 20_000,
+  /** Confirmations dated further ahead than a clock can be wrong would become the newest week and age all others. */
+  confirmedAheadMsMax: 24 * 3600 * 1000,
+  /** Rounds of one batch: each ends with its segment committed, or with it voided by another process. */
+  foldRoundsMax: 6,
+  /** Attempts at one compare-and-set. With 16 writers at once and jitter, the unluckiest needed 7. */
+  writeAttemptsMax: 12,
+  /** First and longest pause between attempts; each is drawn at random up to its length. */
+  pauseMsMin: 20,
+  pauseMsMax: 2_000,
+  /** Requests of one batch under way at the same time. */
+  requestsAtOnceMax: 16,
+  /** Confirmations of one message: far above any real dispute, so that a loop between two systems ends. */
+  confirmationsPerMessageMax: 500,
+  /** Manifests and histories are small; a larger object is not ours. */
+  ledgerJsonBytesMax: 8 * 1024 * 1024,
+  /** Messages drawn from the histories for fitting: enough for stable exponents, a bounded night's work. */
+  fitSampleMax: 2_000,
+  /** Histories counted at a time by a recount. */
+  recountChunkMax: 500,
 } as const;
