@@ -5,6 +5,59 @@ export const bounds = {
   /** Entries folded in one pass: two columns each keep (token, column) below 2^40 * 2^13 = 2^53, exact in a double. */
   foldEntriesMax: 4096,
 
+  // Messages (src/message)
+  /** Header fields of a part that are kept: real ones hold a few KB; 10,000 recipients would be 300 KB. */
+  headerBytesMax: 512 * 1024,
+  /** One header field, folded lines in all: room for about 2,000 recipients. */
+  headerFieldBytesMax: 64 * 1024,
+  /** Header of a part inside a multipart; beyond it the splitter stops. */
+  partHeaderBytesMax: 256 * 1024,
+  /** Headers of all parts together: decoding their file names costs up to 1 s a megabyte. */
+  partHeadersBytesMax: 512 * 1024,
+  /** Parts of one message: mail clients make fewer than 30. */
+  partsMax: 100,
+  /** Multipart inside multipart: clients reach 5 and each forwarding as attachment adds 2; every line that looks like a
+   *  boundary is compared with the boundary of every level. */
+  partDepthMax: 20,
+  /** Encoded plain text read of one message, all parts together: 40,000 words. */
+  textBytesMax: 256 * 1024,
+  /** Encoded HTML read of one message: word processors wrap a page of text in 100 to 300 KB. */
+  htmlBytesMax: 512 * 1024,
+  /** Text before the first boundary, kept in case the boundary named is not the one used. */
+  preambleBytesMax: 256 * 1024,
+  /** Own working time of one parse, checked at each piece of 64 KB; the worst input known needs under 3 s. */
+  parseMsMax: 5000,
+  /** The raw message is split in pieces of this size, between which the deadline is checked. */
+  parsePieceBytes: 64 * 1024,
+  /** Decoded text of one message, in UTF-16 units: 10,000 words. */
+  textCharsMax: 64 * 1024,
+  /** RFC 5322 section 2.1.1: a line holds at most 998 characters. */
+  subjectCharsMax: 998,
+  /** Undecoded subject: an encoded word takes up to 4 times the characters that it holds. */
+  subjectBytesMax: 8 * 1024,
+  /** RFC 5321 section 4.5.3.1.8 asks for 100 recipients at least. */
+  recipientsMax: 100,
+  /** RFC 5321 section 4.5.3.1: 64 of local part, 255 of domain and the @ sign. */
+  addressCharsMax: 320,
+  /** RFC 5321 section 6.3: over 100 Received fields mean a loop. */
+  receivedMax: 100,
+  /** Open elements of HTML that are followed; a browser's parser flattens deeper ones too (512). */
+  htmlDepthMax: 512,
+  /** Style sheet text read of one message, and rules kept of it. */
+  styleCharsMax: 64 * 1024,
+  styleRulesMax: 500,
+  /** Value of one HTML attribute that is looked at. */
+  attributeCharsMax: 2048,
+  /** A line longer than this opens no quotation or signature. */
+  replyLineCharsMax: 500,
+  /** Defects on record of one message; beyond it they repeat. */
+  defectsMax: 50,
+  /** JSON of one form: far above what a web form takes. */
+  formBytesMax: 1024 * 1024,
+  /** Fields of one form, and characters of a field's name. */
+  formFieldsMax: 200,
+  fieldNameCharsMax: 100,
+
   // Features (src/features)
   /** Text that tokens are drawn from: about 10,000 words, far beyond any request to a desk; bounds the time of a flood. */
   featureCharsMax: 64 * 1024,
