@@ -1,12 +1,12 @@
 import { bounds } from '../bounds.ts';
 import type { Desk } from '../desk/desk.ts';
 import type { Message } from '../message/message.ts';
+import { foldText, wordsOf } from '../text/words.ts';
 import type { Features, Schema } from './schema.ts';
 import { tokenHex } from './schema.ts';
 import { schemaFrom } from './schema-of.ts';
 import { fieldValueOf, slotsOf } from './slots.ts';
 import { createTokenHash } from './token-hash.ts';
-import { foldText, wordsOf } from './words.ts';
 
 export interface Extractor {
   readonly schema: Schema;

@@ -2,9 +2,9 @@ import { getDomain } from 'tldts';
 import type { ClosedField, Desk } from '../desk/desk.ts';
 import { matcherOf } from '../desk/reference-pattern.ts';
 import type { Attachment, Message } from '../message/message.ts';
+import { foldText } from '../text/words.ts';
 import type { SlotSchema } from './schema.ts';
 import { scriptOf, scripts } from './script.ts';
-import { foldText } from './words.ts';
 
 /** What the slots read: the message, and the text that its tokens are drawn from, as written and folded. */
 export interface SlotInput {

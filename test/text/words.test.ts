@@ -1,6 +1,6 @@
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
-import { foldText, wordsOf } from '../../src/features/words.ts';
+import { foldText, wordsOf } from '../../src/text/words.ts';
 
 const words = (text: string) => wordsOf(foldText(text));
 
