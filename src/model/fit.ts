@@ -1,75 +1,81 @@
 import type { Schema } from '../features/schema.ts';
 
-/** One addend of the log posterior and how much it counts. Blocks are data: what is scored is what is listed here. */
-export interface Block {
-  /** `prior`, `slots` or `tokens`. */
-  readonly kind: 'prior' | 'slots' | 'tokens';
-  /** Slot group or region id; empty for the prior. */
-  readonly place: string;
-  /** For tokens: what a draw is. share: a token of the queue; presence: a message of the queue. */
-  readonly reading: 'share' | 'presence' | null;
-  /** For tokens: prior concentrations s averaged over by their evidence, beside the pooled rate. */
-  readonly concentrations: readonly number[];
-  /** For tokens: which contributions are summed: all, those for a queue (above 0) or those against it (below 0). */
-  readonly side: 'all' | 'for' | 'against';
-  /** Non-negative; multiplies the block's score. */
+/** One addend of the log posterior and how much it counts. Blocks are data: what is scored is what is listed. */
+export type Block = PriorBlock | SlotsBlock | TokensBlock;
+
+/** An exponent w ≥ 0 multiplies the block's score; single queues may have one of their own. */
+interface Weighted {
   readonly exponent: number;
-  /** Exponents of single queues that differ from `exponent`. */
   readonly byQueue: Readonly<Record<string, number>>;
 }
 
-/** Everything fitted from the counts: small, and kept beside them in the served table. */
+/** log P(queue) from the confirmed messages. */
+export interface PriorBlock extends Weighted {
+  readonly kind: 'prior';
+}
+
+/** The slots of one group. */
+export interface SlotsBlock extends Weighted {
+  readonly kind: 'slots';
+  readonly group: string;
+}
+
+/** One reading of one region's tokens, or a part of it. */
+export interface TokensBlock extends Weighted, Reading {
+  readonly kind: 'tokens';
+  /** Contributions summed: all; of present tokens those for a queue (above 0) or against it (below 0); of absent tokens. */
+  readonly part: 'all' | 'for' | 'against' | 'absent';
+}
+
+/** How a region's counts are turned into rates. */
+export interface Reading {
+  readonly region: string;
+  /** What a draw is: a token of the queue's messages, or a message of the queue. */
+  readonly draws: 'tokens' | 'messages';
+  /** Concentrations s of the Beta priors averaged over, each weighted by its evidence; ascending. */
+  readonly concentrations: readonly number[];
+  /** The model without dependence on the queue: one rate that is known (`fixed` at the pooled one), or one rate with the same
+   *  prior (`unknown`; a single concentration only). */
+  readonly pooledRate: 'fixed' | 'unknown';
+}
+
+/** Everything fitted from the counts: small, kept beside them in the served table. */
 export interface Fit {
   readonly version: 1;
   readonly blocks: readonly Block[];
-  /** Addend of single queues' log posterior, nats. */
+  /** Addend to single queues' log posterior, nats. */
   readonly bias: Readonly<Record<string, number>>;
-  /** Prior pseudo-count of each queue (α) and of each value of a slot (β by slot id). */
+  /** Pseudo-count of each queue. */
   readonly alpha: number;
+  /** Pseudo-count of each value, by slot id. */
   readonly beta: Readonly<Record<string, number>>;
-  /** Mean leave-one-out log loss in nats of the sample that was fitted; null for defaults. */
+  /** Mean leave-one-out log loss of the fitted sample, nats; null where nothing was fitted. */
   readonly logLoss: number | null;
   /** Messages in that sample. */
   readonly messages: number;
 }
 
-/** Where nothing is fitted yet. */
+/** What is used until there is enough to fit. Exponents: middle of those fitted on long mail and on short forms. */
 export function defaultFit(schema: Schema): Fit {
-  const groups = [...new Set(schema.slots.map((s) => s.group))];
-  const tokens = schema.regions.flatMap(({ id }) => [
-    tokenBlock(id, 'share', [100], 0.25),
-    tokenBlock(id, 'presence', [1], 0.15),
-  ]);
+  const groups = [...new Set(schema.slots.map((slot) => slot.group))];
   return {
     version: 1,
     blocks: [
-      { kind: 'prior', place: '', reading: null, concentrations: [], side: 'all', exponent: 1, byQueue: {} },
-      ...groups.map(
-        (place): Block => ({
-          kind: 'slots',
-          place,
-          reading: null,
-          concentrations: [],
-          side: 'all',
-          exponent: 0.5,
-          byQueue: {},
-        }),
-      ),
-      ...tokens,
+      { kind: 'prior', exponent: 1, byQueue: {} },
+      ...groups.map((group): SlotsBlock => ({ kind: 'slots', group, exponent: 0.5, byQueue: {} })),
+      ...schema.regions.flatMap(({ id }): TokensBlock[] => [
+        tokens({ region: id, draws: 'tokens', concentrations: [100], pooledRate: 'unknown' }, 0.25),
+        tokens({ region: id, draws: 'messages', concentrations: [1], pooledRate: 'unknown' }, 0.2),
+      ]),
     ],
     bias: {},
     alpha: 1,
-    beta: Object.fromEntries(schema.slots.map((s) => [s.id, 1])),
+    beta: Object.fromEntries(schema.slots.map((slot) => [slot.id, 1])),
     logLoss: null,
     messages: 0,
   };
 }
 
-export function tokenBlock(
-  place: string,
-  reading: 'share' | 'presence',
-  concentrations: number[],
-  exponent: number,
-): Block {
-  return { kind: 'tokens', place, reading, concentrations, side: 'all', exponent, byQueue: {} };
+function tokens(reading: Reading, exponent: number): TokensBlock {
+  return { kind: 'tokens', ...reading, part: 'all', exponent, byQueue: {} };
 }

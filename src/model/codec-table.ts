@@ -1,0 +1,44 @@
+import type { Schema } from '../features/schema.ts';
+import { ByteReader, ByteWriter, seal, unseal } from './bytes.ts';
+import { checkCounts } from './check-counts.ts';
+import { readCounts, readTokens, writeCounts, writeTokens } from './codec-counts.ts';
+import type { Fit } from './fit.ts';
+import { type ServedTable, weightUnit } from './served-table.ts';
+
+/** A served table as bytes: reference epoch, half-life, vocabulary, pruned tokens, fit as JSON, counts. Canonical. */
+export function encodeTable(table: ServedTable): Uint8Array {
+  const out = new ByteWriter();
+  out.varint(table.referenceEpoch);
+  out.float64(table.halfLifeDays ?? 0);
+  for (const size of table.vocabulary) out.varint(size);
+  for (const tokens of table.pruned) writeTokens(out, tokens);
+  out.text(JSON.stringify(table.fit));
+  writeCounts(out, table.counts, scaleOf(table.halfLifeDays));
+  return seal('table', table.counts.schema.id, out.written());
+}
+
+/** Reads what encodeTable wrote and checks the counts whole. Throws TallypostError as decodeCounts does. */
+export function decodeTable(bytes: Uint8Array, schema: Schema, place: string): ServedTable {
+  const reader = new ByteReader(unseal('table', bytes, schema.id, place), place);
+  const referenceEpoch = reader.varint();
+  const halfLife = reader.float64();
+  const halfLifeDays = halfLife > 0 ? halfLife : null;
+  const vocabulary = schema.regions.map(() => reader.varint());
+  const pruned = schema.regions.map(() => readTokens(reader));
+  const fit = readFit(reader);
+  const counts = readCounts(reader, schema, scaleOf(halfLifeDays));
+  reader.end();
+  checkCounts(counts, place);
+  return { counts, referenceEpoch, halfLifeDays, vocabulary, pruned, fit };
+}
+
+function scaleOf(halfLifeDays: number | null): number {
+  return halfLifeDays === null ? 1 : weightUnit;
+}
+
+/** The check sum was right, so these are the bytes that were written: only another version's layout can be wrong here. */
+function readFit(reader: ByteReader): Fit {
+  const fit = JSON.parse(reader.text()) as Fit;
+  if (fit.version !== 1) throw reader.broken('a fit of version 1', `version ${String(fit.version)}`);
+  return fit;
+}

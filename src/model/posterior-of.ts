@@ -1,0 +1,86 @@
+import type { Features } from '../features/schema.ts';
+import { tokenHex } from '../features/schema.ts';
+import type { Block } from './fit.ts';
+import type { EvidencePart, Posterior } from './posterior.ts';
+import { blockScores, lengthScale, priorScore, slotScore, visitContributions } from './score.ts';
+import { countTokens, type Scorer } from './scorer.ts';
+
+/** log P(queue | x) = Σ_b w_bk · score_bk + bias_k, normalised over the queues. Never changes the scorer's table.
+ *  Throws TallypostError `schema-mismatch`. */
+export function posteriorOf(scorer: Scorer, features: Features): Posterior {
+  const logProb = normalise(combine(scorer, blockScores(scorer, features)));
+  return {
+    queues: scorer.queues,
+    logProb,
+    probability: logProb.map(Math.exp),
+    ...countTokens(scorer, features),
+  };
+}
+
+/** Σ_b w_bk · score_bk + bias_k, the log posterior before normalisation; [queues]. */
+export function combine(scorer: Scorer, scores: Float64Array): Float64Array {
+  const queues = scorer.queues.length;
+  const sum = Float64Array.from(scorer.queues, (queue) => scorer.fit.bias[queue] ?? 0);
+  scorer.fit.blocks.forEach((block, b) => {
+    for (let k = 0; k < queues; k++) sum[k] += exponentOf(block, scorer.queues[k]) * scores[b * queues + k];
+  });
+  return sum;
+}
+
+export function exponentOf(block: Block, queue: string): number {
+  return block.byQueue[queue] ?? block.exponent;
+}
+
+/** Subtracts log Σ exp, so that exp sums to 1; the largest is taken out first, so that nothing overflows. */
+export function normalise(logs: Float64Array): Float64Array {
+  const top = logs.reduce((a, b) => Math.max(a, b), -Infinity);
+  const whole = top + Math.log(logs.reduce((sum, x) => sum + Math.exp(x - top), 0));
+  return logs.map((x) => x - whole);
+}
+
+/** The addends of the log posterior before normalisation: prior, slots, tokens by region, and per region the tokens that
+ *  are absent. Their sum over parts is combine(blockScores). O(tokens · queues) memory. */
+export function explainParts(scorer: Scorer, features: Features): EvidencePart[] {
+  const { queues, fit, schema } = scorer;
+  const weighed = (block: Block, score: Float64Array, scale = 1) =>
+    score.map((x, k) => exponentOf(block, queues[k]) * scale * x);
+  const parts: EvidencePart[] = [];
+  for (const block of fit.blocks) {
+    if (block.kind === 'prior') {
+      parts.push({ kind: 'prior', place: '', value: '', score: weighed(block, priorScore(scorer, null)) });
+    }
+    if (block.kind !== 'slots') continue;
+    schema.slots.forEach((slot, j) => {
+      if (slot.group !== block.group) return;
+      const score = weighed(block, slotScore(scorer, j, features.slots[j], null));
+      parts.push({ kind: 'slot', place: slot.id, value: slot.values[features.slots[j]], score });
+    });
+  }
+  if (Object.keys(fit.bias).length > 0) {
+    parts.push({
+      kind: 'bias',
+      place: '',
+      value: '',
+      score: Float64Array.from(queues, (q) => fit.bias[q] ?? 0),
+    });
+  }
+  schema.regions.forEach(({ id }, g) => {
+    const present = features.regions[g];
+    const scale = lengthScale(present.length);
+    const sums = new Map<number, Float64Array>();
+    for (const reading of scorer.readings[g]) {
+      visitContributions(scorer, g, reading, present, null, (index, token, contribution) => {
+        const sum = sums.get(token) ?? new Float64Array(queues.length);
+        weighed(fit.blocks[index], contribution, scale).forEach((x, k) => {
+          sum[k] += x;
+        });
+        sums.set(token, sum);
+      });
+    }
+    for (const [token, score] of sums) {
+      if (token < 0) parts.push({ kind: 'absent', place: id, value: '', score });
+      else parts.push({ kind: 'token', place: id, value: tokenHex(present[token]), score });
+    }
+  });
+  return parts;
+}
