@@ -142,7 +142,7 @@ export const bounds = {
   confirmedAheadMsMax: 24 * 3600 * 1000,
   /** Rounds of one batch: each ends with its segment committed, or with it voided by another process. */
   foldRoundsMax: 6,
-  /** Attempts at one compare-and-set. With 16 writers at once and jitter, the unluckiest needed 7. */
+  /** Attempts at one compare-and-set, a pause before each but the first; after that the delivery is left to be repeated. */
   writeAttemptsMax: 12,
   /** First and longest pause between attempts; each is drawn at random up to its length. */
   pauseMsMin: 20,
@@ -157,4 +157,22 @@ export const bounds = {
   fitSampleMax: 2_000,
   /** Histories counted at a time by a recount. */
   recountChunkMax: 500,
+
+  // Intake over HTTPS (src/intake)
+  /** A long letter typed into a form is under 20 KB; all fields of one submission together. */
+  intakeFormBytesMax: 64 * 1024,
+  /** Helpdesks send the whole case with its last remarks; a function URL takes 6 MB. */
+  intakeWebhookBytesMax: 256 * 1024,
+  /** A submission is one flat object. */
+  intakeJsonDepthMax: 2,
+  /** Deep enough for any case document seen in published examples; far below what exhausts a stack. */
+  intakeWebhookDepthMax: 32,
+  /** Faults listed in one problem body. */
+  intakeFaultsMax: 20,
+  /** Standard Webhooks suggests short unique ids; longer ones are not ids. */
+  webhookIdCharsMax: 256,
+  /** An object key has 1,024 bytes; the prefixes before a message's id take under 100. */
+  messageIdCharsMax: 900,
+  /** A person's name or address, a queue's name, a time. */
+  confirmationLineCharsMax: 200,
 } as const;

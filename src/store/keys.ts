@@ -9,5 +9,10 @@ export const keys = {
   bases: 'model/bases/',
   tables: 'model/tables/',
   segments: 'model/segments/',
+  absorbed: 'model/absorbed/',
+  versions: 'model/versions/',
+  orders: 'model/orders/',
   reports: 'reports/',
+  /** Ids of webhooks taken, kept a day: longer than their timestamps hold. */
+  webhookMarks: 'webhook-marks/',
 } as const;
