@@ -36,15 +36,27 @@ export interface PutOptions {
 export interface Store {
   /** Human-readable place, for messages: a directory path or `s3://bucket/prefix`. */
   readonly place: string;
-  get(key: string, options?: { readonly ifNoneMatch?: string; readonly bytesMax?: number }): Promise<GetResult>;
+  get(
+    key: string,
+    options?: { readonly ifNoneMatch?: string; readonly bytesMax?: number },
+  ): Promise<GetResult>;
   /** The body in chunks of bounded size, for large objects; null when missing. */
-  stream(key: string): Promise<{ readonly head: ObjectHead; readonly chunks: AsyncIterable<Uint8Array> } | null>;
+  stream(
+    key: string,
+  ): Promise<{ readonly head: ObjectHead; readonly chunks: AsyncIterable<Uint8Array> } | null>;
   head(key: string): Promise<ObjectHead | null>;
   put(key: string, body: Uint8Array, options?: PutOptions): Promise<PutResult>;
   /** Keys that start with `prefix`, ascending by UTF-8 bytes, after `after` when given. Metadata and content type are not read. */
-  list(prefix: string, options?: { readonly after?: string }): AsyncIterable<Pick<ObjectHead, 'key' | 'etag' | 'bytes' | 'modifiedAtMs'>>;
+  list(
+    prefix: string,
+    options?: { readonly after?: string },
+  ): AsyncIterable<Pick<ObjectHead, 'key' | 'etag' | 'bytes' | 'modifiedAtMs'>>;
   /** Deletes; no error when there is nothing. */
   delete(key: string): Promise<void>;
   /** Replaces all user metadata, keeping body and content type; `lost` when the object changed since `ifMatch`; `missing` when gone. */
-  replaceMetadata(key: string, metadata: Readonly<Record<string, string>>, options: { readonly ifMatch: string }): Promise<PutResult | { readonly kind: 'missing' }>;
+  replaceMetadata(
+    key: string,
+    metadata: Readonly<Record<string, string>>,
+    options: { readonly ifMatch: string },
+  ): Promise<PutResult | { readonly kind: 'missing' }>;
 }
