@@ -1,8 +1,8 @@
 import { getDomain } from 'tldts';
+import { choiceOf, isUnder } from '../desk/comparison.ts';
 import type { ClosedField, Desk } from '../desk/desk.ts';
 import { matcherOf } from '../desk/reference-pattern.ts';
 import type { Attachment, Message } from '../message/message.ts';
-import { foldText } from '../text/words.ts';
 import type { SlotSchema } from './schema.ts';
 import { scriptOf, scripts } from './script.ts';
 
@@ -88,14 +88,11 @@ export function fieldSlotId(field: ClosedField): string {
   return `field:${field.form}/${field.field}`;
 }
 
-/** The declared value that a form's field holds, compared folded; `missing` when the message is not of that form or
- *  the field is empty, `other` when the value is not declared. */
+/** What a form's field holds: a declared choice, `other`, or `missing` (also when the message is not of that form). */
 export function fieldValueOf(message: Message, field: ClosedField): string {
-  if (message.form === null || message.form.id !== field.form) return 'missing';
-  const given = Object.hasOwn(message.form.fields, field.field) ? message.form.fields[field.field]! : '';
-  const folded = foldText(given).trim();
-  if (folded === '') return 'missing';
-  return field.values.find((value) => foldText(value).trim() === folded) ?? 'other';
+  const { form } = message;
+  if (form === null || form.id !== field.form || !Object.hasOwn(form.fields, field.field)) return 'missing';
+  return choiceOf(field, form.fields[field.field]);
 }
 
 function slot(
@@ -134,10 +131,6 @@ function senderClassIn(desk: Desk): (domain: string) => string {
 
 function registrableOf(domain: string): string | null {
   return getDomain(domain, { allowPrivateDomains: true });
-}
-
-function isUnder(domain: string, suffix: string): boolean {
-  return domain === suffix || domain.endsWith(`.${suffix}`);
 }
 
 function originOf(message: Message): string {

@@ -36,6 +36,11 @@ export function wordsOf(folded: string): string[] {
   return words;
 }
 
+/** Whether folded text holds letters of a script without spaces: its words depend on their neighbours. */
+export function isUnspaced(folded: string): boolean {
+  return firstUnspaced.test(folded) && folded.search(unspaced) !== -1;
+}
+
 function pushUnspaced(run: string, words: string[]): void {
   let from = 0;
   for (const match of run.matchAll(unspaced)) {
