@@ -2,6 +2,7 @@ import { type Schema, tokenBits } from '../features/schema.ts';
 import { ByteReader, ByteWriter, seal, unseal } from './bytes.ts';
 import { checkCounts } from './check-counts.ts';
 import type { Column, Counts, RegionCounts } from './counts.ts';
+import { recordBands } from './record.ts';
 
 /** The counts as bytes: canonical (equal counts give equal bytes), checksummed, about 5 bytes a token and 1 to 2 a cell.
  *
@@ -43,7 +44,7 @@ export function readCounts(reader: ByteReader, schema: Schema, scale: number): C
   const messages = read(columns.length);
   const slots = schema.slots.map((slot) => read(slot.values.length * columns.length));
   const regions = schema.regions.map(() => readRegion(reader, columns.length, scale));
-  const record = read(reader.length(), 1);
+  const record = read(recordBands * 4, 1);
   return { schema, columns, messages, slots, regions, record };
 }
 
@@ -118,7 +119,6 @@ function readRegion(reader: ByteReader, columns: number, scale: number): RegionC
     for (let isLast = false; !isLast; p++) {
       if (p === cells) throw reader.broken(`${cells} cells`, 'more');
       const code = reader.varint();
-      // A skip beyond 2^30 wraps; it is far out of range either way and refused below.
       next += Math.floor(code / 4);
       if (next >= columns) throw reader.broken(`a column below ${columns}`, String(next));
       column[p] = next++;
