@@ -4,6 +4,9 @@ export const bounds = {
   rawBytesMax: 40 * 1024 * 1024,
   /** Entries folded in one pass: two columns each keep (token, column) below 2^40 * 2^13 = 2^53, exact in a double. */
   foldEntriesMax: 4096,
+  /** Messages whose leave-one-out scores exponents are fitted to: a dozen exponents are known well from a few thousand, and
+   *  more would only make compaction slower. */
+  fitMessagesMax: 4000,
 
   // Messages (src/message)
   /** Header fields of a part that are kept: real ones hold a few KB; 10,000 recipients would be 300 KB. */
@@ -153,6 +156,10 @@ export const bounds = {
   confirmationsPerMessageMax: 500,
   /** Manifests and histories are small; a larger object is not ours. */
   ledgerJsonBytesMax: 8 * 1024 * 1024,
+  /** Ids of absorbed segments, 23 bytes each: one batch a minute for five years. */
+  absorbedBytesMax: 64 * 1024 * 1024,
+  /** Bases, tables and segments are read whole; a base of a million confirmations takes a tenth of it. */
+  modelBytesMax: 512 * 1024 * 1024,
   /** Messages drawn from the histories for fitting: enough for stable exponents, a bounded night's work. */
   fitSampleMax: 2_000,
   /** Histories counted at a time by a recount. */
