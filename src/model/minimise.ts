@@ -16,7 +16,7 @@ export function minimiseNonNegative(
   start: Float64Array,
   stepsMax: number,
 ): { readonly w: Float64Array; readonly value: number; readonly steps: number } {
-  let w = start.map((x) => Math.max(0, x));
+  let w: Float64Array = start.map((x) => Math.max(0, x));
   let point = evaluate(w);
   for (let steps = 0; ; steps++) {
     const free = [...w.keys()].filter((i) => w[i] > 0 || point.gradient[i] < 0);
