@@ -116,8 +116,6 @@ export const bounds = {
   titleCharsMax: 200,
   /** Two months of staff time: beyond it a typing error is likelier. */
   costMinutesMax: 100_000,
-  /** RFC 5321 section 4.5.3.1: 64 octets of local part, 255 of domain. */
-  addressCharsMax: 320,
   /** Values of one slot: each costs a count in every column of the table. */
   ownAddressesMax: 200,
   domainsMax: 1000,
@@ -127,7 +125,6 @@ export const bounds = {
   patternCharsMax: 40,
   formsMax: 200,
   fieldsMax: 200,
-  fieldNameCharsMax: 100,
   choicesMax: 200,
   choiceCharsMax: 200,
   /** All phrases together are looked up by their first word, so a message costs its own length. */
