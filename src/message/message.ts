@@ -16,7 +16,17 @@ export interface Address {
 }
 
 export type AttachmentKind =
-  | 'image' | 'pdf' | 'document' | 'sheet' | 'archive' | 'calendar' | 'audio' | 'video' | 'message' | 'signature' | 'other';
+  | 'image'
+  | 'pdf'
+  | 'document'
+  | 'sheet'
+  | 'archive'
+  | 'calendar'
+  | 'audio'
+  | 'video'
+  | 'message'
+  | 'signature'
+  | 'other';
 
 export interface Attachment {
   readonly kind: AttachmentKind;

@@ -1,0 +1,84 @@
+import { bounds } from '../bounds.ts';
+import { type Declarations, readDeclarations } from './style.ts';
+
+/** Rules of a style sheet that can hide text: those with one simple selector (`p`, `.c`, `#i`, `p.c`). */
+export class StyleSheet {
+  readonly #rules = new Map<string, Declarations>();
+
+  get isEmpty(): boolean {
+    return this.#rules.size === 0;
+  }
+
+  /** Adds the rules of a `<style>` element. Rules inside @media count for narrow screens or print, not for the text.
+   *  A scanner over braces: linear, no backtracking. */
+  read(css: string): void {
+    const text = stripCssComments(css.slice(0, bounds.styleCharsMax));
+    let at = 0;
+    while (at < text.length) {
+      const open = text.indexOf('{', at);
+      if (open < 0) return;
+      const head = text.slice(at, open).trim();
+      if (/^@(?:media|supports|layer|container)\b/.test(head)) {
+        at = endOfBlock(text, open);
+        continue;
+      }
+      const close = text.indexOf('}', open);
+      const body = text.slice(open + 1, close < 0 ? text.length : close);
+      if (!head.startsWith('@')) this.#add(head, body);
+      if (close < 0) return;
+      at = close + 1;
+    }
+  }
+
+  /** Declarations for an element, later rules over earlier ones within tag, class and id, in that order. */
+  match(tag: string, classes: readonly string[], id: string, into: Declarations): void {
+    this.#apply(tag, into);
+    for (const name of classes) {
+      this.#apply(`.${name}`, into);
+      this.#apply(`${tag}.${name}`, into);
+    }
+    if (id !== '') this.#apply(`#${id}`, into);
+  }
+
+  #apply(selector: string, into: Declarations): void {
+    const rule = this.#rules.get(selector);
+    if (rule !== undefined) for (const [name, value] of rule) into.set(name, value);
+  }
+
+  #add(selectors: string, body: string): void {
+    const declarations = readDeclarations(body);
+    for (const selector of selectors.split(',')) {
+      const name = selector.trim();
+      if (!/^(?:[a-z][a-z0-9]*)?(?:[.#][\w-]+)?$/i.test(name) || name === '') continue;
+      const known = this.#rules.get(name);
+      if (known !== undefined) for (const [key, value] of declarations) known.set(key, value);
+      else if (this.#rules.size < bounds.styleRulesMax) this.#rules.set(name, new Map(declarations));
+    }
+  }
+}
+
+function stripCssComments(css: string): string {
+  if (!css.includes('/*')) return css.replace(/<!--|-->/g, '');
+  const kept: string[] = [];
+  let at = 0;
+  for (;;) {
+    const open = css.indexOf('/*', at);
+    if (open < 0) break;
+    kept.push(css.slice(at, open));
+    const close = css.indexOf('*/', open + 2);
+    at = close < 0 ? css.length : close + 2;
+  }
+  kept.push(css.slice(at));
+  return kept.join(' ').replace(/<!--|-->/g, '');
+}
+
+/** Index after the brace that closes the block opened at `open`. */
+function endOfBlock(text: string, open: number): number {
+  let depth = 0;
+  for (let i = open; i < text.length; i++) {
+    const unit = text.charCodeAt(i);
+    if (unit === 0x7b) depth++;
+    else if (unit === 0x7d && --depth === 0) return i + 1;
+  }
+  return text.length;
+}
