@@ -179,4 +179,18 @@ export const bounds = {
   messageIdCharsMax: 900,
   /** A person's name or address, a queue's name, a time. */
   confirmationLineCharsMax: 200,
+
+  // Handlers (src/handlers)
+  /** The desk's file is looked at again after this: a change acts within a minute, a batch costs no request for it. */
+  deskFreshMs: 60_000,
+  /** A message is replaced while it is being routed only by a person's hand: once more is enough, and one to spare. */
+  routeAttemptsMax: 3,
+  /** A confirmation takes 200 bytes; of what is no confirmation so much is kept beside the reason. */
+  dropBytesMax: 64 * 1024,
+  /** Drops folded in one batch, and so in one segment, by compaction and by the local runner. */
+  foldDropsMax: 500,
+  /** Lambda's retries of a drop's own event end well before: five deliveries of six timeouts each. */
+  leftDropAgeMs: 60 * 60 * 1000,
+  /** Drops taken up by one compaction; the rest is left to the next. */
+  leftDropsMax: 20_000,
 } as const;

@@ -19,7 +19,12 @@ export const knownShareMin = 0.1;
 /** A message of fewer tokens than this says too little for a share of them to mean anything. */
 const tokensMin = 8;
 /** Defects after which there is nothing to route by. */
-const nothingRead: ReadonlySet<string> = new Set(['message-empty', 'form-unreadable', 'source-failed']);
+const nothingRead: ReadonlySet<string> = new Set([
+  'message-empty',
+  'form-unreadable',
+  'source-failed',
+  'parser-failed',
+]);
 const loopDefects: ReadonlySet<string> = new Set(['loop-suspected']);
 /** Defects that explain why there is no text. */
 const textUnreadable: ReadonlySet<string> = new Set(['text-unreadable', 'encrypted', 'opaque-signed']);

@@ -20,6 +20,7 @@ export type HoldReason =
   | 'unsure'
   | 'unlike-anything-seen'
   | 'nothing-learned'
+  | 'model-unusable'
   | 'unreadable'
   | 'suspect'
   | 'automatic';

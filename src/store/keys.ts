@@ -4,6 +4,8 @@ export const keys = {
   tokenKey: 'config/token-key',
   inbound: 'inbound/',
   confirmations: 'confirmations/',
+  /** Drops that can never be folded, each with what is wrong with it. Not below `confirmations/`, whose events fold. */
+  refusedConfirmations: 'confirmations-refused/',
   histories: 'histories/',
   manifest: 'model/manifest.json',
   bases: 'model/bases/',

@@ -1,0 +1,4 @@
+import { createCompactHandler } from '../compact.ts';
+import { handlerFrom } from './environment.ts';
+
+export const handler = handlerFrom(createCompactHandler);

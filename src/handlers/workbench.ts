@@ -1,0 +1,59 @@
+import type { Desk } from '../desk/desk.ts';
+import { TallypostError } from '../errors.ts';
+import { createExtractor, type Extractor } from '../features/extractor.ts';
+import { type LoadedModel, loadModel } from '../ledger/load-model.ts';
+import { createScorer } from '../model/scorer.ts';
+import { emptyTable } from '../model/served-table.ts';
+import type { HandlerDeps } from './handler-deps.ts';
+import { faultMembers } from './log-fault.ts';
+
+/** A desk with its extractor. */
+export interface OpenDesk {
+  readonly desk: Desk;
+  readonly extractor: Extractor;
+}
+
+/** Keeps the extractor, with the hashes that it remembers, as long as the desk's file is the same. */
+export function createDeskOpener(deps: HandlerDeps): () => Promise<OpenDesk> {
+  let open: OpenDesk | null = null;
+  return async () => {
+    const desk = await deps.loadDesk();
+    if (open?.desk !== desk) open = { desk, extractor: createExtractor(desk, deps.tokenKey) };
+    return open;
+  };
+}
+
+/** What messages are routed with. */
+export interface Workbench extends OpenDesk {
+  readonly model: Pick<LoadedModel, 'version' | 'scorer' | 'isEmpty' | 'fault'>;
+}
+
+/** Opens the desk with the model as last committed, kept between calls: one conditional read when nothing changed.
+ *  A model that is damaged does not stop routing: the last good one of this process serves on, and without one guards
+ *  still act and everything else is held. Failures of the store reject: they may pass. */
+export function createWorkbenchOpener(deps: HandlerDeps): () => Promise<Workbench> {
+  const openDesk = createDeskOpener(deps);
+  let cached: { readonly schema: string; readonly model: LoadedModel } | null = null;
+  return async () => {
+    const { desk, extractor } = await openDesk();
+    const { schema } = extractor;
+    const last = cached?.schema === schema.id ? cached.model : null;
+    try {
+      const model = await loadModel(deps.world, desk, schema, last);
+      cached = { schema: schema.id, model };
+      if (model.fault !== null) deps.log({ level: 'error', event: 'model-unusable', ...model.fault });
+      return { desk: model.desk, extractor, model };
+    } catch (error) {
+      if (!(error instanceof TallypostError) || error.code.startsWith('store-')) throw error;
+      deps.log({ level: 'error', event: 'model-unusable', ...faultMembers(error) });
+      if (last !== null) return { desk: last.desk, extractor, model: last };
+      return { desk, extractor, model: nothingLearned(desk, extractor, error) };
+    }
+  };
+}
+
+function nothingLearned(desk: Desk, { schema }: Extractor, fault: TallypostError): Workbench['model'] {
+  const queues = desk.queues.map((queue) => queue.id);
+  const scorer = createScorer(emptyTable(schema), [], queues, desk.halfLifeDays);
+  return { version: 0, scorer, isEmpty: true, fault };
+}
