@@ -1,5 +1,6 @@
 import * as z from 'zod/mini';
 import { bounds } from '../bounds.ts';
+import { intakeFile } from './intake-file.ts';
 
 /** The desk's file as it is written: the shape of single members. What holds between members is checked in
  *  desk-rules.ts. Every check's message says what was expected, to stand behind `expected`. */
@@ -168,6 +169,7 @@ export const deskFile = z.strictObject({
     ),
     'Confirmations lose half their weight in this many days; null: never.',
   ),
+  intake: described(z.optional(intakeFile), 'Forms and confirmations over HTTPS; without it none are taken.'),
 });
 
 export type DeskFile = z.infer<typeof deskFile>;

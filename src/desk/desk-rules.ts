@@ -39,6 +39,7 @@ export function brokenRules(file: DeskFile): DeskProblem[] {
       (i) => ['guards', i, 'id'],
     ),
     ...file.guards.flatMap((guard, i) => guardProblems(guard, i, queues, forms)),
+    ...intakeProblems(file.intake, queues, forms),
   ];
 }
 
@@ -66,6 +67,47 @@ function guardProblems(
     problems.push(...fieldProblems(field, [...at, 'fields', i], forms));
   });
   return problems;
+}
+
+function intakeProblems(
+  intake: DeskFile['intake'],
+  queues: ReadonlySet<string>,
+  forms: ReadonlySet<string>,
+): DeskProblem[] {
+  if (intake === undefined) return [];
+  const at: Path = ['intake', 'forms'];
+  return [
+    ...repeated(
+      intake.forms.map((form) => form.id),
+      (i) => [...at, i, 'id'],
+    ),
+    ...intake.forms.flatMap((form, i) => {
+      const names = form.fields.map((field) => field.name);
+      const isMissing = form.senderField !== null && !names.includes(form.senderField);
+      return [
+        ...(forms.has(form.id) ? [] : [problem([...at, i, 'id'], 'one of `forms`', shownValue(form.id))]),
+        ...repeated(names, (j) => [...at, i, 'fields', j, 'name']),
+        ...(isMissing
+          ? [
+              problem(
+                [...at, i, 'senderField'],
+                'the name of a field of this form',
+                shownValue(form.senderField),
+              ),
+            ]
+          : []),
+      ];
+    }),
+    ...Object.entries(intake.confirmations.queueNames)
+      .filter(([, queue]) => !queues.has(queue))
+      .map(([name, queue]) =>
+        problem(
+          ['intake', 'confirmations', 'queueNames', name],
+          'the id of a queue of this file',
+          shownValue(queue),
+        ),
+      ),
+  ];
 }
 
 function fieldProblems(

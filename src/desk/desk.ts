@@ -1,3 +1,5 @@
+import type { IntakeSettings } from './intake-settings.ts';
+
 /** The desk's file, validated: queues, slots, guards, own addresses, costs. Values only. */
 
 export interface Queue {
@@ -55,4 +57,6 @@ export interface Desk {
   readonly auditShare: number;
   /** Counts lose half their weight in this many days; null: never. */
   readonly halfLifeDays: number | null;
+  /** Forms and confirmations over HTTPS; absent: none are taken. */
+  readonly intake?: IntakeSettings;
 }

@@ -69,9 +69,10 @@ function expectedOf(issue: Issue): string {
 }
 
 function deskOf(file: DeskFile): Desk {
-  const { $schema: _, ...rest } = file;
+  const { $schema: _, intake, ...rest } = file;
   return {
     ...rest,
+    ...(intake === undefined ? {} : { intake }),
     ownAddresses: file.ownAddresses.map(addressOf),
     ownDomains: file.ownDomains.map(domainOf),
     queues: file.queues.map((queue) => ({

@@ -1,7 +1,7 @@
 import { createHash } from 'node:crypto';
+import type { IntakeForm, IntakeSettings } from '../desk/intake-settings.ts';
 import { keys } from '../store/keys.ts';
 import type { Store } from '../store/store.ts';
-import type { IntakeForm, IntakeSettings } from './intake-settings.ts';
 import { readSubmission } from './read-submission.ts';
 import { readWebhook } from './read-webhook.ts';
 import { type Reply, replyJson, replyProblem } from './reply.ts';

@@ -1,5 +1,5 @@
 import { bounds } from '../bounds.ts';
-import type { IntakeForm } from './intake-settings.ts';
+import type { IntakeForm } from '../desk/intake-settings.ts';
 import { type FieldFault, type Reply, replyProblem } from './reply.ts';
 import { type IntakeRequest, mediaTypeOf, nestsDeeperThan, textOf } from './request.ts';
 

@@ -1,7 +1,7 @@
 import pointer from 'jsonpointer';
 import { Webhook } from 'standardwebhooks';
 import { bounds } from '../bounds.ts';
-import type { ConfirmationMapping } from './intake-settings.ts';
+import type { ConfirmationMapping } from '../desk/intake-settings.ts';
 import { type FieldFault, type Reply, replyProblem } from './reply.ts';
 import { type IntakeRequest, mediaTypeOf, nestsDeeperThan, textOf } from './request.ts';
 

@@ -1,4 +1,4 @@
-import type { IntakeSettings } from '../../src/intake/intake-settings.ts';
+import type { IntakeSettings } from '../../src/desk/intake-settings.ts';
 
 /** The intake of the invented Fenmark Water, as tests use it. */
 export const settings: IntakeSettings = {
