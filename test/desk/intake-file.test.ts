@@ -15,7 +15,8 @@ const pointersOf = (intake: unknown): string[] => {
   try {
     read(intake);
   } catch (error) {
-    if (error instanceof DeskError) return error.problems.map((problem) => problem.pointer);
+    if (error instanceof DeskError)
+      return error.problems.map(({ place }) => place.slice(place.indexOf('#') + 1));
     throw error;
   }
   return [];
