@@ -28,9 +28,8 @@ export interface History {
   readonly message: string;
   /** Grows by one with each write, so that no two states have equal bytes. */
   readonly rev: number;
-  readonly schema: string;
-  /** Base 64; see the model's codec. */
-  readonly features: string;
+  /** By schema, base 64 (see the model's codec). The message is in a table only if it has features of the table's schema. */
+  readonly features: Readonly<Record<string, string>>;
   readonly said: Said | null;
   readonly confirmations: readonly Recorded[];
   readonly placements: readonly Placement[];
@@ -73,8 +72,9 @@ export function decodeHistory(bytes: Uint8Array, place: string): Stored {
   const isWhole =
     isFormed &&
     isText(value?.message) &&
-    isText(value?.schema) &&
-    isText(value?.features) &&
+    value?.features !== null &&
+    typeof value?.features === 'object' &&
+    Object.values(value.features).every(isText) &&
     typeof value?.isErasing === 'boolean' &&
     Array.isArray(value.confirmations) &&
     value.confirmations.every((c) => isStep(c) && c.queue !== null) &&
@@ -172,4 +172,17 @@ export function isLanded(
   segment: string,
 ): boolean {
   return manifest.segments.some((s) => s.id === segment) || hasAbsorbed(segment);
+}
+
+/** Where the message stands in the counts of one manifest, whatever happened since. */
+export function columnAsOf(
+  history: History,
+  manifest: Manifest,
+  hasAbsorbed: (segment: string) => boolean,
+): Column | null {
+  const dead = new Set(manifest.rolledBack);
+  const last = history.placements.findLast(
+    ({ segment }) => !dead.has(segment) && isLanded(manifest, hasAbsorbed, segment),
+  );
+  return columnOf(last ?? null);
 }

@@ -10,6 +10,7 @@ import { isLanded, isTombstone, type Settled, type Stored, settle } from './hist
 import { editHistory, historyKey, type ReadHistory, readHistory } from './history-store.ts';
 import { newId } from './ids.ts';
 import { ageMs, isNamed, isOutdated, isVoid, type Manifest, withSegment, withVoided } from './manifest.ts';
+import { putNew } from './objects.ts';
 import { faultOf, isOfStore, mapBounded, pause } from './pace.ts';
 import { type Answer, type Plan, plan, type Request } from './plan.ts';
 import type { World } from './world.ts';
@@ -223,7 +224,7 @@ class Round {
       const { encoded, said, minus, plus } = move as NonNullable<Plan['move']>;
       return { features: decodeFeatures(encoded, this.#schema, historyKey(work.message)), said, minus, plus };
     });
-    if (!(await this.#putSegment(encodeEntries(this.#schema, entries)))) return;
+    await putNew(this.#world, keys.segments + id, encodeEntries(this.#schema, entries));
     const erases = planned.some(([{ requests }]) => requests.some((r) => r.kind === 'erase'));
     const committed = await commit<boolean>(this.#world, async (manifest, hasTried) => {
       if (isNamed(manifest, id)) return { kind: 'settled', value: true };
@@ -236,22 +237,6 @@ class Round {
     });
     if (committed.kind === 'known' && committed.value)
       for (const [work, { answers }] of planned) this.#landings.set(work, { kind: 'landed', answers });
-  }
-
-  /** True only when the object is there. */
-  async #putSegment(body: Uint8Array): Promise<boolean> {
-    for (let attempt = 0; attempt < bounds.writeAttemptsMax; attempt++) {
-      if (attempt > 0) await pause(this.#world, attempt);
-      try {
-        // `lost`: there already, by an attempt whose answer was lost; no one else uses this id.
-        const put = await this.#world.store.put(keys.segments + this.#segment, body, { ifNoneMatch: '*' });
-        if (put.kind === 'written' || (await this.#world.store.head(keys.segments + this.#segment)) !== null)
-          return true;
-      } catch (error) {
-        if (!isOfStore(error)) throw error;
-      }
-    }
-    return false;
   }
 
   #fail(work: Work, fault: Fault): void {

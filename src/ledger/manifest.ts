@@ -35,7 +35,7 @@ export interface Manifest {
   readonly rolledBack: readonly string[];
   readonly restores: readonly Restore[];
   /** Queues that were renamed, merged or retired, and what each became. Counts keep the names that were confirmed. */
-  readonly renames: Readonly<Record<string, string>>;
+  readonly renames: Renames;
   /** The version of the last change to anything but `segments` and `voided`. */
   readonly shapedAtVersion: number;
   /** The version that last took an erased message out; what was before it cannot be restored. */
@@ -43,6 +43,14 @@ export interface Manifest {
   /** Versions below it cannot be restored: their objects are being deleted. */
   readonly oldestVersion: number;
 }
+
+/** What became of a queue. A renamed queue's name is used up; a merged or retired one's may be opened again. */
+export interface Renamed {
+  readonly to: string;
+  readonly kind: 'renamed' | 'merged' | 'retired';
+}
+
+export type Renames = Readonly<Record<string, Renamed>>;
 
 export interface Restore {
   readonly id: string;
@@ -103,7 +111,9 @@ export function decodeManifest(bytes: Uint8Array, place: string): Manifest {
     rolledBack: (v) => isListOf(v, isId),
     restores: (v) => isListOf(v, (r: Restore) => isId(r?.id) && isVersion(r.version) && isVersion(r.to)),
     renames: (v) =>
-      v !== null && typeof v === 'object' && Object.values(v).every((q) => typeof q === 'string'),
+      v !== null &&
+      typeof v === 'object' &&
+      Object.values(v).every((q) => typeof (q as Renamed)?.to === 'string'),
     shapedAtVersion: isVersion,
     erasedAtVersion: isVersion,
     oldestVersion: isVersion,

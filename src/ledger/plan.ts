@@ -75,7 +75,7 @@ export function plan(
     return { next: null, move: null, answers: requests.map((r) => answerErased(message, r)) };
   const draft = new Draft(message, stored, settled, schema);
   const answers = requests.map((request) => draft.carryOut(request));
-  return { ...draft.finish(stored, settled, segment), answers };
+  return { ...draft.finish(stored, segment), answers };
 }
 
 /** Marks what belongs to the segment being made. */
@@ -84,8 +84,11 @@ const unstamped = '';
 class Draft {
   readonly #message: string;
   #confirmations: Recorded[];
-  #features: { schema: string; encoded: string; said: Said | null } | null;
+  readonly #schema: string;
+  #features: Readonly<Record<string, string>>;
+  #said: Said | null;
   #isErasing: boolean;
+  readonly #landed: readonly Placement[];
   readonly #last: Placement | null;
   #erasedAtMs = 0;
   #undoneAt: string | null = null;
@@ -97,10 +100,12 @@ class Draft {
       segment: settled.inVain.has(c.segment) ? unstamped : c.segment,
       ...(c.undone !== undefined && settled.inVain.has(c.undone) ? { undone: unstamped } : {}),
     }));
-    this.#last = settled.landed.at(-1) ?? null;
-    // What was never counted may be read afresh under another schema.
-    const isKept = stored !== null && (stored.schema === schema || this.#last !== null);
-    this.#features = isKept ? { schema: stored.schema, encoded: stored.features, said: stored.said } : null;
+    this.#schema = schema;
+    this.#features = stored?.features ?? {};
+    this.#said = stored?.said ?? null;
+    // Counted under another schema only: in this table the message stands nowhere.
+    this.#landed = Object.hasOwn(this.#features, schema) ? settled.landed : [];
+    this.#last = this.#landed.at(-1) ?? null;
     this.#isErasing = stored?.isErasing ?? false;
   }
 
@@ -117,7 +122,9 @@ class Draft {
     said,
   }: Request & { kind: 'confirm' }): Answer {
     const recorded: Recorded = { queue, by, at, segment: unstamped };
-    this.#features ??= { schema: features.schema, encoded, said };
+    if (this.#confirmations.length === 0) this.#said = said;
+    if (!Object.hasOwn(this.#features, this.#schema))
+      this.#features = { ...this.#features, [features.schema]: encoded };
     const known = this.#confirmations.find((c) => isSame(c, recorded));
     if (known)
       return known.segment === unstamped && known.undone === undefined ? done(1) : { kind: 'already' };
@@ -145,7 +152,7 @@ class Draft {
     return done(this.#confirmations.length);
   }
 
-  finish(stored: History | null, settled: Settled, segment: string): Omit<Plan, 'answers'> {
+  finish(stored: History | null, segment: string): Omit<Plan, 'answers'> {
     const top = this.#isErasing ? null : standing(this.#confirmations);
     const [minus, plus] = [columnOf(this.#last), columnOf(top)];
     const isMoved = !isSameColumn(minus, plus);
@@ -156,24 +163,25 @@ class Draft {
       segment: c.segment === unstamped ? stamp : c.segment,
       ...(c.undone === unstamped ? { undone: stamp } : {}),
     }));
-    const placements = isMoved ? [...settled.landed, this.#placement(top, segment)] : settled.landed;
+    const placements = isMoved ? [...this.#landed, this.#placement(top, segment)] : this.#landed;
     if (this.#isErasing && !isMoved) return { next: this.#tombstone(stored), move: null };
-    if (this.#features === null) return { next: null, move: null };
-    const { schema, encoded, said } = this.#features;
+    if (stored === null && confirmations.length === 0) return { next: null, move: null };
     const next: History = {
       format: 1,
       message: this.#message,
       rev: (stored?.rev ?? 0) + 1,
-      schema,
-      features: encoded,
-      said,
+      features: this.#features,
+      said: this.#said,
       confirmations,
       placements,
       isErasing: this.#isErasing,
     };
     const isAsStored =
       stored !== null && JSON.stringify({ ...next, rev: stored.rev }) === JSON.stringify(stored);
-    return { next: isAsStored ? null : next, move: isMoved ? { minus, plus, said, encoded } : null };
+    return {
+      next: isAsStored ? null : next,
+      move: isMoved ? { minus, plus, said: this.#said, encoded: this.#features[this.#schema] ?? '' } : null,
+    };
   }
 
   #placement(top: Recorded | null, segment: string): Placement {

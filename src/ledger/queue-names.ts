@@ -1,12 +1,11 @@
 import type { Desk, Queue } from '../desk/desk.ts';
-
-export type Renames = Readonly<Record<string, string>>;
+import type { Renames } from './manifest.ts';
 
 /** What a queue that was once confirmed is called now. */
 export function currentName(renames: Renames, queue: string): string {
   let name = queue;
   // Every change keeps the map free of loops; the count only guards against a damaged one.
-  for (let steps = 0; Object.hasOwn(renames, name) && steps < 1000; steps++) name = renames[name];
+  for (let steps = 0; Object.hasOwn(renames, name) && steps < 1000; steps++) name = renames[name].to;
   return name;
 }
 

@@ -1,0 +1,35 @@
+import type { Schema } from '../features/schema.ts';
+import { keys } from '../store/keys.ts';
+import { carryOutErasure } from './erase.ts';
+import { isId, timeOf } from './ids.ts';
+import { type Order, readOrder } from './orders.ts';
+import { sweepHistories } from './sweep.ts';
+import { carryOutUndo } from './undo.ts';
+import type { World } from './world.ts';
+
+/** Carries out the orders that are older than `ageMs`: younger ones are being carried out by who placed them. Gives their number. */
+export async function finishOrders(world: World, schema: Schema, ageMs: number): Promise<number> {
+  const found: string[] = [];
+  for await (const { key } of world.store.list(keys.orders)) {
+    const id = key.slice(keys.orders.length, -'.json'.length);
+    if (!isId(id) || world.nowMs() - timeOf(id) >= ageMs) found.push(key);
+  }
+  let finished = 0;
+  for (const key of found) {
+    const got = await world.store.get(key);
+    if (got.kind !== 'found') continue;
+    if (await carryOut(world, schema, readOrder(got.object.body, key))) {
+      await world.store.delete(key);
+      finished += 1;
+    }
+  }
+  return finished;
+}
+
+/** True when all of it is done. */
+async function carryOut(world: World, schema: Schema, order: Order): Promise<boolean> {
+  if (order.kind === 'erase')
+    return (await carryOutErasure(world, schema, order.messages, order.atMs)).isDone;
+  if (order.kind === 'undo') return (await carryOutUndo(world, schema, order, order.atMs)).isDone;
+  return sweepHistories(world);
+}

@@ -1,0 +1,77 @@
+import { bounds } from '../bounds.ts';
+import { TallypostError } from '../errors.ts';
+import type { Schema } from '../features/schema.ts';
+import { decodeCounts } from '../model/codec-counts.ts';
+import { decodeEntries } from '../model/codec-entries.ts';
+import { decodeTable } from '../model/codec-table.ts';
+import type { Counts, Entry } from '../model/counts.ts';
+import { emptyCounts, foldEntries } from '../model/fold.ts';
+import { emptyTable, type ServedTable } from '../model/served-table.ts';
+import { keys } from '../store/keys.ts';
+import { missing } from './absorbed.ts';
+import type { Manifest } from './manifest.ts';
+import { isOfStore, mapBounded, pause } from './pace.ts';
+import type { World } from './world.ts';
+
+/** The immutable objects that a manifest names. All throw TallypostError: `object-missing`, and what the codec refuses. */
+
+export async function readTable(world: World, schema: Schema, id: string | null): Promise<ServedTable> {
+  if (id === null) return emptyTable(schema);
+  return decodeTable(await readBytes(world, keys.tables + id), schema, keys.tables + id);
+}
+
+export async function readBase(world: World, schema: Schema, id: string | null): Promise<Counts> {
+  if (id === null) return emptyCounts(schema);
+  return decodeCounts(await readBytes(world, keys.bases + id), schema, keys.bases + id);
+}
+
+export async function readSegment(world: World, schema: Schema, id: string): Promise<Entry[]> {
+  return decodeEntries(await readBytes(world, keys.segments + id), schema, keys.segments + id);
+}
+
+/** The counts as a manifest has them: its base with all its segments. Exact, all epochs, the names that were confirmed. */
+export async function readCounts(world: World, schema: Schema, manifest: Manifest): Promise<Counts> {
+  const base = await readBase(world, schema, manifest.base);
+  const segments = await mapBounded(manifest.segments, ({ id }) => readSegment(world, schema, id));
+  return foldEntries(base, segments.flat());
+}
+
+async function readBytes(world: World, key: string): Promise<Uint8Array> {
+  const got = await world.store.get(key, { bytesMax: bounds.modelBytesMax });
+  if (got.kind !== 'found') throw missing(key);
+  return got.object.body;
+}
+
+/** Puts an object under a name of its own, until it is certain to be there. Throws the store's last failure. */
+export async function putNew(world: World, key: string, body: Uint8Array): Promise<void> {
+  for (let attempt = 1; ; attempt++) {
+    try {
+      // `lost`: it stands there, by an attempt whose answer was lost; or another write of it is under way.
+      const put = await world.store.put(key, body, { ifNoneMatch: '*' });
+      if (put.kind === 'written' || (await world.store.head(key)) !== null) return;
+    } catch (error) {
+      if (!isOfStore(error) || attempt >= bounds.writeAttemptsMax) throw error;
+    }
+    if (attempt >= bounds.writeAttemptsMax)
+      throw new TallypostError({
+        code: 'store-busy',
+        place: key,
+        expected: 'a written object',
+        got: 'a lost race',
+      });
+    await pause(world, attempt);
+  }
+}
+
+/** Runs `work` again with what the manifest names now when something was deleted meanwhile; an object that stays missing is an
+ *  error. */
+export async function withFresh<T>(work: (attempt: number) => Promise<T>): Promise<T> {
+  for (let attempt = 0; ; attempt++) {
+    try {
+      return await work(attempt);
+    } catch (error) {
+      const isGone = error instanceof TallypostError && error.code === 'object-missing';
+      if (!isGone || attempt >= 3) throw error;
+    }
+  }
+}

@@ -1,0 +1,151 @@
+import type { Desk } from '../desk/desk.ts';
+import type { Schema } from '../features/schema.ts';
+import { checkCounts } from '../model/check-counts.ts';
+import { encodeCounts } from '../model/codec-counts.ts';
+import { encodeTable } from '../model/codec-table.ts';
+import type { Counts } from '../model/counts.ts';
+import { defaultFit, type Fit } from '../model/fit.ts';
+import type { FoldedMessage, fitTable } from '../model/fit-table.ts';
+import { renameQueues } from '../model/fold.ts';
+import { type ServedTable, serve } from '../model/served-table.ts';
+import { keys } from '../store/keys.ts';
+import { encodeAbsorbed, readAbsorbed } from './absorbed.ts';
+import { commit } from './commit.ts';
+import { newId } from './ids.ts';
+import { encodeManifest, isNamed, type Manifest, type Renames, successor } from './manifest.ts';
+import { putNew, readTable } from './objects.ts';
+import { isOfStore } from './pace.ts';
+import { currentName } from './queue-names.ts';
+import { sampleHistories } from './sample.ts';
+import type { World } from './world.ts';
+
+/** Fits what routers load from the counts by queue, a sample of the messages in them, and the last fit. */
+export type FitModel = typeof fitTable;
+
+export interface RebuildOptions {
+  readonly renames: Renames;
+  /** Null: keep the last fit. */
+  readonly fit: FitModel | null;
+  /** Lands only on the very version that was read: nothing may land meanwhile. */
+  readonly isExclusive?: boolean;
+}
+
+export interface Rebuilt {
+  readonly isCommitted: boolean;
+  readonly version: number;
+  readonly table: ServedTable;
+  readonly baseBytes: number;
+  readonly tableBytes: number;
+}
+
+/** Makes `counts` the base of the model in the place of the base and all the segments of `from`; what lands meanwhile stays.
+ *  Objects first, then the manifest, by one compare-and-set: readers see the old state or the new one. Not committed when
+ *  another process replaced the base first. Throws TallypostError when the counts break their identities. */
+export async function rebuild(
+  world: World,
+  desk: Desk,
+  schema: Schema,
+  from: Manifest,
+  counts: Counts,
+  options: RebuildOptions,
+): Promise<Rebuilt> {
+  const id = newId(world, from.floor, from.atMs);
+  checkCounts(counts, keys.bases + id);
+  const table = await makeTable(world, desk, schema, from, counts, options);
+  const [base, served] = [encodeCounts(counts), encodeTable(table)];
+  const absorbed = new Set([
+    ...(await readAbsorbed(world, from.absorbed)),
+    ...from.segments.map((s) => s.id),
+  ]);
+  const made: [string, Uint8Array][] = [
+    [keys.bases + id, base],
+    [keys.tables + id, served],
+    [keys.absorbed + id, encodeAbsorbed(absorbed)],
+  ];
+  for (const [key, body] of made) await putNew(world, key, body);
+  const erases = from.segments.some((s) => s.erases);
+  const committed = await commit<boolean>(world, async (manifest) => {
+    if (manifest.base === id) return { kind: 'settled', value: true };
+    if (!isUnchanged(from, manifest, options.isExclusive ?? false)) return { kind: 'settled', value: false };
+    await archive(world, manifest);
+    const floor = erases ? id : manifest.floor;
+    const next = successor(manifest, world.nowMs(), {
+      schema: schema.id,
+      base: id,
+      table: id,
+      absorbed: id,
+      segments: manifest.segments.filter((s) => !absorbed.has(s.id)),
+      voided: manifest.voided.filter((segment) => segment >= floor),
+      floor,
+      renames: options.renames,
+      shapedAtVersion: manifest.version + 1,
+      // The superseded objects hold features of the erased: nothing before this can come back.
+      oldestVersion: erases ? manifest.version + 1 : manifest.oldestVersion,
+    });
+    return { kind: 'write', next, value: true, gone: absorbed };
+  });
+  const isCommitted = committed.kind === 'known' && committed.value;
+  if (committed.kind === 'known' && !isCommitted)
+    await discard(
+      world,
+      made.map(([key]) => key),
+    );
+  const version = committed.kind === 'known' ? committed.manifest.version : from.version;
+  return { isCommitted, version, table, baseBytes: base.length, tableBytes: served.length };
+}
+
+/** The table that routers load: today's names of queues, one column each. */
+export async function makeTable(
+  world: World,
+  desk: Desk,
+  schema: Schema,
+  from: Manifest,
+  counts: Counts,
+  { renames, fit }: Pick<RebuildOptions, 'renames' | 'fit'>,
+): Promise<ServedTable> {
+  const names = new Map(counts.columns.map(({ queue }) => [queue, currentName(renames, queue)]));
+  const byQueue = renameQueues(counts, names);
+  const last = await lastFit(world, schema, from);
+  const sample = fit ? await sampleHistories(world, schema, from, renames) : [];
+  const fitted = fit ? fit(byQueue, sample, last, { halfLifeDays: desk.halfLifeDays }) : last;
+  return serve(byQueue, fitted, { halfLifeDays: desk.halfLifeDays });
+}
+
+export type { FoldedMessage };
+
+async function lastFit(world: World, schema: Schema, from: Manifest): Promise<Fit> {
+  if (from.schema !== schema.id) return defaultFit(schema);
+  return (await readTable(world, schema, from.table)).fit;
+}
+
+/** What was read is still what stands, with nothing but further segments beside it. */
+function isUnchanged(from: Manifest, now: Manifest, isExclusive: boolean): boolean {
+  if (isExclusive && now.version !== from.version) return false;
+  return (
+    now.base === from.base &&
+    now.restores.length === from.restores.length &&
+    JSON.stringify(now.renames) === JSON.stringify(from.renames) &&
+    from.segments.every(({ id }) => isNamed(now, id))
+  );
+}
+
+/** Keeps the manifest that is about to be replaced: together with the landing versions of its segments it tells every version
+ *  since the one before it. */
+export async function archive(world: World, manifest: Manifest): Promise<void> {
+  if (manifest.version === 0) return;
+  const version = String(manifest.version).padStart(12, '0');
+  await putNew(
+    world,
+    `${keys.versions}${version}-${newId(world, '', manifest.atMs)}`,
+    encodeManifest(manifest),
+  );
+}
+
+/** Objects that nothing ever named. What a failing store leaves behind goes after the horizon. */
+async function discard(world: World, names: readonly string[]): Promise<void> {
+  try {
+    for (const key of names) await world.store.delete(key);
+  } catch (error) {
+    if (!isOfStore(error)) throw error;
+  }
+}

@@ -1,0 +1,173 @@
+import { bounds } from '../bounds.ts';
+import type { Desk } from '../desk/desk.ts';
+import { type Fault, TallypostError } from '../errors.ts';
+import type { Features, Schema } from '../features/schema.ts';
+import { decodeFeatures, encodeFeatures } from '../model/codec-entries.ts';
+import type { CellDifference, Counts, Entry } from '../model/counts.ts';
+import { diffCounts } from '../model/difference.ts';
+import { emptyCounts, foldEntries, mergeCounts } from '../model/fold.ts';
+import { createAbsorbedReader, type HasAbsorbed } from './absorbed.ts';
+import { readManifest } from './commit.ts';
+import { columnAsOf, type History, isTombstone } from './history.ts';
+import { editHistory, historyKey, listMessages, readHistory } from './history-store.ts';
+import { isOutdated, type Manifest } from './manifest.ts';
+import { readCounts, withFresh } from './objects.ts';
+import { faultOf, mapBounded } from './pace.ts';
+import { type FitModel, rebuild } from './rebuild.ts';
+import type { World } from './world.ts';
+
+export interface RecountOptions {
+  /** Replaces the base by what the histories say when they differ, or when the base cannot be read, or counts another schema. */
+  readonly repair?: boolean;
+  /** Differences listed at most; all are counted up to it. */
+  readonly differencesMax?: number;
+  /** Reads a message again under a new schema; null when its raw form is gone. Needed only after the schema changed. */
+  readonly reread?: (message: string) => Promise<Features | null>;
+  readonly fit?: FitModel;
+}
+
+export interface RecountResult {
+  /** Of the manifest that was compared. */
+  readonly version: number;
+  /** Histories that stand in the counts. */
+  readonly messages: number;
+  /** Cell by cell: `left` is the table, `right` the recount. */
+  readonly differences: readonly CellDifference[];
+  /** Why the table could not be read; null when it could. */
+  readonly fault: Fault | null;
+  /** Messages that are left out under the new schema, since their raw form is gone. */
+  readonly unread: number;
+  readonly repair: 'none' | 'not-needed' | 'repaired' | 'lost-race';
+}
+
+/** Counts every history again from scratch and compares with the table, cell by cell, both as of one version; what is folded
+ *  meanwhile changes neither. With `repair` the recount becomes the base. Reads every history once. */
+export async function recount(
+  world: World,
+  desk: Desk,
+  schema: Schema,
+  options: RecountOptions = {},
+): Promise<RecountResult> {
+  for (let attempt = 0; ; attempt++) {
+    const { manifest } = await readManifest(world);
+    const isMigration = manifest.schema !== '' && manifest.schema !== schema.id;
+    const unread = isMigration && options.repair ? await rereadHistories(world, schema, options.reread) : 0;
+    const { counts, messages } = await countHistories(world, schema, manifest);
+    const { manifest: after } = await readManifest(world);
+    // An erasure or a restore meanwhile changed what the histories say of the version compared.
+    const isDisturbed = after.erasedAtVersion > manifest.version || isOutdated(after, manifest.version);
+    if (isDisturbed && attempt < 5) continue;
+    const { table, fault } = await readTableCounts(world, schema, manifest);
+    const max = options.differencesMax ?? bounds.faultsListedMax;
+    const differences = table ? diffCounts(table, counts, max) : [];
+    const found = { version: manifest.version, messages, differences, fault, unread };
+    const isRight = fault === null && differences.length === 0;
+    if (!options.repair) return { ...found, repair: 'none' };
+    if (isRight) return { ...found, repair: 'not-needed' };
+    const { isCommitted } = await rebuild(world, desk, schema, manifest, counts, {
+      renames: manifest.renames,
+      fit: options.fit ?? null,
+      isExclusive: isMigration,
+    });
+    if (isCommitted || attempt >= 5) return { ...found, repair: isCommitted ? 'repaired' : 'lost-race' };
+  }
+}
+
+/** What the histories say of the counts at `manifest`. */
+export async function countHistories(
+  world: World,
+  schema: Schema,
+  manifest: Manifest,
+): Promise<{ counts: Counts; messages: number }> {
+  const hasAbsorbed = await createAbsorbedReader(world)(manifest);
+  let counts = emptyCounts(schema);
+  let pending = emptyCounts(schema);
+  let messages = 0;
+  let chunk: string[] = [];
+  const add = async () => {
+    const entries = await mapBounded(chunk, (message) =>
+      entryOf(world, schema, manifest, hasAbsorbed, message),
+    );
+    const standing = entries.filter((e) => e !== null);
+    messages += standing.length;
+    pending = foldEntries(pending, standing);
+    chunk = [];
+    // Merging costs the size of the sum: let the part grow before it is added.
+    if (sizeOf(pending) * 4 >= sizeOf(counts)) {
+      counts = mergeCounts(counts, pending);
+      pending = emptyCounts(schema);
+    }
+  };
+  for await (const message of listMessages(world)) {
+    chunk.push(message);
+    if (chunk.length >= bounds.recountChunkMax) await add();
+  }
+  await add();
+  return { counts: mergeCounts(counts, pending), messages };
+}
+
+function sizeOf(counts: Counts): number {
+  return counts.regions.reduce((sum, r) => sum + r.column.length, 1);
+}
+
+async function entryOf(
+  world: World,
+  schema: Schema,
+  manifest: Manifest,
+  hasAbsorbed: HasAbsorbed,
+  message: string,
+): Promise<Entry | null> {
+  const { stored } = await readHistory(world, message);
+  if (stored === null || isTombstone(stored) || !Object.hasOwn(stored.features, schema.id)) return null;
+  const plus = columnAsOf(stored, manifest, hasAbsorbed);
+  if (plus === null) return null;
+  const features = decodeFeatures(stored.features[schema.id], schema, historyKey(message));
+  return { features, said: stored.said, minus: null, plus };
+}
+
+async function readTableCounts(
+  world: World,
+  schema: Schema,
+  manifest: Manifest,
+): Promise<{ table: Counts | null; fault: Fault | null }> {
+  try {
+    return { table: await withFresh(() => readCounts(world, schema, manifest)), fault: null };
+  } catch (error) {
+    if (!(error instanceof TallypostError) || error.code.startsWith('store-')) throw error;
+    return { table: null, fault: faultOf(error, '') };
+  }
+}
+
+/** Adds features of the new schema to every history that stands anywhere, beside the old ones: until the manifest turns to the
+ *  new schema, nothing else changes. Gives the number that could not be read. */
+async function rereadHistories(
+  world: World,
+  schema: Schema,
+  reread: RecountOptions['reread'],
+): Promise<number> {
+  let unread = 0;
+  for await (const message of listMessages(world)) {
+    const { stored } = await readHistory(world, message);
+    if (stored === null || isTombstone(stored) || Object.hasOwn(stored.features, schema.id)) continue;
+    const features = (await reread?.(message)) ?? null;
+    if (features === null) {
+      unread += 1;
+      continue;
+    }
+    const encoded = encodeFeatures(features);
+    const edited = await editHistory(world, message, null, (now) => {
+      if (now === null || isTombstone(now) || Object.hasOwn(now.features, schema.id))
+        return { next: null, value: true };
+      const next: History = { ...now, rev: now.rev + 1, features: { ...now.features, [schema.id]: encoded } };
+      return { next, value: true };
+    });
+    if (edited === null)
+      throw new TallypostError({
+        code: 'store-busy',
+        place: historyKey(message),
+        expected: 'a turn to write',
+        got: 'none',
+      });
+  }
+  return unread;
+}
