@@ -1,24 +1,5 @@
-import betaln from '@stdlib/math-base-special-betaln';
-import gammaln from '@stdlib/math-base-special-gammaln';
 import type { Reading } from './fit.ts';
-
-/** log of the evidence of k hits in n draws under a Beta(a, b) prior of the rate, the order of draws known:
- *  B(a + k, b + n - k) / B(a, b), nats. k, n real, 0 ≤ k ≤ n.
- *  Source: Murphy, Machine Learning (2012), section 3.3. */
-export function logBetaBinomial(k: number, n: number, a: number, b: number): number {
-  return betaln(a + k, b + n - k) - betaln(a, b);
-}
-
-/** logBetaBinomial(k, n, a, b) - logBetaBinomial(0, n, a, b), which for whole k is the log of
- *  Π_{i<k} (a + i) / (b + n - 1 - i): no gamma function for the small counts that nearly all cells hold. */
-function logHits(k: number, n: number, a: number, b: number): number {
-  if (k <= 16 && Number.isInteger(k)) {
-    let odds = 1;
-    for (let i = 0; i < k; i++) odds *= (a + i) / (b + n - 1 - i);
-    return Math.log(odds);
-  }
-  return gammaln(a + k) - gammaln(a) + gammaln(b + n - k) - gammaln(b + n);
-}
+import { logBetaBinomial, logGammaDrop, logHits } from './special.ts';
 
 /** What a reading draws from: E, by queue and in all, and the tokens held. With what follows from them alone. */
 export interface Exposure {
@@ -30,6 +11,8 @@ export interface Exposure {
   readonly vocabulary: number;
   /** s_j / (s_j + E_k); [concentrations][queues]. */
   readonly shrink: readonly Float64Array[];
+  /** log (s_j + E_k); [concentrations][queues]. */
+  readonly logWhole: readonly Float64Array[];
   /** By D: log evidence of no hit in any queue; [concentrations + 1], the pooled model last. */
   readonly unseen: Map<number, Float64Array>;
 }
@@ -41,6 +24,7 @@ export function exposureOf(reading: Reading, draws: Float64Array, vocabulary: nu
     drawsSum: draws.reduce((sum, e) => sum + e, 0),
     vocabulary,
     shrink: reading.concentrations.map((s) => draws.map((e) => s / (s + e))),
+    logWhole: reading.concentrations.map((s) => draws.map((e) => Math.log(s + e))),
     unseen: new Map(),
   };
 }
@@ -101,11 +85,15 @@ function unseenEvidence(exposure: Exposure, seen: number, m: number): Float64Arr
   if (known) return known;
   const { concentrations, pooledRate: pooled } = exposure.reading;
   const evidence = new Float64Array(concentrations.length + 1);
+  // B(a, b + E)/B(a, b) = Γ(b + E)/Γ(b) · Γ(s)/Γ(s + E) with b = s - a: two drops by a, one of them the same for all queues.
   concentrations.forEach((s, j) => {
     const a = s * m;
-    const b = s * (1 - m);
-    const whole = betaln(a, b);
-    for (const e of exposure.draws) if (e > 0) evidence[j] += betaln(a, b + e) - whole;
+    const one = logGammaDrop(s, a);
+    const logWhole = exposure.logWhole[j];
+    for (let k = 0; k < logWhole.length; k++) {
+      const e = exposure.draws[k];
+      if (e > 0) evidence[j] += one - logGammaDrop(s + e, a, logWhole[k]);
+    }
   });
   evidence[concentrations.length] =
     pooled === 'fixed'
