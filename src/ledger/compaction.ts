@@ -1,22 +1,20 @@
 import { bounds } from '../bounds.ts';
 import type { Desk } from '../desk/desk.ts';
-import { TallypostError } from '../errors.ts';
 import type { Schema } from '../features/schema.ts';
 import { fitTable } from '../model/fit-table.ts';
-import { keys } from '../store/keys.ts';
 import { readManifest } from './commit.ts';
 import { deleteUnnamed } from './deletion.ts';
 import { finishOrders } from './finish-orders.ts';
-import type { Manifest } from './manifest.ts';
+import { checkSchema, type Manifest } from './manifest.ts';
 import { readCounts, withFresh } from './objects.ts';
-import { type FitModel, type Rebuilt, rebuild } from './rebuild.ts';
+import { type FitModel, rebuild } from './rebuild.ts';
 import type { World } from './world.ts';
 
 export interface CompactionOptions {
   /** Make a new base and fit also when no segment landed since the last one. */
   readonly force?: boolean;
   readonly dryRun?: boolean;
-  readonly fit?: FitModel;
+  readonly fitModel?: FitModel;
 }
 
 /** JSON-able. */
@@ -76,10 +74,9 @@ async function compactOnce(
     segments,
   };
   if (options.dryRun) return { kind: 'dry-run', ...measured, baseBytes: 0, tableBytes: 0, fit: null };
-  const fit = options.fit ?? fitTable;
-  const rebuilt: Rebuilt = await rebuild(world, desk, schema, manifest, counts, {
+  const rebuilt = await rebuild(world, desk, schema, manifest, counts, {
     renames: manifest.renames,
-    fit,
+    fitModel: options.fitModel ?? fitTable,
   });
   return {
     kind: rebuilt.isCommitted ? 'compacted' : 'lost-race',
@@ -89,16 +86,6 @@ async function compactOnce(
     tableBytes: rebuilt.tableBytes,
     fit: { messages: rebuilt.table.fit.messages, logLoss: rebuilt.table.fit.logLoss },
   };
-}
-
-export function checkSchema(manifest: Manifest, schema: Schema): void {
-  if (manifest.schema === '' || manifest.schema === schema.id) return;
-  throw new TallypostError({
-    code: 'schema-mismatch',
-    place: keys.manifest,
-    expected: `schema ${schema.id} of the desk's file`,
-    got: `schema ${manifest.schema}; count again with the new one`,
-  });
 }
 
 function nothingNew({ version }: Manifest): Made {

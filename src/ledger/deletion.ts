@@ -1,7 +1,7 @@
 import { bounds } from '../bounds.ts';
 import { keys } from '../store/keys.ts';
 import { commit, readManifest } from './commit.ts';
-import { firstIdAt } from './ids.ts';
+import { firstIdAt, laterOf } from './ids.ts';
 import { decodeManifest, type Manifest, successor } from './manifest.ts';
 import { mapBounded } from './pace.ts';
 import type { World } from './world.ts';
@@ -14,7 +14,7 @@ const immutable = [keys.bases, keys.tables, keys.absorbed, keys.segments] as con
 export async function deleteUnnamed(world: World, isDryRun = false): Promise<number> {
   const { manifest: before } = await readManifest(world);
   const cut = firstIdAt(world.nowMs() - bounds.horizonMs);
-  const floor = before.floor > cut ? before.floor : cut;
+  const floor = laterOf(before.floor, cut);
   const versions: { key: string; version: number; id: string }[] = [];
   for await (const { key } of world.store.list(keys.versions)) {
     const [version, ...id] = key.slice(keys.versions.length).split('-');
@@ -42,7 +42,7 @@ export async function deleteUnnamed(world: World, isDryRun = false): Promise<num
   const raised = await commit(world, async (manifest) => {
     if (manifest.floor >= floor && manifest.oldestVersion >= oldest) return { kind: 'settled', value: null };
     const next = successor(manifest, world.nowMs(), {
-      floor: manifest.floor > floor ? manifest.floor : floor,
+      floor: laterOf(manifest.floor, floor),
       oldestVersion: Math.max(manifest.oldestVersion, oldest),
       voided: manifest.voided.filter((id) => id >= floor),
     });

@@ -32,7 +32,10 @@ export interface Trace {
 
 const traces: readonly Trace[] = [
   { what: `raw message (${keys.inbound})`, goneBy: 'now' },
-  { what: `confirmations waiting to be folded (${keys.confirmations})`, goneBy: 'now' },
+  {
+    what: `confirmations waiting or refused (${keys.confirmations}, ${keys.refusedConfirmations})`,
+    goneBy: 'now',
+  },
   { what: 'features in the sums that routers use', goneBy: 'now' },
   {
     what: `features in its history (${keys.histories}), of which a tombstone without content stays`,
@@ -102,17 +105,20 @@ async function preview(world: World, message: string): Promise<Erasure> {
 /** Confirmations of erased messages would be refused anyway; they name the message. */
 async function deleteDrops(world: World, messages: ReadonlySet<string>): Promise<void> {
   const found: string[] = [];
-  for await (const { key, bytes } of world.store.list(keys.confirmations))
-    if (bytes <= bounds.ledgerJsonBytesMax) found.push(key);
+  for (const prefix of [keys.confirmations, keys.refusedConfirmations])
+    for await (const { key, bytes } of world.store.list(prefix))
+      if (bytes <= bounds.ledgerJsonBytesMax) found.push(key);
   await mapBounded(found, async (key) => {
     const got = await world.store.get(key);
     if (got.kind === 'found' && messages.has(messageNamedIn(got.object.body))) await world.store.delete(key);
   });
 }
 
-function messageNamedIn(drop: Uint8Array): string {
+/** A refused drop is kept inside a record of why. */
+function messageNamedIn(body: Uint8Array): string {
   try {
-    const { message } = JSON.parse(new TextDecoder().decode(drop));
+    const value = JSON.parse(new TextDecoder().decode(body));
+    const message = (value.drop ?? value).message;
     return typeof message === 'string' ? message : '';
   } catch {
     return '';

@@ -20,6 +20,10 @@ export function firstIdAt(ms: number): string {
   return Math.max(0, Math.floor(ms)).toString(36).padStart(timeDigits, '0');
 }
 
+export function laterOf(a: string, b: string): string {
+  return [a, b].sort()[1];
+}
+
 export function timeOf(id: string): number {
   return Number.parseInt(id.slice(0, timeDigits), 36);
 }

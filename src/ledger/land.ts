@@ -1,5 +1,5 @@
 import { bounds } from '../bounds.ts';
-import { type Fault, TallypostError } from '../errors.ts';
+import type { Fault } from '../errors.ts';
 import type { Schema } from '../features/schema.ts';
 import { decodeFeatures, encodeEntries } from '../model/codec-entries.ts';
 import type { Entry } from '../model/counts.ts';
@@ -9,7 +9,16 @@ import { commit, readManifest } from './commit.ts';
 import { isLanded, isTombstone, type Settled, type Stored, settle } from './history.ts';
 import { editHistory, historyKey, type ReadHistory, readHistory } from './history-store.ts';
 import { newId } from './ids.ts';
-import { ageMs, isNamed, isOutdated, isVoid, type Manifest, withSegment, withVoided } from './manifest.ts';
+import {
+  ageMs,
+  checkSchema,
+  isNamed,
+  isOutdated,
+  isVoid,
+  type Manifest,
+  withSegment,
+  withVoided,
+} from './manifest.ts';
 import { putNew } from './objects.ts';
 import { faultOf, isOfStore, mapBounded, pause } from './pace.ts';
 import { type Answer, type Plan, plan, type Request } from './plan.ts';
@@ -99,7 +108,7 @@ class Round {
 
   async run(works: readonly Work[]): Promise<Landing[]> {
     const { manifest: first } = await readManifest(this.#world);
-    this.#checkSchema(first);
+    checkSchema(first, this.#schema);
     const opened = await this.#open(works);
     const { manifest, ready } = await this.#voidOthers(opened, first);
     const hasAbsorbed = await this.#absorbedOf(manifest);
@@ -119,16 +128,6 @@ class Round {
           },
         },
     );
-  }
-
-  #checkSchema(manifest: Manifest): void {
-    if (manifest.schema === '' || manifest.schema === this.#schema.id) return;
-    throw new TallypostError({
-      code: 'schema-mismatch',
-      place: keys.manifest,
-      expected: `schema ${this.#schema.id} of the desk's file`,
-      got: `schema ${manifest.schema}; count again with the new one`,
-    });
   }
 
   async #open(works: readonly Work[]): Promise<Opened[]> {
@@ -231,7 +230,7 @@ class Round {
       if (hasTried && (await this.#absorbedOf(manifest))(id)) return { kind: 'settled', value: true };
       if (isVoid(manifest, id) || isOutdated(manifest, readAtVersion))
         return { kind: 'settled', value: false };
-      this.#checkSchema(manifest);
+      checkSchema(manifest, this.#schema);
       const next = withSegment(manifest, this.#world.nowMs(), id, this.#schema.id, erases);
       return { kind: 'write', next, value: true };
     });

@@ -1,4 +1,6 @@
 import { TallypostError } from '../errors.ts';
+import type { Schema } from '../features/schema.ts';
+import { keys } from '../store/keys.ts';
 import { isId, noId, timeOf } from './ids.ts';
 
 /** A batch of entries that is in the counts. */
@@ -213,4 +215,15 @@ export function brokenRule(before: Manifest, after: Manifest, gone: ReadonlySet<
 /** Age of a segment that has not landed, by the clocks of its writer and of this process. */
 export function ageMs(segment: string, nowMs: number): number {
   return nowMs - timeOf(segment);
+}
+
+/** Throws TallypostError `schema-mismatch` when everything counted so far is of another schema. */
+export function checkSchema(manifest: Manifest, schema: Schema): void {
+  if (manifest.schema === '' || manifest.schema === schema.id) return;
+  throw new TallypostError({
+    code: 'schema-mismatch',
+    place: keys.manifest,
+    expected: `schema ${schema.id} of the desk's file`,
+    got: `schema ${manifest.schema}; count again with the new one`,
+  });
 }

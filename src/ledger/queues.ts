@@ -4,8 +4,7 @@ import { type Fault, TallypostError } from '../errors.ts';
 import type { Schema } from '../features/schema.ts';
 import { keys } from '../store/keys.ts';
 import { commit, readManifest } from './commit.ts';
-import { checkSchema } from './compaction.ts';
-import { type Manifest, type Renames, successor } from './manifest.ts';
+import { checkSchema, type Manifest, type Renames, successor } from './manifest.ts';
 import { readCounts, withFresh } from './objects.ts';
 import { pause } from './pace.ts';
 import { currentDesk, currentName } from './queue-names.ts';
@@ -67,6 +66,46 @@ export async function changeQueue(
     const kind = isKnown && deskFile !== 'updated' ? 'nothing-to-do' : 'changed';
     return { kind, version: done?.version ?? manifest.version, messages, deskFile };
   });
+}
+
+export function renameQueue(
+  world: World,
+  desk: Desk,
+  schema: Schema,
+  change: { readonly from: string; readonly to: string; readonly title?: string },
+  options: { readonly dryRun?: boolean } = {},
+): Promise<QueueResult> {
+  return changeQueue(world, desk, schema, { kind: 'rename', ...change }, options);
+}
+
+export function mergeQueues(
+  world: World,
+  desk: Desk,
+  schema: Schema,
+  change: { readonly from: string; readonly into: string },
+  options: { readonly dryRun?: boolean } = {},
+): Promise<QueueResult> {
+  return changeQueue(world, desk, schema, { kind: 'merge', ...change }, options);
+}
+
+export function retireQueue(
+  world: World,
+  desk: Desk,
+  schema: Schema,
+  change: { readonly queue: string; readonly successor: string },
+  options: { readonly dryRun?: boolean } = {},
+): Promise<QueueResult> {
+  return changeQueue(world, desk, schema, { kind: 'retire', ...change }, options);
+}
+
+export function openQueue(
+  world: World,
+  desk: Desk,
+  schema: Schema,
+  change: { readonly queue: string; readonly title: string; readonly wrongRouteMinutes?: number },
+  options: { readonly dryRun?: boolean } = {},
+): Promise<QueueResult> {
+  return changeQueue(world, desk, schema, { kind: 'open', ...change }, options);
 }
 
 /** Renames after the change. Throws TallypostError `queue-refused` with what is wrong. */
@@ -138,7 +177,7 @@ async function commitRenames(
 ): Promise<{ isCommitted: boolean; version: number }> {
   if (manifest.schema !== '') {
     const counts = await readCounts(world, schema, manifest);
-    return rebuild(world, desk, schema, manifest, counts, { renames, fit: null });
+    return rebuild(world, desk, schema, manifest, counts, { renames, fitModel: null });
   }
   const committed = await commit<boolean>(world, async (now) => {
     if (JSON.stringify(now.renames) === JSON.stringify(renames)) return { kind: 'settled', value: true };

@@ -5,7 +5,7 @@ import { encodeCounts } from '../model/codec-counts.ts';
 import { encodeTable } from '../model/codec-table.ts';
 import type { Counts } from '../model/counts.ts';
 import { defaultFit, type Fit } from '../model/fit.ts';
-import type { FoldedMessage, fitTable } from '../model/fit-table.ts';
+import type { fitTable } from '../model/fit-table.ts';
 import { renameQueues } from '../model/fold.ts';
 import { type ServedTable, serve } from '../model/served-table.ts';
 import { keys } from '../store/keys.ts';
@@ -25,7 +25,7 @@ export type FitModel = typeof fitTable;
 export interface RebuildOptions {
   readonly renames: Renames;
   /** Null: keep the last fit. */
-  readonly fit: FitModel | null;
+  readonly fitModel: FitModel | null;
   /** Lands only on the very version that was read: nothing may land meanwhile. */
   readonly isExclusive?: boolean;
 }
@@ -101,17 +101,15 @@ export async function makeTable(
   schema: Schema,
   from: Manifest,
   counts: Counts,
-  { renames, fit }: Pick<RebuildOptions, 'renames' | 'fit'>,
+  { renames, fitModel }: Pick<RebuildOptions, 'renames' | 'fitModel'>,
 ): Promise<ServedTable> {
   const names = new Map(counts.columns.map(({ queue }) => [queue, currentName(renames, queue)]));
   const byQueue = renameQueues(counts, names);
   const last = await lastFit(world, schema, from);
-  const sample = fit ? await sampleHistories(world, schema, from, renames) : [];
-  const fitted = fit ? fit(byQueue, sample, last, { halfLifeDays: desk.halfLifeDays }) : last;
+  const sample = fitModel ? await sampleHistories(world, schema, from, renames) : [];
+  const fitted = fitModel ? fitModel(byQueue, sample, last, { halfLifeDays: desk.halfLifeDays }) : last;
   return serve(byQueue, fitted, { halfLifeDays: desk.halfLifeDays });
 }
-
-export type { FoldedMessage };
 
 async function lastFit(world: World, schema: Schema, from: Manifest): Promise<Fit> {
   if (from.schema !== schema.id) return defaultFit(schema);

@@ -23,7 +23,7 @@ export interface RecountOptions {
   readonly differencesMax?: number;
   /** Reads a message again under a new schema; null when its raw form is gone. Needed only after the schema changed. */
   readonly reread?: (message: string) => Promise<Features | null>;
-  readonly fit?: FitModel;
+  readonly fitModel?: FitModel;
 }
 
 export interface RecountResult {
@@ -66,7 +66,7 @@ export async function recount(
     if (isRight) return { ...found, repair: 'not-needed' };
     const { isCommitted } = await rebuild(world, desk, schema, manifest, counts, {
       renames: manifest.renames,
-      fit: options.fit ?? null,
+      fitModel: options.fitModel ?? null,
       isExclusive: isMigration,
     });
     if (isCommitted || attempt >= 5) return { ...found, repair: isCommitted ? 'repaired' : 'lost-race' };

@@ -6,9 +6,8 @@ import { encodeTable } from '../model/codec-table.ts';
 import { keys } from '../store/keys.ts';
 import { readAbsorbed } from './absorbed.ts';
 import { commit, readManifest } from './commit.ts';
-import { checkSchema } from './compaction.ts';
 import { newId } from './ids.ts';
-import { decodeManifest, type Manifest, successor } from './manifest.ts';
+import { checkSchema, decodeManifest, type Manifest, successor } from './manifest.ts';
 import { putNew, readBase } from './objects.ts';
 import { placeOrder } from './orders.ts';
 import { archive, makeTable } from './rebuild.ts';
@@ -123,7 +122,10 @@ async function tableFor(
   if (target.base === null || JSON.stringify(target.renames) === JSON.stringify(now.renames))
     return target.table;
   const counts = await readBase(world, schema, target.base);
-  const table = await makeTable(world, desk, schema, target, counts, { renames: now.renames, fit: null });
+  const table = await makeTable(world, desk, schema, target, counts, {
+    renames: now.renames,
+    fitModel: null,
+  });
   const id = newId(world, now.floor, now.atMs);
   await putNew(world, keys.tables + id, encodeTable(table));
   return id;
