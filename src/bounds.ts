@@ -7,6 +7,8 @@ export const bounds = {
   /** Messages whose leave-one-out scores exponents are fitted to: a dozen exponents are known well from a few thousand, and
    *  more would only make compaction slower. */
   fitMessagesMax: 4000,
+  /** Values of log ratios that a scorer remembers for each reading: 8 MB; the tokens that make up most of all mail. */
+  rememberedLogsMax: 1_000_000,
 
   // Messages (src/message)
   /** Header fields of a part that are kept: real ones hold a few KB; 10,000 recipients would be 300 KB. */
@@ -191,6 +193,12 @@ export const bounds = {
   foldDropsMax: 500,
   /** Lambda's retries of a drop's own event end well before: five deliveries of six timeouts each. */
   leftDropAgeMs: 60 * 60 * 1000,
+  /** Local runner: messages routed in one batch, with one look at the model. */
+  localRouteBatchMax: 100,
+  /** Local runner: each segment beside the base is read at every start and added to the table at every change. */
+  localSegmentsMax: 20,
+  /** Local runner: pause between rounds when it follows. */
+  localPauseMs: 2_000,
   /** Drops taken up by one compaction; the rest is left to the next. */
   leftDropsMax: 20_000,
 } as const;
