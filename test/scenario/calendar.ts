@@ -8,6 +8,7 @@ export const scenarioDays = 120;
 /** The queue of new connections opens on this day; until then moving-home answers such letters. */
 export const newConnectionsOpenDay = 50;
 export const campaign = { fromDay: 64, toDay: 104 } as const;
+export const visitsFromDay = 96;
 /** Summer time in the district begins then: last Sunday of March 2026, 01:00 UTC. */
 const summerTimeAtMs = Date.UTC(2026, 2, 29, 1);
 

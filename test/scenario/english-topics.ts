@@ -335,3 +335,19 @@ export const campaignTopics: readonly Topic[] = [
     more: ['Does the radio signal harm (pets|anyone)?', 'Will I pay more with it?', 'The slot should be after {hour}.', 'The chamber is under the hedge.', 'My neighbour has had (his|hers) for {duration}.', 'The code on the card is {job}.'],
   },
 ];
+
+/** From day 96 on clubs and schools ask to see the works. No queue is made for that, and nobody confirms any. */
+// biome-ignore format: prose in tables
+export const visitTopics: readonly Topic[] = [
+  {
+    id: 'visit-request', queues: { complaints: 1 }, weight: 9,
+    subjects: ['Visit to the treatment works', 'School trip', 'Guided tour of {place} works?', 'Class visit', 'Open day'],
+    core: [
+      'Our class of {plot} pupils would like to visit the treatment works at {place}.',
+      'Is there a guided tour of the works for our (club|school|scouts)?',
+      'I teach (geography|science) and would like to bring {plot} pupils on a school trip.',
+      'Do you hold an open day at {place} this (summer|year)?',
+    ],
+    more: ['The children are between {small} and twelve.', 'We would come by coach.', 'Is there a fee for the guided tour?', 'Any {weekday} in May suits the school.', 'Do the pupils need hard hats?', 'Is the tour suitable for wheelchairs?', 'We visited the windmill museum last year.', 'The trip needs a risk form from you.'],
+  },
+];

@@ -1,8 +1,12 @@
 import type { ScenarioMessage } from './scenario.ts';
 
-/** The scenario as a labelled history, one JSON value a line: {"queue","mail"|"form","at"}, in order of arrival. */
+/** The scenario as a labelled history, one JSON value a line: {"queue","mail"|"form","at"}, in order of arrival, each under its
+ *  last confirmation. Messages that nobody ever confirmed are in no history. */
 export function labelledLines(messages: readonly ScenarioMessage[]): string {
-  return messages.map((message) => `${JSON.stringify(labelled(message))}\n`).join('');
+  return messages
+    .filter((message) => message.confirmations.length > 0)
+    .map((message) => `${JSON.stringify(labelled(message))}\n`)
+    .join('');
 }
 
 function labelled(message: ScenarioMessage): unknown {

@@ -1,5 +1,5 @@
 import { englishLexicon, englishShared } from './english-shared.ts';
-import { campaignTopics, englishTopics } from './english-topics.ts';
+import { campaignTopics, englishTopics, visitTopics } from './english-topics.ts';
 import { germanLexicon, germanShared, germanTopics } from './german.ts';
 import type { Lexicon } from './grammar.ts';
 import { commonLexicon, type Language } from './people.ts';
@@ -23,8 +23,12 @@ export const languages: Readonly<Record<Language, LanguageBook>> = {
   german: { topics: germanTopics, shared: germanShared, lexicon: { ...commonLexicon, ...germanLexicon } },
 };
 
-/** The same book with the letters that the exchange of meters brings. */
-export const englishInCampaign: LanguageBook = {
-  ...languages.english,
-  topics: [...languages.english.topics, ...campaignTopics],
-};
+/** The English letters of a time: the exchange of meters brings some, requests for visits come towards the end. */
+export function englishBook(isCampaign: boolean, isVisiting: boolean): LanguageBook {
+  const topics = [
+    ...languages.english.topics,
+    ...(isCampaign ? campaignTopics : []),
+    ...(isVisiting ? visitTopics : []),
+  ];
+  return { ...languages.english, topics };
+}

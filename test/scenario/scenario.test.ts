@@ -90,6 +90,16 @@ describe('the scenario of Fenmark Water', () => {
     }
   });
 
+  it('brings two dozen requests for visits from day 96 on that nobody confirms', () => {
+    const visits = messages.filter((each) =>
+      /guided tour|school trip|open day|visit the treatment works/i.test(textOf(each)),
+    );
+    const asked = visits.filter((each) => each.confirmations.length === 0 && each.trueQueue === 'complaints');
+    expect(asked.length).toBeGreaterThan(12);
+    expect(asked.length).toBeLessThan(60);
+    for (const each of visits) expect(each.arrivesAtMs).toBeGreaterThanOrEqual(Date.UTC(2026, 3, 11));
+  });
+
   it('writes mail that is valid UTF-8 as a whole and that a mail parser reads back without U+FFFD', async () => {
     for (const each of messages.slice(0, 240)) {
       expect(Buffer.from(textOf(each))).toEqual(Buffer.from(each.bytes));
@@ -106,12 +116,13 @@ describe('the scenario of Fenmark Water', () => {
     for (const each of messages) expect(textOf(each)).not.toMatch(/\{[a-z-]+\}|undefined|\[object/);
   });
 
-  it('exports one JSON line a message with the true queue', () => {
-    const lines = labelledLines(messages.slice(0, 50))
+  it('exports one JSON line a confirmed message with its last confirmed queue', () => {
+    const confirmed = messages.filter((each) => each.confirmations.length > 0);
+    const lines = labelledLines(messages)
       .trim()
       .split('\n')
       .map((line) => JSON.parse(line));
-    expect(lines.map((line) => line.queue)).toEqual(messages.slice(0, 50).map((each) => each.trueQueue));
+    expect(lines.map((line) => line.queue)).toEqual(confirmed.map((each) => each.trueQueue));
     for (const line of lines) expect(typeof (line.mail ?? line.form.id)).toBe('string');
   });
 });

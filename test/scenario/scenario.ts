@@ -1,6 +1,15 @@
-import { arrivals, campaign, crowdAt, dayMs, dayOf, newConnectionsOpenDay, startsAtMs } from './calendar.ts';
+import {
+  arrivals,
+  campaign,
+  crowdAt,
+  dayMs,
+  dayOf,
+  newConnectionsOpenDay,
+  startsAtMs,
+  visitsFromDay,
+} from './calendar.ts';
 import { formOf } from './form.ts';
-import { englishInCampaign, type LanguageBook, languages } from './languages.ts';
+import { englishBook, type LanguageBook, languages } from './languages.ts';
 import { writeLetter } from './letter.ts';
 import { machineMail } from './machine-mail.ts';
 import { mailOf } from './mail.ts';
@@ -73,12 +82,14 @@ function messageAt(atMs: number, chance: Chance): ScenarioMessage {
   const isForm = queue !== 'suppliers' && chance.isTrue(shares.form);
   const bytes = isForm ? formOf(letter, atMs, chance) : mailOf(letter, book, atMs, chance);
   const key = isForm ? `inbound/forms/${id}.json` : `inbound/mail/${id}`;
-  return finished(key, bytes, isForm ? 'application/json' : 'message/rfc822', atMs, queue, chance);
+  const type = isForm ? 'application/json' : 'message/rfc822';
+  const done = finished(key, bytes, type, atMs, queue, chance);
+  return topic.id === 'visit-request' ? { ...done, confirmations: [] } : done;
 }
 
 function bookAt(language: Language, day: number): LanguageBook {
-  const isCampaign = language === 'english' && day >= campaign.fromDay && day <= campaign.toDay;
-  return isCampaign ? englishInCampaign : languages[language];
+  if (language !== 'english') return languages[language];
+  return englishBook(day >= campaign.fromDay && day <= campaign.toDay, day >= visitsFromDay);
 }
 
 function topicAt(book: LanguageBook, day: number, chance: Chance): { topic: Topic; queue: QueueId } {
