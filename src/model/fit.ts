@@ -55,7 +55,11 @@ export interface Fit {
   readonly messages: number;
 }
 
-/** What is used until there is enough to fit. Exponents: middle of those fitted on long mail and on short forms. */
+/** Concentrations from a prior that a few draws overrule to one that thousands do not: the evidence of each token's own
+ *  counts chooses among them, so that none is tuned. Half a decade finer changed log loss by less than 0.01. */
+const concentrations = { tokens: [3, 30, 300, 3000], messages: [0.3, 3, 30, 300] } as const;
+
+/** What is used until there is enough to fit: for every region both readings, each by its parts. */
 export function defaultFit(schema: Schema): Fit {
   const groups = [...new Set(schema.slots.map((slot) => slot.group))];
   return {
@@ -63,9 +67,12 @@ export function defaultFit(schema: Schema): Fit {
     blocks: [
       { kind: 'prior', exponent: 1, byQueue: {} },
       ...groups.map((group): SlotsBlock => ({ kind: 'slots', group, exponent: 0.5, byQueue: {} })),
-      ...schema.regions.flatMap(({ id }): TokensBlock[] => [
-        tokens({ region: id, draws: 'tokens', concentrations: [100], pooledRate: 'unknown' }, 0.25),
-        tokens({ region: id, draws: 'messages', concentrations: [1], pooledRate: 'unknown' }, 0.2),
+      ...schema.regions.flatMap(({ id }) => [
+        tokens(id, 'tokens', 'for', 0.3),
+        tokens(id, 'tokens', 'against', 0.3),
+        tokens(id, 'messages', 'for', 0.3),
+        tokens(id, 'messages', 'against', 0.1),
+        tokens(id, 'messages', 'absent', 0.1),
       ]),
     ],
     bias: {},
@@ -76,6 +83,12 @@ export function defaultFit(schema: Schema): Fit {
   };
 }
 
-function tokens(reading: Reading, exponent: number): TokensBlock {
-  return { kind: 'tokens', ...reading, part: 'all', exponent, byQueue: {} };
+function tokens(
+  region: string,
+  draws: Reading['draws'],
+  part: TokensBlock['part'],
+  exponent: number,
+): TokensBlock {
+  const reading: Reading = { region, draws, concentrations: concentrations[draws], pooledRate: 'fixed' };
+  return { kind: 'tokens', ...reading, part, exponent, byQueue: {} };
 }

@@ -53,12 +53,12 @@ export interface Hits {
 
 /** Posterior weights of the models of one token's rates, given its counts: for each concentration s_j that the rate depends
  *  on the queue, with rates drawn from Beta(s_j·m, s_j·(1-m)); last, that one rate serves all. Equal before the counts.
- *  Shape: out[concentrations + 1], sums to 1. Closed form (method of Bayesian model averaging; Dash and Cooper,
+ *  Shape: [concentrations + 1], sums to 1. Closed form (method of Bayesian model averaging; Dash and Cooper,
  *  JMLR 5, 2004):  w_j ∝ Π_k B(d_k hits of E_k | s_j m, s_j (1-m)). */
-export function weighModels(exposure: Exposure, hits: Hits, out: Float64Array): void {
+export function weighModels(exposure: Exposure, hits: Hits): Float64Array {
   const { concentrations, pooledRate: pooled } = exposure.reading;
   const m = pooledRate(exposure, hits.seen);
-  out.set(unseenEvidence(exposure, hits.seen, m));
+  const out = unseenEvidence(exposure, hits.seen, m).slice();
   const last = concentrations.length;
   let top = -Infinity;
   for (let j = 0; j < last; j++) {
@@ -77,6 +77,7 @@ export function weighModels(exposure: Exposure, hits: Hits, out: Float64Array): 
   let sum = 0;
   for (let j = 0; j <= last; j++) sum += out[j] = Math.exp(out[j] - top);
   for (let j = 0; j <= last; j++) out[j] /= sum;
+  return out;
 }
 
 /** Depends on a token through D alone, so it is computed once for each D: most tokens share a small one. */
@@ -105,8 +106,9 @@ function unseenEvidence(exposure: Exposure, seen: number, m: number): Float64Arr
 
 /** p_k / m for one token: its rate in each queue, averaged over the weighed models, against the pooled rate.
  *  Shape: out[queues];  p_k = w_pooled·m + Σ_j w_j·(s_j·m + d_k)/(s_j + E_k). */
-export function rateRatios(exposure: Exposure, hits: Hits, weights: Float64Array, out: Float64Array): void {
+export function rateRatios(exposure: Exposure, hits: Hits, out: Float64Array): void {
   const { concentrations } = exposure.reading;
+  const weights = weighModels(exposure, hits);
   const queues = exposure.draws.length;
   out.fill(weights[concentrations.length]);
   for (let j = 0; j < concentrations.length; j++) {

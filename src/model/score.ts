@@ -1,7 +1,9 @@
+import { bounds } from '../bounds.ts';
 import type { Features } from '../features/schema.ts';
 import { schemaMismatch } from './fold.ts';
-import { type Exposure, exposureWithout, type Hits, pooledRate, rateRatios, weighModels } from './rates.ts';
+import { type Exposure, exposureWithout, type Hits, rateRatios } from './rates.ts';
 import {
+  absentFactors,
   absentSum,
   clampHits,
   createHits,
@@ -9,6 +11,8 @@ import {
   rowOf,
   type Scorer,
   type ScorerReading,
+  type ScorerRegion,
+  type TokenLogs,
 } from './scorer.ts';
 
 /** A folded message that is scored as if it had not been folded. */
@@ -85,65 +89,77 @@ export function visitContributions(
 ): void {
   const queues = scorer.queues.length;
   const region = scorer.regions[g];
-  const isPresence = reading.exposure.reading.draws === 'messages';
-  const hits = createHits(queues);
   const rows = Int32Array.from(present, (token) => rowOf(region, token));
   const exposure = own === null ? reading.exposure : exposureLeaving(scorer, g, reading, rows, own);
-  const weights = new Float64Array(exposure.reading.concentrations.length + 1);
-  const logs = new Float64Array(queues);
-  const absent = new Float64Array(queues);
   const contribution = new Float64Array(queues);
-
-  if (isPresence) {
+  if (reading.countsAbsent) {
     const all = own === null ? reading.absent : absentLeaving(scorer, g, reading, own);
     for (const { index, part } of reading.blocks)
       if (part === 'all' || part === 'absent') visit(index, -1, all);
   }
   for (let t = 0; t < rows.length; t++) {
     if (rows[t] < 0) continue;
-    if (isPresence) {
-      readHits(region, rows[t], -1, 0, hits);
-      absentLogs(exposure, hits, weights, absent);
-    }
-    readHits(region, rows[t], own === null ? -1 : own.queue, own === null ? 0 : own.weight, hits);
-    if (hits.length > 0) presentLogs(exposure, hits, weights, logs);
-    else logs.fill(0);
+    const { present: logs, absent } =
+      own === null ? logsOf(region, reading, rows[t]) : logsLeaving(region, reading, rows[t], exposure, own);
     for (const { index, part } of reading.blocks) {
       for (let k = 0; k < queues; k++) {
-        const log = logs[k];
-        contribution[k] =
-          part === 'all'
-            ? log - absent[k]
-            : part === 'for'
-              ? Math.max(log, 0)
-              : part === 'against'
-                ? Math.min(log, 0)
-                : -absent[k];
+        if (part === 'all') contribution[k] = logs[k] - (absent === null ? 0 : absent[k]);
+        else if (part === 'for') contribution[k] = Math.max(logs[k], 0);
+        else if (part === 'against') contribution[k] = Math.min(logs[k], 0);
+        else contribution[k] = absent === null ? 0 : -absent[k];
       }
       visit(index, t, contribution);
     }
   }
 }
 
-/** log p_k/m; [queues]. */
-function presentLogs(exposure: Exposure, hits: Hits, weights: Float64Array, out: Float64Array): void {
-  clampHits(hits, exposure);
-  weighModels(exposure, hits, weights);
-  rateRatios(exposure, hits, weights, out);
-  for (let k = 0; k < out.length; k++) out[k] = Math.log(out[k]);
+/** A row's logs as the table stands; remembered, since a few thousand tokens make up most of all mail. */
+function logsOf(region: ScorerRegion, reading: ScorerReading, row: number): TokenLogs {
+  const known = reading.remembered.get(row);
+  if (known) return known;
+  const hits = createHits(reading.exposure.draws.length);
+  readHits(region, row, -1, 0, hits);
+  const logs = {
+    present: presentLogs(reading.exposure, hits),
+    absent: reading.countsAbsent ? absentLogs(reading.exposure, hits) : null,
+  };
+  if (reading.remembered.size * hits.queue.length < bounds.rememberedLogsMax)
+    reading.remembered.set(row, logs);
+  return logs;
+}
+
+/** A row's logs without the message: what it adds when present, and what had been summed for it as absent. */
+function logsLeaving(
+  region: ScorerRegion,
+  reading: ScorerReading,
+  row: number,
+  exposure: Exposure,
+  own: Own,
+): TokenLogs {
+  const hits = createHits(exposure.draws.length);
+  let absent: Float64Array | null = null;
+  if (reading.countsAbsent) {
+    readHits(region, row, -1, 0, hits);
+    absent = absentLogs(exposure, hits);
+  }
+  readHits(region, row, own.queue, own.weight, hits);
+  return { present: presentLogs(exposure, hits), absent };
+}
+
+/** log p_k/m; 0 for a token that nothing holds; [queues]. */
+function presentLogs(exposure: Exposure, hits: Hits): Float64Array {
+  const logs = new Float64Array(exposure.draws.length);
+  if (hits.length === 0) return logs;
+  rateRatios(exposure, hits, logs);
+  for (let k = 0; k < logs.length; k++) logs[k] = Math.log(logs[k]);
+  return logs;
 }
 
 /** log (1 - p_k)/(1 - m); [queues]. */
-function absentLogs(exposure: Exposure, hits: Hits, weights: Float64Array, out: Float64Array): void {
-  if (hits.length === 0) {
-    out.fill(0);
-    return;
-  }
+function absentLogs(exposure: Exposure, hits: Hits): Float64Array {
+  if (hits.length === 0) return new Float64Array(exposure.draws.length);
   clampHits(hits, exposure);
-  weighModels(exposure, hits, weights);
-  rateRatios(exposure, hits, weights, out);
-  const m = pooledRate(exposure, hits.seen);
-  for (let k = 0; k < out.length; k++) out[k] = Math.log((1 - out[k] * m) / (1 - m));
+  return absentFactors(exposure, hits).map(Math.log);
 }
 
 /** The exposure as it would be had the message not been folded: its draws, and the tokens that only it holds. */
