@@ -50,7 +50,7 @@ export function readAddress(text: string): Address | null {
 function readAddresses(value: string, place: string, countMax: number, defects: Defects): Address[] {
   const list: Address[] = [];
   let isReadable = true;
-  for (const { address } of addressparser(fieldText(value), { flatten: true })) {
+  for (const { address } of addressparser(withoutObsolete(fieldText(value)), { flatten: true })) {
     if (list.length >= countMax) break;
     if (!address) continue;
     const read = readAddress(address);
@@ -61,6 +61,44 @@ function readAddresses(value: string, place: string, countMax: number, defects: 
     defects.add('address-unreadable', place);
   }
   return list;
+}
+
+/** RFC 5322 section 4.4: obsolete addresses have white space and comments around their dots. A scanner that leaves
+ *  quoted strings alone; display names lose the space after a dot, but names are not kept. */
+function withoutObsolete(value: string): string {
+  if (!/\(|\s\.|\.\s/.test(value)) return value;
+  const kept: string[] = [];
+  let plain = '';
+  const endPlain = () => {
+    kept.push(plain.replace(/\s+/g, ' ').replace(/ ?\. ?/g, '.'));
+    plain = '';
+  };
+  let depth = 0;
+  let isQuoted = false;
+  for (let i = 0; i < value.length; i++) {
+    const character = value[i]!;
+    if (character === '\\' && (isQuoted || depth > 0)) {
+      if (isQuoted) plain += value.slice(i, i + 2);
+      i++;
+    } else if (isQuoted) {
+      plain += character;
+      if (character !== '"') continue;
+      isQuoted = false;
+      kept.push(plain);
+      plain = '';
+    } else if (character === '(') depth++;
+    else if (character === ')' && depth > 0) depth--;
+    else if (depth > 0) continue;
+    else if (character === '"') {
+      endPlain();
+      isQuoted = true;
+      plain = '"';
+    } else plain += character;
+  }
+  if (isQuoted) kept.push(plain);
+  else endPlain();
+  // An unclosed comment would hide every address behind it.
+  return depth > 0 ? value : kept.join('');
 }
 
 function asciiDomain(domain: string): string {

@@ -44,6 +44,12 @@ const knownName =
 
 const lf = 0x0a;
 
+/** True for a header section that is empty or begins with a field, as it should. */
+export function startsWithField(header: Buffer): boolean {
+  const start = header.toString('latin1', 0, 100);
+  return /^\s*$/.test(start) || fieldLine.test(start) || start.startsWith('From ');
+}
+
 /** Reads the header section of a message piece by piece, however large it is, and keeps the few fields of interest.
  *  Lines are taken as they come, so memory is bounded whatever the input; what follows the header is handed back. */
 export class HeaderGate {

@@ -35,6 +35,16 @@ interface Frame {
   readonly isPre: boolean;
 }
 
+interface OwnStyle {
+  readonly declarations: Declarations;
+  readonly isHiding: boolean;
+  readonly isPre: boolean;
+}
+
+const noStyle: OwnStyle = { declarations: new Map(), isHiding: false, isPre: false };
+/** Attributes that bear on style, in the order of the key. */
+const styleAttributes = ['style', 'class', 'id', 'color', 'text', 'bgcolor', 'background'] as const;
+
 const outermost: Frame = {
   name: '',
   look: plainLook,
@@ -109,6 +119,7 @@ class HtmlScanner implements TokenizerCallbacks {
   #attributeName = '';
   #attributes = new Map<string, string>();
   #css = '';
+  #styles = new Map<string, OwnStyle>();
 
   readonly #segments: Segment[] = [];
   #out: string[] = [];
@@ -208,28 +219,49 @@ class HtmlScanner implements TokenizerCallbacks {
 
   #push(name: string): void {
     const parent = this.#top;
-    const style = this.#styleOf(name);
+    const own = this.#styleOf(name);
     const classes = this.#attributes.get('class') ?? '';
     const id = this.#attributes.get('id') ?? '';
     const isUnshown = parent.isUnshown || unshownElements.has(name);
     this.#stack.push({
       name,
-      look: lookOf(parent.look, style),
-      isHidden: parent.isHidden || isUnshown || this.#attributes.has('hidden') || hidesContent(style),
+      look: lookOf(parent.look, own.declarations),
+      isHidden: parent.isHidden || isUnshown || this.#attributes.has('hidden') || own.isHiding,
       isUnshown,
       isQuoted:
         parent.isQuoted || isQuotation(name, classes, id, this.#attributes) || isSignature(classes, id),
-      isPre: parent.isPre || name === 'pre' || /^pre/.test(style.get('white-space') ?? ''),
+      isPre: parent.isPre || name === 'pre' || own.isPre,
     });
     this.#openCounts.set(name, (this.#openCounts.get(name) ?? 0) + 1);
   }
 
-  #styleOf(name: string): Declarations {
+  /** The element's own style; worked out once for all elements that carry the same, as most do. */
+  #styleOf(name: string): OwnStyle {
+    const attributes = this.#attributes;
+    const isLink = name === 'a';
+    if (attributes.size === 0 && this.#sheet.isEmpty && !isLink) return noStyle;
+    const key = [
+      this.#sheet.isEmpty && !isLink ? '' : name,
+      ...styleAttributes.map((a) => attributes.get(a)),
+    ].join('\n');
+    let style = this.#styles.get(key);
+    if (style === undefined) {
+      const declarations = this.#declare(name);
+      style = {
+        declarations,
+        isHiding: hidesContent(declarations),
+        isPre: /^pre/.test(declarations.get('white-space') ?? ''),
+      };
+      this.#styles.set(key, style);
+    }
+    return style;
+  }
+
+  #declare(name: string): Declarations {
     const style: Declarations = new Map();
     const attributes = this.#attributes;
     // The style sheet of a browser colours links itself, whatever colour stands around them.
     if (name === 'a') style.set('color', '#0000ee');
-    if (attributes.size === 0 && this.#sheet.isEmpty) return style;
     const color = attributes.get('color') ?? attributes.get('text');
     if (color) style.set('color', color.toLowerCase());
     const background = attributes.get('bgcolor');
@@ -267,6 +299,7 @@ class HtmlScanner implements TokenizerCallbacks {
   #endStyle(): void {
     this.#sheet.read(this.#css);
     this.#css = '';
+    this.#styles = new Map();
   }
 
   // Text

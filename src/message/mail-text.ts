@@ -98,7 +98,7 @@ function attachedText(part: Part, reader: Reader): Segment[] {
 
 export function joinSegments(segments: readonly Segment[]): string {
   return segments
-    .map(({ text }) => text.replace(/^\n+|\s+$/g, ''))
+    .map(({ text }) => text.trimEnd().replace(/^\n+/, ''))
     .filter((text) => text !== '')
     .join('\n\n');
 }

@@ -43,7 +43,9 @@ export async function parseMail(raw: RawMail, options: { nowMs?: () => number } 
 /** RFC 5322 section 3.6.4, without the angle brackets. */
 function readMessageId(fields: Fields, defects: Defects): string {
   const value = cleanLine(fieldText(fields.first('message-id').slice(0, 998)), 'message-id', defects);
-  return /<\s*([^<>]{1,998}?)\s*>/.exec(value)?.[1] ?? value;
+  const id = /<([^<>]*)>/.exec(value)?.[1] ?? value;
+  // RFC 5322 section 4.5.4: the obsolete form has white space and comments around its dots and @.
+  return id.replace(/\([^()]*\)|\s+/g, '');
 }
 
 function readDate(fields: Fields, defects: Defects): number | null {

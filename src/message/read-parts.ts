@@ -4,7 +4,7 @@ import type { MimeNode, SplitterChunk } from '@zone-eu/mailsplit';
 import { Splitter } from '@zone-eu/mailsplit';
 import { bounds } from '../bounds.ts';
 import type { DefectCode, Defects } from './defects.ts';
-import { type Field, HeaderGate } from './header-gate.ts';
+import { type Field, HeaderGate, startsWithField } from './header-gate.ts';
 import { isMultipart, openPart, type Part } from './part.ts';
 import { type Budget, keepBody, openBudget } from './part-budget.ts';
 
@@ -211,8 +211,6 @@ class MailReader {
       this.#parts.set(node, this.#root!);
       return;
     }
-    const headers = node.headers;
-    const first = (name: string) => (headers ? headers.getFirst(name) : '');
     this.#partHeaderBytes += node.getHeaders().length;
     if (this.#partHeaderBytes > bounds.partHeadersBytesMax) {
       this.stop('header-cut');
@@ -223,15 +221,22 @@ class MailReader {
       this.stop('depth-cut');
       return;
     }
-    const isEmbedded = parent.contentType === 'message/rfc822';
+    const headers = node.headers;
+    const first = (name: string) => (headers ? headers.getFirst(name) : '');
     const part = openPart(`${parent.number}.${parent.children.length + 1}`, parent, {
       contentType: first('Content-Type'),
       transferEncoding: first('Content-Transfer-Encoding'),
       disposition: first('Content-Disposition'),
-      subject: isEmbedded ? first('Subject').slice(0, bounds.subjectBytesMax) : '',
+      subject:
+        parent.contentType === 'message/rfc822' ? first('Subject').slice(0, bounds.subjectBytesMax) : '',
     });
     parent.children.push(part);
     this.#parts.set(node, part);
+    // A part without header and without the blank line that should stand for it: its text was taken for a header.
+    if (!startsWithField(node.getHeaders())) {
+      this.#defects.add('header-missing', part.number);
+      keepBody(part, node.getHeaders(), this.#budget, this.#defects);
+    }
   }
 
   #keepPreamble(part: Part, bytes: Buffer): void {
