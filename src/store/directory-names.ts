@@ -15,6 +15,7 @@ const emptySegment = '%';
  *  take `A` and `a` for one name. A leading dot is escaped so that no folder is hidden or means the parent. */
 function encodeSegment(segment: string): string {
   if (segment === '') return emptySegment;
+  if (/^[a-z0-9_~+,=-][a-z0-9_.~+,=-]*$/.test(segment)) return segment;
   let out = '';
   for (const byte of Buffer.from(segment)) {
     const character = String.fromCharCode(byte);

@@ -64,7 +64,7 @@ function markOf(key: string, second: number): number {
 
 function carriesMark(key: string, modifiedAtMs: number): boolean {
   const second = Math.floor(modifiedAtMs / 1000);
-  return Math.abs((modifiedAtMs - second * 1000) * 1000 - markOf(key, second)) <= 1;
+  return Math.abs((modifiedAtMs - second * 1000) * 1000 - markOf(key, second)) < 1.5;
 }
 
 /** Puts a view of a body in its place. Only a copy to look at: it is not waited for, and where it cannot be made (a
@@ -83,7 +83,8 @@ export function writeView(
   try {
     writeFileSync(temporary, body, { flag: 'wx' });
     const second = Math.floor(nowMs / 1000);
-    const time = second + markOf(key, second) / 1_000_000;
+    // Half a microsecond more, because the system cuts the fraction and a double is exact to a quarter only.
+    const time = second + (markOf(key, second) + 0.5) / 1_000_000;
     utimesSync(temporary, time, time);
     if (!carriesMark(key, statSync(temporary).mtimeMs)) return;
     try {

@@ -34,6 +34,8 @@ export interface Header {
 
 export interface Version {
   readonly number: number;
+  /** Numbers below it that a writer has not removed, or not yet. */
+  readonly older: readonly number[];
   readonly header: Header;
   readonly modifiedAtMs: number;
 }
@@ -70,12 +72,13 @@ export function numbersIn(folder: string): number[] {
  *  the two calls has a successor: look again. */
 export function openNewest(folder: string): OpenVersion | null {
   for (let attempt = 0; attempt < bounds.directoryAttemptsMax; attempt += 1) {
-    const number = numbersIn(folder).at(-1);
+    const older = numbersIn(folder);
+    const number = older.pop();
     if (number === undefined) return null;
     try {
       const descriptor = openSync(join(folder, String(number)), 'r');
       try {
-        return { number, descriptor, ...readHeader(descriptor, join(folder, String(number))) };
+        return { number, older, descriptor, ...readHeader(descriptor, join(folder, String(number))) };
       } catch (error) {
         closeSync(descriptor);
         throw error;
@@ -98,7 +101,7 @@ export function readNewest(folder: string): Version | null {
   return version;
 }
 
-function readHeader(descriptor: number, place: string): Omit<OpenVersion, 'number' | 'descriptor'> {
+function readHeader(descriptor: number, place: string): Omit<OpenVersion, 'number' | 'older' | 'descriptor'> {
   const stat = fstatSync(descriptor);
   const deleted: Header = {
     id: 'deleted',
@@ -251,10 +254,14 @@ export function removeFile(path: string): void {
   }
 }
 
-/** Removes a deletion that is old enough, and its folder when nothing else came. */
-export function sweepDeleted(folder: string, version: Version, nowMs: number): void {
-  if (nowMs - version.modifiedAtMs < bounds.tombstoneAgeMsMax) return;
-  removeFile(join(folder, String(version.number)));
+/** Removes what crashed writers left below the newest version, and a deletion that is old enough together with its
+ *  folder when nothing else came. */
+export function sweep(folder: string, newest: Version, nowMs: number): void {
+  const ageMs = nowMs - newest.modifiedAtMs;
+  if (ageMs >= bounds.temporaryAgeMsMax)
+    for (const number of newest.older) removeFile(join(folder, String(number)));
+  if (!newest.header.isDeleted || ageMs < bounds.tombstoneAgeMsMax) return;
+  removeFile(join(folder, String(newest.number)));
   try {
     rmdirSync(folder);
   } catch {

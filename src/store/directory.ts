@@ -22,7 +22,7 @@ import {
   readBody,
   removeFile,
   streamBody,
-  sweepDeleted,
+  sweep,
   type Version,
 } from './directory-versions.ts';
 import type { ObjectHead, PutOptions, PutResult, Store } from './store.ts';
@@ -278,10 +278,9 @@ export function createDirectoryStore(directory: string): Store {
       for (const key of keys) {
         const head = guarded(key, () => {
           const current = look(key);
-          if (current.version?.header.isDeleted && current.head === null) {
-            removePlain(key, current.version.header.plain);
-            sweepDeleted(folderOf(key), current.version, Date.now());
-          }
+          const version = current.version;
+          if (version?.header.isDeleted && current.head === null) removePlain(key, version.header.plain);
+          if (version !== null) sweep(folderOf(key), version, Date.now());
           return current.head;
         });
         if (head !== null) yield { key, etag: head.etag, bytes: head.bytes, modifiedAtMs: head.modifiedAtMs };
