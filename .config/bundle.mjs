@@ -8,6 +8,8 @@ const entries = {
   'functions/route/index': 'src/handlers/lambda/route.ts',
   'functions/confirm/index': 'src/handlers/lambda/confirm.ts',
   'functions/compact/index': 'src/handlers/lambda/compact.ts',
+  'functions/intake/index': 'src/handlers/lambda/intake.ts',
+  'functions/backfill/index': 'src/handlers/lambda/backfill.ts',
 };
 rmSync(`${root}dist`, { recursive: true, force: true });
 for (const [out, from] of Object.entries(entries)) {

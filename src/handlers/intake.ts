@@ -1,6 +1,7 @@
 import { answerRequest, type IntakeDesk, type IntakeWorld } from '../intake/answer.ts';
 import { replyProblem } from '../intake/reply.ts';
 import type { IntakeRequest } from '../intake/request.ts';
+import type { LogLine } from './handler-deps.ts';
 
 /** A function URL's event, payload format 2.0: the members that are read.
  *  Source: AWS Lambda Developer Guide, "Invoking Lambda function URLs", request payload format. */
@@ -22,7 +23,7 @@ export interface IntakeDeps {
   readonly world: IntakeWorld;
   readonly loadDesk: () => Promise<IntakeDesk>;
   /** One line of structured log; never a customer's text. */
-  readonly log: (line: Readonly<Record<string, unknown>>) => void;
+  readonly log: (line: LogLine) => void;
 }
 
 function requestOf(event: UrlEvent): IntakeRequest | null {

@@ -3,6 +3,8 @@ export const keys = {
   desk: 'config/desk.json',
   tokenKey: 'config/token-key',
   inbound: 'inbound/',
+  /** Labelled messages of earlier years, learned by a backfill: `inbound/archive/<queue>/…`. */
+  archive: 'inbound/archive/',
   confirmations: 'confirmations/',
   /** Drops that can never be folded, each with what is wrong with it. Not below `confirmations/`, whose events fold. */
   refusedConfirmations: 'confirmations-refused/',
