@@ -16,6 +16,16 @@ export interface ReadClaim {
   readonly trace: string;
 }
 
+/** Features of a message read from its raw form; null when that is gone. */
+export async function readFeatures(
+  world: World,
+  extractor: Extractor,
+  message: string,
+): Promise<Features | null> {
+  const found = await readMessage(world, keys.inbound + message, () => true);
+  return found?.message ? extractor.extract(found.message) : null;
+}
+
 /** Joins a confirmation with its message's features and with what the router said of it. A message whose raw mail is gone
  *  has the features that its history keeps. Throws TallypostError `message-missing`; the store's failures. */
 export async function claimOf(

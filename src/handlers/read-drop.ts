@@ -40,13 +40,9 @@ export function readDrop(json: Uint8Array, place: string): Confirmation {
   const parsed = drop.safeParse(value, { reportInput: true });
   if (parsed.success) return parsed.data;
   const issue = parsed.error.issues[0]!;
-  if (issue.code === 'unrecognized_keys') {
-    throw invalid(
-      `${place}#${pointerOf([...issue.path, issue.keys[0]!])}`,
-      'only message, queue, by and at',
-      'another member',
-    );
-  }
+  // The member's name stays unsaid: anything may stand there.
+  if (issue.code === 'unrecognized_keys')
+    throw invalid(place, 'only message, queue, by and at', 'another member');
   const pointer = issue.path.length === 0 ? '' : `#${pointerOf(issue.path)}`;
   throw invalid(
     place + pointer,
