@@ -1,4 +1,4 @@
-import { afterAll, beforeAll, describe, expect, it } from 'vitest';
+import { beforeAll, describe, expect, it } from 'vitest';
 import type { ObjectHead, PutResult, Store } from '../../src/store/store.ts';
 
 export const bytes = (text: string): Uint8Array => new TextEncoder().encode(text);
@@ -63,9 +63,6 @@ export function describeContract(
       const made = await make();
       store = made.store;
       again = made.again ?? (() => store);
-    });
-    afterAll(async () => {
-      for await (const { key } of store.list('')) await store.delete(key);
     });
 
     it('says where it is', () => {
