@@ -6,6 +6,7 @@ import { createConfirmHandler } from './confirm.ts';
 import type { HandlerDeps, LogLine } from './handler-deps.ts';
 import { faultMembers } from './log-fault.ts';
 import { createRouteHandler } from './route.ts';
+import { isRoutable } from './route-object.ts';
 import { isDecided } from './routing-metadata.ts';
 
 /** What one round did. Messages are counted once, by what became of them. */
@@ -13,7 +14,7 @@ export interface RunSummary {
   readonly routed: number;
   readonly held: number;
   readonly guarded: number;
-  /** Setup notices and what vanished meanwhile. */
+  /** Vanished meanwhile, or decided by another process. */
   readonly skipped: number;
   /** Confirmations that are in the counts now, were before, or gave way to newer ones. */
   readonly confirmed: number;
@@ -63,7 +64,7 @@ export function createLocalRunner(deps: HandlerDeps): LocalRunner {
     for await (const { key, etag, modifiedAtMs } of store.list(keys.inbound)) {
       // Of equal bytes the ETag may be equal, so that the time counts too.
       const version = `${etag} ${modifiedAtMs}`;
-      if (decided.get(key) === version) continue;
+      if (!isRoutable(key) || decided.get(key) === version) continue;
       const head = await store.head(key);
       if (head !== null && isDecided(head.metadata)) decided.set(key, version);
       else if (head !== null) waiting.push(key);

@@ -24,7 +24,7 @@ export async function routeObject(
   { key, trace }: EventObject,
 ): Promise<boolean> {
   const log = (line: LogLine) => deps.log({ ...line, message: key.slice(keys.inbound.length), trace });
-  if (!key.startsWith(keys.inbound) || key.endsWith(`/${setupNotice}`)) {
+  if (!isRoutable(key)) {
     log({ level: 'info', event: 'object-skipped' });
     return true;
   }
@@ -40,6 +40,11 @@ export async function routeObject(
     log({ level: 'error', event: 'route-failed', ...faultMembers(error) });
   }
   return false;
+}
+
+/** Archived mail is there to be learned from: it was dealt with years ago. */
+export function isRoutable(key: string): boolean {
+  return key.startsWith(keys.inbound) && !key.startsWith(keys.archive) && !key.endsWith(`/${setupNotice}`);
 }
 
 /** What was done, to be logged; null when the object changed meanwhile. */

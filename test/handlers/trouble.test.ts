@@ -60,7 +60,7 @@ describe('messages that are hard to read', () => {
     expect(await station.metadata(good)).toMatchObject({ 'tallypost-decision': 'held' });
   });
 
-  it('a setup notice, a vanished object and one outside of inbound/ are done with', async () => {
+  it('a setup notice, a vanished object, archived mail and what is outside of inbound/ are done with', async () => {
     const station = await openStation();
     await station.store.put(
       'inbound/AMAZON_SES_SETUP_NOTIFICATION',
@@ -71,6 +71,7 @@ describe('messages that are hard to read', () => {
       station.route,
       'inbound/AMAZON_SES_SETUP_NOTIFICATION',
       'inbound/gone',
+      'inbound/archive/billing/1',
       'reports/x.html',
     );
     expect(await feed).toEqual(done);
@@ -78,6 +79,7 @@ describe('messages that are hard to read', () => {
     expect(await station.metadata('reports/x.html')).toEqual({});
     expect(station.log.map(({ event }) => event).sort()).toEqual([
       'message-missing',
+      'object-skipped',
       'object-skipped',
       'object-skipped',
     ]);
