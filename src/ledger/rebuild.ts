@@ -11,7 +11,7 @@ import { type ServedTable, serve } from '../model/served-table.ts';
 import { keys } from '../store/keys.ts';
 import { encodeAbsorbed, readAbsorbed } from './absorbed.ts';
 import { commit } from './commit.ts';
-import { newId } from './ids.ts';
+import { laterOf, newId } from './ids.ts';
 import { encodeManifest, isNamed, type Manifest, type Renames, successor } from './manifest.ts';
 import { putNew, readTable } from './objects.ts';
 import { isOfStore } from './pace.ts';
@@ -49,7 +49,8 @@ export async function rebuild(
   counts: Counts,
   options: RebuildOptions,
 ): Promise<Rebuilt> {
-  const id = newId(world, from.floor, from.atMs);
+  // After everything that it replaces, so that as a floor it lets none of that stay.
+  const id = newId(world, latestName(from), from.atMs);
   checkCounts(counts, keys.bases + id);
   const table = await makeTable(world, desk, schema, from, counts, options);
   const [base, served] = [encodeCounts(counts), encodeTable(table)];
@@ -125,6 +126,10 @@ function isUnchanged(from: Manifest, now: Manifest, isExclusive: boolean): boole
     JSON.stringify(now.renames) === JSON.stringify(from.renames) &&
     from.segments.every(({ id }) => isNamed(now, id))
   );
+}
+
+function latestName({ floor, base, table, absorbed, segments }: Manifest): string {
+  return [floor, base ?? '', table ?? '', absorbed ?? '', ...segments.map((s) => s.id)].reduce(laterOf);
 }
 
 /** Keeps the manifest that is about to be replaced: together with the landing versions of its segments it tells every version

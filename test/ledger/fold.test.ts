@@ -1,0 +1,154 @@
+import { describe, expect, it } from 'vitest';
+import { compact } from '../../src/ledger/compaction.ts';
+import { foldClaims } from '../../src/ledger/fold.ts';
+import { recount } from '../../src/ledger/recount.ts';
+import { createMemoryStore } from '../../src/store/memory.ts';
+import type { Store } from '../../src/store/store.ts';
+import { claim, countsNow, desk, fold, schema, standings, startWeek, testWorld } from './fixture.ts';
+
+const kinds = (outcomes: readonly { kind: string }[]) => outcomes.map((o) => o.kind);
+
+describe('a fold', () => {
+  it('puts a confirmed message into the counts of its queue and week', async () => {
+    const world = testWorld();
+    expect(await fold(world, claim('m1', 'billing'), claim('m2', 'leaks'))).toEqual([
+      { kind: 'folded' },
+      { kind: 'folded' },
+    ]);
+    const counts = await countsNow(world);
+    expect(counts.columns).toEqual([
+      { queue: 'billing', epoch: startWeek },
+      { queue: 'leaks', epoch: startWeek },
+    ]);
+    expect([...counts.messages]).toEqual([1, 1]);
+    // Each message has two tokens.
+    expect([...counts.regions[0].total]).toEqual([2, 2]);
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'billing', m2: 'leaks' });
+  });
+
+  it('counts a repeated delivery once', async () => {
+    const world = testWorld();
+    await fold(world, claim('m1', 'billing'));
+    const { version } = await recount(world, desk, schema);
+    expect(kinds(await fold(world, claim('m1', 'billing'), claim('m1', 'billing')))).toEqual([
+      'already',
+      'already',
+    ]);
+    expect(await standings(world, ['m1'])).toEqual({ m1: 'billing' });
+    expect((await recount(world, desk, schema)).version).toBe(version);
+  });
+
+  it('moves a corrected message, and only it', async () => {
+    const world = testWorld();
+    await fold(world, claim('m1', 'billing'), claim('m2', 'billing'));
+    expect(kinds(await fold(world, claim('m1', 'leaks', 5)))).toEqual(['folded']);
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'leaks', m2: 'billing' });
+    expect((await recount(world, desk, schema)).differences).toEqual([]);
+  });
+
+  it('lets the newest confirmation stand, whatever the order of delivery', async () => {
+    const world = testWorld();
+    await fold(world, claim('m1', 'leaks', 5));
+    expect(kinds(await fold(world, claim('m1', 'billing', 1)))).toEqual(['stale']);
+    expect(kinds(await fold(world, claim('m1', 'billing', 1)))).toEqual(['already']);
+    expect(await standings(world, ['m1'])).toEqual({ m1: 'leaks' });
+  });
+
+  it('settles several confirmations of one message within a batch', async () => {
+    const world = testWorld();
+    const outcomes = await fold(
+      world,
+      claim('m1', 'billing', 1),
+      claim('m1', 'leaks', 2),
+      claim('m1', 'meters', 0),
+      claim('m1', 'leaks', 2),
+    );
+    expect(kinds(outcomes)).toEqual(['folded', 'folded', 'stale', 'folded']);
+    expect(await standings(world, ['m1'])).toEqual({ m1: 'leaks' });
+    expect((await countsNow(world)).messages[0]).toBe(1);
+  });
+
+  it('refuses an unknown queue and an impossible time, and folds the rest', async () => {
+    const world = testWorld();
+    const outcomes = await fold(
+      world,
+      claim('m1', 'nowhere'),
+      claim('m2', 'billing', 3 * 24 * 60),
+      claim('m3', 'leaks'),
+    );
+    expect(kinds(outcomes)).toEqual(['refused', 'refused', 'folded']);
+    expect(outcomes[0]).toMatchObject({ fault: { code: 'queue-unknown', got: 'nowhere' } });
+    expect(outcomes[1]).toMatchObject({ fault: { code: 'confirmation-time-refused' } });
+    expect(await standings(world, ['m1', 'm2', 'm3'])).toEqual({ m3: 'leaks' });
+  });
+
+  it('writes once for each message and twice for the batch: 1,000 confirmations, 1,002 writes', async () => {
+    const counted = countingStore(createMemoryStore());
+    const world = testWorld(1, counted.store);
+    const claims = Array.from({ length: 1000 }, (_, i) => claim(`m${i}`, i % 2 ? 'billing' : 'leaks'));
+    expect(new Set(kinds(await fold(world, ...claims)))).toEqual(new Set(['folded']));
+    expect(counted.calls.put).toBe(1002);
+    expect(counted.calls.list ?? 0).toBe(0);
+    expect(counted.calls.delete ?? 0).toBe(0);
+    expect([...(await countsNow(world)).messages]).toEqual([500, 500]);
+  });
+
+  it('leaves a damaged history alone, names it, and folds the rest', async () => {
+    const world = testWorld();
+    await world.store.put('histories/m1.json', Buffer.from('{"format":1,"rev":3}'));
+    const outcomes = await fold(world, claim('m1', 'billing'), claim('m2', 'leaks'));
+    expect(outcomes[0]).toMatchObject({
+      kind: 'retry',
+      fault: { code: 'object-damaged', place: 'histories/m1.json' },
+    });
+    expect(outcomes[1]).toEqual({ kind: 'folded' });
+  });
+
+  it('says which object is damaged when the manifest is', async () => {
+    const world = testWorld();
+    await fold(world, claim('m1', 'billing'));
+    await world.store.put('model/manifest.json', Buffer.from('{"format":1,"version":-1}'));
+    expect(await fold(world, claim('m2', 'billing'))).toMatchObject([
+      { kind: 'retry', fault: { code: 'object-damaged', place: 'model/manifest.json#/version' } },
+    ]);
+  });
+
+  it('does not mix schemas: claims of another one are kept for later', async () => {
+    const world = testWorld();
+    await fold(world, claim('m1', 'billing'));
+    const other = { ...schema, id: '00000000000000b2' };
+    const features = { ...claim('m2', 'billing').features, schema: other.id };
+    const outcomes = await foldClaims(world, desk, other, [{ ...claim('m2', 'billing'), features }]);
+    expect(outcomes).toMatchObject([{ kind: 'retry', fault: { code: 'schema-mismatch' } }]);
+  });
+
+  it('keeps the record of what was said exact through corrections', async () => {
+    const world = testWorld();
+    const said = { queue: 'billing', posterior: 0.9, isAudit: false };
+    await fold(world, claim('m1', 'billing', 0, 'ann', said));
+    const hit = [...(await countsNow(world)).record];
+    await fold(world, claim('m1', 'leaks', 1));
+    const miss = [...(await countsNow(world)).record];
+    // One statement in one band: first a hit, then a miss; never both.
+    expect(hit.reduce((a, b) => a + b)).toBe(1);
+    expect(miss.reduce((a, b) => a + b)).toBe(1);
+    expect(hit.indexOf(1) + 1).toBe(miss.indexOf(1));
+    await compact(world, desk, schema);
+    expect((await recount(world, desk, schema)).differences).toEqual([]);
+  });
+});
+
+function countingStore(inner: Store): { store: Store; calls: Record<string, number> } {
+  const calls: Record<string, number> = {};
+  const store = new Proxy(inner, {
+    get(target, name: keyof Store) {
+      const member = target[name];
+      if (typeof member !== 'function') return member;
+      return (...args: unknown[]) => {
+        calls[name] = (calls[name] ?? 0) + 1;
+        return (member as (...a: unknown[]) => unknown).apply(target, args);
+      };
+    },
+  });
+  return { store, calls };
+}
