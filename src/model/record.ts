@@ -12,6 +12,13 @@ export function bandOf(posterior: number): number {
   return Math.min(recordBands - 1, Math.max(0, Math.floor((logOdds - firstEdge) / bandWidth)));
 }
 
+/** Probabilities at which bands meet: band b reaches from edges[b] to edges[b + 1]; [bands + 1]. */
+export function bandEdges(): number[] {
+  return Array.from({ length: recordBands + 1 }, (_, b) =>
+    b === 0 ? 0 : b === recordBands ? 1 : 1 / (1 + Math.exp(-(firstEdge + b * bandWidth))),
+  );
+}
+
 /** Adds one statement to the record in place: `record[4 * band + 2 * isAudit + (0 for hit, 1 for miss)] += sign`. */
 export function recordSaid(record: Float64Array, said: Said, confirmed: string, sign: number): void {
   record[4 * bandOf(said.posterior) + (said.isAudit ? 2 : 0) + (said.queue === confirmed ? 0 : 1)] += sign;
