@@ -5,7 +5,7 @@ import { fitTable } from '../model/fit-table.ts';
 import { readManifest } from './commit.ts';
 import { deleteUnnamed } from './deletion.ts';
 import { finishOrders } from './finish-orders.ts';
-import { checkSchema, type Manifest } from './manifest.ts';
+import { checkSchema, isPurgeDue, type Manifest } from './manifest.ts';
 import { readCounts, withFresh } from './objects.ts';
 import { type FitModel, rebuild } from './rebuild.ts';
 import type { World } from './world.ts';
@@ -64,7 +64,8 @@ async function compactOnce(
   const { manifest } = await readManifest(world);
   checkSchema(manifest, schema);
   const segments = manifest.segments.length;
-  if (segments === 0 && !(options.force && manifest.base !== null)) return nothingNew(manifest);
+  const isDue = segments > 0 || isPurgeDue(manifest) || (options.force === true && manifest.base !== null);
+  if (!isDue) return nothingNew(manifest);
   const counts = await readCounts(world, schema, manifest);
   const measured = {
     version: manifest.version,

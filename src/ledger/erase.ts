@@ -2,9 +2,11 @@ import { bounds } from '../bounds.ts';
 import type { Fault } from '../errors.ts';
 import type { Schema } from '../features/schema.ts';
 import { keys } from '../store/keys.ts';
+import { commit, readManifest } from './commit.ts';
 import { isTombstone } from './history.ts';
 import { readHistory } from './history-store.ts';
 import { type Landing, land, type Work } from './land.ts';
+import { successor } from './manifest.ts';
 import { placeOrder } from './orders.ts';
 import { mapBounded } from './pace.ts';
 import type { World } from './world.ts';
@@ -76,14 +78,16 @@ export async function carryOutErasure(
   messages: readonly string[],
   atMs: number,
 ): Promise<EraseResult> {
+  const { version } = (await readManifest(world)).manifest;
   await mapBounded(messages, (message) => world.store.delete(keys.inbound + message));
   const works = messages.map((message): Work => ({ message, requests: [{ kind: 'erase', atMs }] }));
   // Once to take it out of the counts; then, since nothing stands there any more, to leave the tombstone.
   const first = await land(world, schema, works, { patienceMs: 0 });
   const second = await land(world, schema, works, { patienceMs: 0 });
   await deleteDrops(world, new Set(messages));
+  const isMarked = await markErased(world, version);
   const erasures = messages.map((message, i) => erasureOf(message, first[i], second[i]));
-  return { erasures, isDone: erasures.every(({ kind }) => kind !== 'unfinished'), traces };
+  return { erasures, isDone: isMarked && erasures.every(({ kind }) => kind !== 'unfinished'), traces };
 }
 
 function erasureOf(message: string, first: Landing, second: Landing): Erasure {
@@ -100,6 +104,16 @@ async function preview(world: World, message: string): Promise<Erasure> {
   if (stored !== null && isTombstone(stored))
     return { message, kind: 'already', confirmations: 0, fault: null };
   return { message, kind: 'dry-run', confirmations: stored?.confirmations.length ?? 0, fault: null };
+}
+
+/** Lets the next compaction delete older objects, also when the message stood nowhere in the counts any more. */
+async function markErased(world: World, since: number): Promise<boolean> {
+  const marked = await commit(world, async (manifest) => {
+    if (manifest.erasedAtVersion > since) return { kind: 'settled', value: null };
+    const next = successor(manifest, world.nowMs(), { erasedAtVersion: manifest.version + 1 });
+    return { kind: 'write', next, value: null };
+  });
+  return marked.kind === 'known';
 }
 
 /** Confirmations of erased messages would be refused anyway; they name the message. */

@@ -8,8 +8,6 @@ export interface SegmentRef {
   readonly id: string;
   /** The version that brought it in. */
   readonly version: number;
-  /** It takes an erased message's features out, and therefore holds them. */
-  readonly erases: boolean;
 }
 
 /** What the counts consist of: the one object that changes, and only by compare-and-set. */
@@ -42,6 +40,8 @@ export interface Manifest {
   readonly shapedAtVersion: number;
   /** The version that last took an erased message out; what was before it cannot be restored. */
   readonly erasedAtVersion: number;
+  /** Objects older than the base that stood at this version are being deleted, since they may hold what was erased until then. */
+  readonly purgedAtVersion: number;
   /** Versions below it cannot be restored: their objects are being deleted. */
   readonly oldestVersion: number;
 }
@@ -76,6 +76,7 @@ export const emptyManifest: Manifest = {
   renames: {},
   shapedAtVersion: 0,
   erasedAtVersion: 0,
+  purgedAtVersion: 0,
   oldestVersion: 0,
 };
 
@@ -106,8 +107,7 @@ export function decodeManifest(bytes: Uint8Array, place: string): Manifest {
     base: isNameOrNull,
     table: isNameOrNull,
     absorbed: isNameOrNull,
-    segments: (v) =>
-      isListOf(v, (s: SegmentRef) => isId(s?.id) && isVersion(s.version) && typeof s.erases === 'boolean'),
+    segments: (v) => isListOf(v, (s: SegmentRef) => isId(s?.id) && isVersion(s.version)),
     voided: (v) => isListOf(v, isId),
     floor: (v) => typeof v === 'string',
     rolledBack: (v) => isListOf(v, isId),
@@ -118,6 +118,7 @@ export function decodeManifest(bytes: Uint8Array, place: string): Manifest {
       Object.values(v).every((q) => typeof (q as Renamed)?.to === 'string'),
     shapedAtVersion: isVersion,
     erasedAtVersion: isVersion,
+    purgedAtVersion: isVersion,
     oldestVersion: isVersion,
   };
   for (const [member, isRight] of Object.entries(checks)) {
@@ -167,7 +168,7 @@ export function withSegment(
   const version = before.version + 1;
   return successor(before, nowMs, {
     schema,
-    segments: [...before.segments, { id, version, erases }],
+    segments: [...before.segments, { id, version }],
     ...(erases ? { erasedAtVersion: version } : {}),
   });
 }
@@ -226,4 +227,9 @@ export function checkSchema(manifest: Manifest, schema: Schema): void {
     expected: `schema ${schema.id} of the desk's file`,
     got: `schema ${manifest.schema}; count again with the new one`,
   });
+}
+
+/** Something was erased since the last compaction that deleted all that may hold it. */
+export function isPurgeDue(manifest: Manifest): boolean {
+  return manifest.erasedAtVersion > manifest.purgedAtVersion;
 }

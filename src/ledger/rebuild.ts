@@ -12,7 +12,7 @@ import { keys } from '../store/keys.ts';
 import { encodeAbsorbed, readAbsorbed } from './absorbed.ts';
 import { commit } from './commit.ts';
 import { laterOf, newId } from './ids.ts';
-import { encodeManifest, isNamed, type Manifest, type Renames, successor } from './manifest.ts';
+import { encodeManifest, isNamed, isPurgeDue, type Manifest, type Renames, successor } from './manifest.ts';
 import { putNew, readTable } from './objects.ts';
 import { isOfStore } from './pace.ts';
 import { currentName } from './queue-names.ts';
@@ -64,12 +64,12 @@ export async function rebuild(
     [keys.absorbed + id, encodeAbsorbed(absorbed)],
   ];
   for (const [key, body] of made) await putNew(world, key, body);
-  const erases = from.segments.some((s) => s.erases);
+  const isPurge = isPurgeDue(from);
   const committed = await commit<boolean>(world, async (manifest) => {
     if (manifest.base === id) return { kind: 'settled', value: true };
     if (!isUnchanged(from, manifest, options.isExclusive ?? false)) return { kind: 'settled', value: false };
     await archive(world, manifest);
-    const floor = erases ? id : manifest.floor;
+    const floor = isPurge ? id : manifest.floor;
     const next = successor(manifest, world.nowMs(), {
       schema: schema.id,
       base: id,
@@ -80,8 +80,9 @@ export async function rebuild(
       floor,
       renames: options.renames,
       shapedAtVersion: manifest.version + 1,
+      purgedAtVersion: isPurge ? from.version : manifest.purgedAtVersion,
       // The superseded objects hold features of the erased: nothing before this can come back.
-      oldestVersion: erases ? manifest.version + 1 : manifest.oldestVersion,
+      oldestVersion: isPurge ? manifest.version + 1 : manifest.oldestVersion,
     });
     return { kind: 'write', next, value: true, gone: absorbed };
   });

@@ -25,7 +25,8 @@ export interface RestoreResult {
 
 /** Returns the counts to what they were at an earlier version: all that landed since is taken back, and the histories say so, so
  *  that a recount agrees and repeated deliveries change nothing. One compare-and-set; readers see the old state or the new
- *  one. What is being folded starts again on the restored counts. Names of queues stay as they are now.
+ *  one. Confirmations that changed no count (they were outranked, or said the same again) stay on record. What is being
+ *  folded starts again on the restored counts. Names of queues stay as they are now.
  *  Throws TallypostError `version-unknown` for a version that does not exist, is past the horizon, lies before an erasure
  *  (its objects hold what was erased), or was itself taken back by a restore. */
 export async function restoreVersion(

@@ -62,10 +62,21 @@ export class Oracle {
   fateOf(d: Delivered): Fate {
     if (d.acknowledgedAt === null) return 'either';
     const fates = [
-      ...this.restores.map((r) => afterRestore(d.startedAt as number, d.acknowledgedAt as number, r)),
+      ...this.restores.map((r) => this.#afterRestore(d, r)),
       ...this.undos.filter((u) => isInScope(d, u)).map((u) => this.#afterUndo(d, u)),
     ];
     return fates.includes('out') ? 'out' : fates.includes('either') ? 'either' : 'live';
+  }
+
+  #afterRestore(d: Delivered, { at, toAt }: Restored): Fate {
+    const [startedAt, acknowledgedAt] = [d.startedAt as number, d.acknowledgedAt as number];
+    if (acknowledgedAt < toAt || startedAt > at) return 'live';
+    if (startedAt <= toAt || acknowledgedAt > at) return 'either';
+    // What changed nothing in the counts, since it was outranked or said the same, is not taken back.
+    const others = this.delivered.filter((o) => o !== d && o.confirmation.message === d.confirmation.message);
+    const mayHaveCovered = (o: Delivered) =>
+      ranksAbove(o, d) || columnOf(o.confirmation) === columnOf(d.confirmation);
+    return others.some((o) => o.startedAt !== null && mayHaveCovered(o)) ? 'either' : 'out';
   }
 
   #afterUndo(d: Delivered, undo: Undo): Fate {
@@ -83,11 +94,6 @@ export class Oracle {
       );
     return fates.includes('either') ? 'either' : fates.includes('live') ? 'live' : 'out';
   }
-}
-
-function afterRestore(startedAt: number, acknowledgedAt: number, { at, toAt }: Restored): Fate {
-  if (acknowledgedAt < toAt || startedAt > at) return 'live';
-  return startedAt > toAt && acknowledgedAt < at ? 'out' : 'either';
 }
 
 function isInScope({ confirmation }: Delivered, undo: Undo): boolean {
