@@ -2,8 +2,18 @@ import type { Features } from '../features/schema.ts';
 import { tokenHex } from '../features/schema.ts';
 import type { Block } from './fit.ts';
 import type { EvidencePart, Posterior } from './posterior.ts';
-import { blockScores, lengthScale, priorScore, slotScore, visitContributions } from './score.ts';
-import { countTokens, type Scorer } from './scorer.ts';
+import {
+  addToken,
+  blockScores,
+  emptySums,
+  lengthScale,
+  partOf,
+  priorScore,
+  type ReadingSums,
+  slotScore,
+} from './score.ts';
+import { countTokens, rowOf, type Scorer, type ScorerReading } from './scorer.ts';
+import { tokenLogs } from './view.ts';
 
 /** log P(queue | x) = Σ_b w_bk · score_bk + bias_k, normalised over the queues. Never changes the scorer's table.
  *  Throws TallypostError `schema-mismatch`. */
@@ -67,19 +77,29 @@ export function explainParts(scorer: Scorer, features: Features): EvidencePart[]
   schema.regions.forEach(({ id }, g) => {
     const present = features.regions[g];
     const scale = lengthScale(present.length);
-    const sums = new Map<number, Float64Array>();
-    for (const reading of scorer.readings[g]) {
-      visitContributions(scorer, g, reading, present, null, (index, token, contribution) => {
-        const sum = sums.get(token) ?? new Float64Array(queues.length);
-        weighed(fit.blocks[index], contribution, scale).forEach((x, k) => {
-          sum[k] += x;
-        });
-        sums.set(token, sum);
-      });
+    /** Weighed sum over the readings of what `fill` adds to each. */
+    const part = (kind: string, value: string, fill: (sums: ReadingSums, reading: ScorerReading) => void) => {
+      const score = new Float64Array(queues.length);
+      for (const reading of scorer.readings[g]) {
+        const sums = emptySums(queues.length);
+        fill(sums, reading);
+        for (const { index, part } of reading.blocks) {
+          weighed(fit.blocks[index], partOf(sums, part), scale).forEach((x, k) => {
+            score[k] += x;
+          });
+        }
+      }
+      parts.push({ kind, place: id, value, score });
+    };
+    if (scorer.readings[g].some((reading) => reading.countsAbsent)) {
+      part('absent', '', (sums, { view }) => sums.absent.set(view.absent ?? new Float64Array(queues.length)));
     }
-    for (const [token, score] of sums) {
-      if (token < 0) parts.push({ kind: 'absent', place: id, value: '', score });
-      else parts.push({ kind: 'token', place: id, value: tokenHex(present[token]), score });
+    for (const token of present) {
+      const row = rowOf(scorer.regions[g], token);
+      if (row < 0) continue;
+      part('token', tokenHex(token), (sums, { view }) =>
+        addToken(sums, tokenLogs(scorer.regions[g], view, row)),
+      );
     }
   });
   return parts;

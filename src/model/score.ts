@@ -1,27 +1,8 @@
-import { bounds } from '../bounds.ts';
 import type { Features } from '../features/schema.ts';
+import type { TokensBlock } from './fit.ts';
 import { schemaMismatch } from './fold.ts';
-import { type Exposure, exposureWithout, type Hits, rateRatios } from './rates.ts';
-import {
-  absentFactors,
-  absentSum,
-  clampHits,
-  createHits,
-  readHits,
-  rowOf,
-  type Scorer,
-  type ScorerReading,
-  type ScorerRegion,
-  type TokenLogs,
-} from './scorer.ts';
-
-/** A folded message that is scored as if it had not been folded. */
-export interface Own {
-  /** Index of the queue under which it stands. */
-  readonly queue: number;
-  /** Its weight in that queue's counts. */
-  readonly weight: number;
-}
+import { type Own, rowOf, type Scorer, type ScorerReading, type ScorerRegion } from './scorer.ts';
+import { createView, type TokenLogs, tokenLogs, type View, viewLeaving } from './view.ts';
 
 /** Each block's score, before exponents: nats; [blocks * queues], block-major. With `own` the message's contribution is
  *  taken out of its queue's counts and exposures first (leave-one-out), exactly as unfolding it would.
@@ -43,10 +24,10 @@ export function blockScores(scorer: Scorer, features: Features, own: Own | null 
   });
   scorer.readings.forEach((readings, g) => {
     const scale = lengthScale(features.regions[g].length);
+    const rows = Int32Array.from(features.regions[g], (token) => rowOf(scorer.regions[g], token));
     for (const reading of readings) {
-      visitContributions(scorer, g, reading, features.regions[g], own, (block, _, contribution) =>
-        add(block, contribution, scale),
-      );
+      const sums = sumTokens(scorer.regions[g], viewOf(scorer.regions[g], reading, rows, own), rows);
+      for (const { index, part } of reading.blocks) add(index, partOf(sums, part), scale);
     }
   });
   return scores;
@@ -77,120 +58,51 @@ export function lengthScale(tokens: number): number {
   return 1 / Math.sqrt(1 + tokens);
 }
 
-/** Calls `visit` with what each present token adds to each block of a reading, before length scaling and exponents, and
- *  with what all absent tokens add together (token index -1). The array is reused between calls; [queues]. */
-export function visitContributions(
-  scorer: Scorer,
-  g: number,
-  reading: ScorerReading,
-  present: Float64Array,
-  own: Own | null,
-  visit: (block: number, token: number, contribution: Float64Array) => void,
-): void {
-  const queues = scorer.queues.length;
-  const region = scorer.regions[g];
-  const rows = Int32Array.from(present, (token) => rowOf(region, token));
-  const exposure = own === null ? reading.exposure : exposureLeaving(scorer, g, reading, rows, own);
-  const contribution = new Float64Array(queues);
-  if (reading.countsAbsent) {
-    const all = own === null ? reading.absent : absentLeaving(scorer, g, reading, own);
-    for (const { index, part } of reading.blocks)
-      if (part === 'all' || part === 'absent') visit(index, -1, all);
-  }
-  for (let t = 0; t < rows.length; t++) {
-    if (rows[t] < 0) continue;
-    const { present: logs, absent } =
-      own === null ? logsOf(region, reading, rows[t]) : logsLeaving(region, reading, rows[t], exposure, own);
-    for (const { index, part } of reading.blocks) {
-      for (let k = 0; k < queues; k++) {
-        if (part === 'all') contribution[k] = logs[k] - (absent === null ? 0 : absent[k]);
-        else if (part === 'for') contribution[k] = Math.max(logs[k], 0);
-        else if (part === 'against') contribution[k] = Math.min(logs[k], 0);
-        else contribution[k] = absent === null ? 0 : -absent[k];
-      }
-      visit(index, t, contribution);
-    }
-  }
+/** Sums over a message's tokens, before length scaling and exponents; each [queues]. */
+export interface ReadingSums {
+  /** Σ of present tokens' contributions above 0, and below. */
+  readonly for: Float64Array;
+  readonly against: Float64Array;
+  /** Σ over the tokens that are absent. */
+  readonly absent: Float64Array;
 }
 
-/** A row's logs as the table stands; remembered, since a few thousand tokens make up most of all mail. */
-function logsOf(region: ScorerRegion, reading: ScorerReading, row: number): TokenLogs {
-  const known = reading.remembered.get(row);
-  if (known) return known;
-  const hits = createHits(reading.exposure.draws.length);
-  readHits(region, row, -1, 0, hits);
-  const logs = {
-    present: presentLogs(reading.exposure, hits),
-    absent: reading.countsAbsent ? absentLogs(reading.exposure, hits) : null,
+function sumTokens(region: ScorerRegion, view: View, rows: Int32Array): ReadingSums {
+  const sums = emptySums(view.exposure.draws.length);
+  if (view.absent !== null) sums.absent.set(view.absent);
+  for (const row of rows) if (row >= 0) addToken(sums, tokenLogs(region, view, row));
+  return sums;
+}
+
+export function emptySums(queues: number): ReadingSums {
+  return {
+    for: new Float64Array(queues),
+    against: new Float64Array(queues),
+    absent: new Float64Array(queues),
   };
-  if (reading.remembered.size * hits.queue.length < bounds.rememberedLogsMax)
-    reading.remembered.set(row, logs);
-  return logs;
 }
 
-/** A row's logs without the message: what it adds when present, and what had been summed for it as absent. */
-function logsLeaving(
-  region: ScorerRegion,
-  reading: ScorerReading,
-  row: number,
-  exposure: Exposure,
-  own: Own,
-): TokenLogs {
-  const hits = createHits(exposure.draws.length);
-  let absent: Float64Array | null = null;
-  if (reading.countsAbsent) {
-    readHits(region, row, -1, 0, hits);
-    absent = absentLogs(exposure, hits);
+/** Adds what one present token contributes; it leaves the sum of the absent ones. */
+export function addToken(sums: ReadingSums, { present, absent }: TokenLogs): void {
+  for (let k = 0; k < present.length; k++) {
+    if (present[k] > 0) sums.for[k] += present[k];
+    else sums.against[k] += present[k];
   }
-  readHits(region, row, own.queue, own.weight, hits);
-  return { present: presentLogs(exposure, hits), absent };
+  if (absent !== null) for (let k = 0; k < absent.length; k++) sums.absent[k] -= absent[k];
 }
 
-/** log p_k/m; 0 for a token that nothing holds; [queues]. */
-function presentLogs(exposure: Exposure, hits: Hits): Float64Array {
-  const logs = new Float64Array(exposure.draws.length);
-  if (hits.length === 0) return logs;
-  rateRatios(exposure, hits, logs);
-  for (let k = 0; k < logs.length; k++) logs[k] = Math.log(logs[k]);
-  return logs;
+/** What a block takes of its reading's sums; [queues]. */
+export function partOf(sums: ReadingSums, part: TokensBlock['part']): Float64Array {
+  return part === 'all' ? sums.for.map((x, k) => x + sums.against[k] + sums.absent[k]) : sums[part];
 }
 
-/** log (1 - p_k)/(1 - m); [queues]. */
-function absentLogs(exposure: Exposure, hits: Hits): Float64Array {
-  if (hits.length === 0) return new Float64Array(exposure.draws.length);
-  clampHits(hits, exposure);
-  return absentFactors(exposure, hits).map(Math.log);
-}
-
-/** The exposure as it would be had the message not been folded: its draws, and the tokens that only it holds. */
-function exposureLeaving(
-  scorer: Scorer,
-  g: number,
-  reading: ScorerReading,
-  rows: Int32Array,
-  own: Own,
-): Exposure {
-  const { exposure } = reading;
-  if (exposure.reading.draws === 'messages') return exposureWithout(exposure, own.queue, own.weight, 0);
-  const hits = createHits(scorer.queues.length);
-  let only = 0;
-  for (const row of rows) {
-    if (row < 0) continue;
-    readHits(scorer.regions[g], row, own.queue, own.weight, hits);
-    if (hits.length === 0) only++;
-  }
-  return exposureWithout(exposure, own.queue, own.weight * rows.length, only);
-}
-
-/** The absent tokens' sum with the message's draw taken out. It depends on the message through its queue and weight only,
- *  since every token of the message itself is corrected for afterwards. */
-function absentLeaving(scorer: Scorer, g: number, reading: ScorerReading, own: Own): Float64Array {
+function viewOf(region: ScorerRegion, reading: ScorerReading, rows: Int32Array, own: Own | null): View {
+  if (own === null) return reading.view;
+  const { exposure } = reading.view;
+  if (exposure.reading.draws === 'tokens') return viewLeaving(region, exposure, rows, own);
   const key = `${own.queue} ${own.weight}`;
-  let known = reading.absentLeaving.get(key);
-  if (known === undefined) {
-    known = absentSum(scorer.regions[g], exposureWithout(reading.exposure, own.queue, own.weight, 0));
-    reading.absentLeaving.set(key, known);
-  }
+  const known = reading.leaving.get(key) ?? createView(region, exposure, reading.countsAbsent, own);
+  reading.leaving.set(key, known);
   return known;
 }
 

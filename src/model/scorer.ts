@@ -2,9 +2,10 @@ import type { Features, Schema } from '../features/schema.ts';
 import type { Counts, Entry, RegionCounts } from './counts.ts';
 import type { Block, Fit, Reading, TokensBlock } from './fit.ts';
 import { addCounts, deltaOf } from './fold.ts';
-import { type Exposure, exposureOf, type Hits, pooledRate, rateRatios } from './rates.ts';
+import { exposureOf } from './rates.ts';
 import { type ServedTable, weightOf } from './served-table.ts';
 import { indexOfToken } from './sparse.ts';
+import { createView, type View } from './view.ts';
 
 /** A table made ready to score messages for a list of queues. Immutable to its users: what it remembers between calls are
  *  values that follow from the table alone. */
@@ -30,23 +31,21 @@ export interface ScorerRegion {
 }
 
 export interface ScorerReading {
-  readonly exposure: Exposure;
   /** Blocks that sum contributions of this reading, with their place in the fit. */
   readonly blocks: readonly { readonly index: number; readonly part: TokensBlock['part'] }[];
   /** Whether absence is evidence: some block asks for it, and messages are drawn (a message draws no absent token). */
   readonly countsAbsent: boolean;
-  /** Σ_t log((1 - p_kt)/(1 - m_t)) over all tokens held, as if none were present; [queues]. */
-  readonly absent: Float64Array;
-  /** The same without one message of a queue, by queue and weight; filled as leave-one-out scores need it. */
-  readonly absentLeaving: Map<string, Float64Array>;
-  /** Logs of rows that were scored before, by row. */
-  readonly remembered: Map<number, TokenLogs>;
+  readonly view: View;
+  /** Views without one message of a queue, by queue and weight; filled as leave-one-out scores need them. */
+  readonly leaving: Map<string, View>;
 }
 
-/** What a token adds: log p_k/m when present, log (1 - p_k)/(1 - m) when absent (null where that is not counted); [queues]. */
-export interface TokenLogs {
-  readonly present: Float64Array;
-  readonly absent: Float64Array | null;
+/** A folded message that is scored as if it had not been folded. */
+export interface Own {
+  /** Index of the queue under which it stands. */
+  readonly queue: number;
+  /** Its weight in that queue's counts. */
+  readonly weight: number;
 }
 
 /** Compiles a served table with the entries that came after it. Queues without a column have counts of zero; columns of
@@ -83,8 +82,12 @@ export function createScorer(
       const exposure = exposureOf(reading, draws[reading.draws], table.vocabulary[g] + added);
       const countsAbsent =
         reading.draws === 'messages' && blocks.some((b) => b.part === 'all' || b.part === 'absent');
-      const absent = countsAbsent ? absentSum(regions[g], exposure) : new Float64Array(queues.length);
-      return { exposure, blocks, countsAbsent, absent, absentLeaving: new Map(), remembered: new Map() };
+      return {
+        blocks,
+        countsAbsent,
+        view: createView(regions[g], exposure, countsAbsent),
+        leaving: new Map(),
+      };
     });
   });
   return { schema, queues, fit: table.fit, messages, slots, regions, readings };
@@ -147,91 +150,6 @@ function readingsOf(
     else found.set(key, { reading: block, blocks: [{ index, part: block.part }] });
   });
   return [...found.values()];
-}
-
-export function createHits(queues: number): Hits {
-  return { queue: new Uint32Array(queues), count: new Float64Array(queues), length: 0, seen: 0 };
-}
-
-/** The counts of row i by queue; `own` of them (of weight `weight`) left out. */
-export function readHits(region: ScorerRegion, i: number, own: number, weight: number, hits: Hits): void {
-  const { start, column, count } = region.counts;
-  hits.length = 0;
-  hits.seen = 0;
-  for (let p = start[i]; p < start[i + 1]; p++) {
-    const k = region.queueOf[column[p]];
-    if (k < 0) continue;
-    const left = k === own ? count[p] - weight : count[p];
-    if (left <= 0) continue;
-    hits.queue[hits.length] = k;
-    hits.count[hits.length++] = left;
-    hits.seen += left;
-  }
-}
-
-/** No more hits than draws. They can only be more where a message's draw was taken out and a token was in every message of
- *  its queue, that message included; such a token is corrected for by whoever took the draw out. */
-export function clampHits(hits: Hits, exposure: Exposure): void {
-  hits.seen = 0;
-  for (let h = 0; h < hits.length; h++) {
-    hits.count[h] = Math.min(hits.count[h], exposure.draws[hits.queue[h]]);
-    hits.seen += hits.count[h];
-  }
-}
-
-/** Σ_t log((1 - p_kt)/(1 - m_t)) over all tokens of a region. Tokens seen once or twice, most of all, fall into few kinds
- *  that add the same; of the others the factors are multiplied, and a logarithm is taken only when the product nears the end
- *  of the range. O(cells + tokens · queues). Shape: [queues]. */
-export function absentSum(region: ScorerRegion, exposure: Exposure): Float64Array {
-  const queues = exposure.draws.length;
-  const hits = createHits(queues);
-  const product = new Float64Array(queues).fill(1);
-  const sum = new Float64Array(queues);
-  const kinds = new Map<number, { readonly factor: Float64Array; times: number }>();
-  for (let i = 0; i < region.counts.tokens.length; i++) {
-    readHits(region, i, -1, 0, hits);
-    if (hits.length === 0) continue;
-    const kind = kindOf(hits, queues);
-    const same = kind < 0 ? undefined : kinds.get(kind);
-    if (same) {
-      same.times++;
-      continue;
-    }
-    clampHits(hits, exposure);
-    const factor = absentFactors(exposure, hits);
-    if (kind >= 0) {
-      kinds.set(kind, { factor, times: 1 });
-      continue;
-    }
-    for (let k = 0; k < queues; k++) {
-      product[k] *= factor[k];
-      if (product[k] > 1e200 || product[k] < 1e-200) {
-        sum[k] += Math.log(product[k]);
-        product[k] = 1;
-      }
-    }
-  }
-  for (const { factor, times } of kinds.values())
-    for (let k = 0; k < queues; k++) sum[k] += times * Math.log(factor[k]);
-  return sum.map((s, k) => s + Math.log(product[k]));
-}
-
-/** (1 - p_k)/(1 - m); [queues]. */
-export function absentFactors(exposure: Exposure, hits: Hits): Float64Array {
-  const factors = new Float64Array(exposure.draws.length);
-  rateRatios(exposure, hits, factors);
-  const m = pooledRate(exposure, hits.seen);
-  for (let k = 0; k < factors.length; k++) factors[k] = (1 - factors[k] * m) / (1 - m);
-  return factors;
-}
-
-/** Which queues hold the one or two sightings of a token; -1 for any other token. */
-function kindOf({ seen, length, queue, count }: Hits, queues: number): number {
-  if (seen === 1 && length === 1) return queue[0];
-  if (seen !== 2 || (length === 2 && count[0] !== 1)) return -1;
-  const [a, b] =
-    length === 1 ? [queue[0], queue[0]] : [Math.min(queue[0], queue[1]), Math.max(queue[0], queue[1])];
-  return queues * (1 + a) + b;
 }
 
 /** Where a token stands in a region: its row, or -1 when it was never seen or was pruned. */

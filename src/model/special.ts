@@ -11,7 +11,7 @@ export function logBetaBinomial(k: number, n: number, a: number, b: number): num
 /** logBetaBinomial(k, n, a, b) - logBetaBinomial(0, n, a, b), which for whole k is the log of
  *  Π_{i<k} (a + i)/(b + n - 1 - i): no gamma function for the small counts that nearly all cells hold. */
 export function logHits(k: number, n: number, a: number, b: number): number {
-  if (k <= 16 && Number.isInteger(k)) {
+  if (k <= 32 && Number.isInteger(k)) {
     let odds = 1;
     for (let i = 0; i < k; i++) odds *= (a + i) / (b + n - 1 - i);
     return Math.log(odds);
