@@ -12,6 +12,10 @@ const replacement = '\ufffd';
  *  `hintCharset` is tried for 8-bit bytes that nothing declares: the charset of the subject's encoded words. */
 export function decodeBody(part: Part, defects: Defects, hintCharset: string): string {
   const bytes = decodeTransfer(part, Buffer.concat(part.pieces), defects);
+  if (isBinary(bytes, part.charset)) {
+    defects.add('text-unreadable', part.number);
+    return '';
+  }
   const text = decodeText(bytes, declaredCharset(part, bytes), part.number, defects, hintCharset);
   const lines = text.includes('\r') ? text.replace(/\r\n?/g, '\n') : text;
   if (part.contentType !== 'text/plain' || (part.params.format ?? '').trim().toLowerCase() !== 'flowed') {
@@ -94,6 +98,18 @@ export function decodeText(
       ? hintCharset
       : 'windows-1252';
   return decodeCharset(bytes, guess).replaceAll(replacement, ' ');
+}
+
+/** Over a tenth control bytes: a file that carries the label of text by mistake or by intent. */
+function isBinary(bytes: Buffer, charset: string): boolean {
+  if (isStateful(charset)) return false;
+  let controls = 0;
+  for (let i = 0; i < bytes.length; i++) {
+    const byte = bytes[i]!;
+    if (byte < 0x20 && byte !== 0x09 && byte !== 0x0a && byte !== 0x0d && byte !== 0x1b && byte !== 0x0c)
+      controls++;
+  }
+  return controls * 10 > bytes.length;
 }
 
 const knownCharsets = new Map<string, boolean>();

@@ -15,6 +15,7 @@ export const defectKinds = {
   'text-cut': 'bound',
   'html-cut': 'bound',
   'html-depth-cut': 'bound',
+  'style-cut': 'bound',
   'subject-cut': 'bound',
   'recipients-cut': 'bound',
   'form-cut': 'bound',

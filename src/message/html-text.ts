@@ -102,6 +102,7 @@ export function readHtml(html: string, place: string, defects: Defects): HtmlTex
   tokenizer.write(html);
   tokenizer.end();
   if (scanner.isTooDeep) defects.add('html-depth-cut', place);
+  if (scanner.isStyleCut) defects.add('style-cut', place);
   if (scanner.hiddenChars > 0) defects.add('hidden-text', place);
   return { segments: scanner.takeSegments(), hiddenChars: scanner.hiddenChars };
 }
@@ -109,6 +110,7 @@ export function readHtml(html: string, place: string, defects: Defects): HtmlTex
 class HtmlScanner implements TokenizerCallbacks {
   hiddenChars = 0;
   isTooDeep = false;
+  isStyleCut = false;
   readonly #html: string;
   readonly #sheet = new StyleSheet();
   readonly #stack: Frame[] = [outermost];
@@ -119,6 +121,7 @@ class HtmlScanner implements TokenizerCallbacks {
   #attributeName = '';
   #attributes = new Map<string, string>();
   #css = '';
+  #styleChars = 0;
   #styles = new Map<string, OwnStyle>();
 
   readonly #segments: Segment[] = [];
@@ -192,9 +195,9 @@ class HtmlScanner implements TokenizerCallbacks {
   #extendAttribute(text: string): void {
     const name = this.#attributeName;
     const value = this.#attributes.get(name) ?? '';
-    if (value.length < bounds.attributeCharsMax) {
-      this.#attributes.set(name, (value + text).slice(0, bounds.attributeCharsMax));
-    }
+    const room = bounds.attributeCharsMax - value.length;
+    if (text.length > room) this.isStyleCut = true;
+    if (room > 0) this.#attributes.set(name, value + text.slice(0, room));
   }
 
   #open(name: string): void {
@@ -296,8 +299,16 @@ class HtmlScanner implements TokenizerCallbacks {
     this.#openCounts.set(frame.name, this.#openCounts.get(frame.name)! - 1);
   }
 
+  #extendStyle(text: string): void {
+    const room = bounds.styleCharsMax - this.#styleChars;
+    if (text.length > room) this.isStyleCut = true;
+    this.#css += text.slice(0, Math.max(0, room));
+    this.#styleChars += text.length;
+  }
+
   #endStyle(): void {
-    this.#sheet.read(this.#css);
+    if (this.#css === '') return;
+    if (!this.#sheet.read(this.#css)) this.isStyleCut = true;
     this.#css = '';
     this.#styles = new Map();
   }
@@ -307,7 +318,7 @@ class HtmlScanner implements TokenizerCallbacks {
   #write(text: string): void {
     const frame = this.#top;
     if (frame.isHidden || isUnseen(frame.look)) {
-      if (frame.name === 'style' && this.#css.length < bounds.styleCharsMax) this.#css += text;
+      if (frame.name === 'style') this.#extendStyle(text);
       else if (!frame.isUnshown) this.hiddenChars += text.replace(/\s|\p{DI}/gu, '').length;
       return;
     }

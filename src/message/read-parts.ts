@@ -53,12 +53,14 @@ export async function readParts(raw: RawMail, defects: Defects, nowMs?: () => nu
   return reader.finish();
 }
 
-/** What the splitter offers to a subclass but does not declare. */
+/** What the splitter has but does not declare. */
 interface LineSplitter {
+  readonly node: MimeNode & { readonly _headerlen: number; parseHeaders(): void };
   processLine(line: Buffer | false, isFinal: boolean, next: (error?: unknown) => void): void;
 }
 
-/** A splitter whose own failures come as its error event: it works from the event loop, where a throw ends the process. */
+/** A splitter whose own failures come as its error event (it works from the event loop, where a throw ends the process),
+ *  and which hands out the parts that a boundary ends inside their header as well. */
 function openSplitter(): Transform {
   const splitter = new Splitter({
     maxHeadSize: bounds.partHeaderBytesMax,
@@ -67,8 +69,13 @@ function openSplitter(): Transform {
   }) as Transform & LineSplitter;
   const processLine = splitter.processLine.bind(splitter);
   splitter.processLine = (line, isFinal, next) => {
+    const { node } = splitter;
     try {
       processLine(line, isFinal, next);
+      if (splitter.node !== node && !node.headers && node._headerlen > 0) {
+        node.parseHeaders();
+        splitter.push(node);
+      }
     } catch (error) {
       next(error instanceof Error ? error : new Error('line unreadable'));
     }
@@ -83,6 +90,7 @@ class MailReader {
   readonly #budget: Budget = openBudget();
   readonly #parts = new Map<MimeNode, Part>();
   #preambleBytes = 0;
+  readonly #preambleIsCut = new Set<Part>();
   #partHeaderBytes = 0;
   #root: Part | null = null;
   #splitter: Transform | null = null;
@@ -125,6 +133,9 @@ class MailReader {
     if (splitter !== null) {
       if (this.isStopped) splitter.destroy();
       else await new Promise<void>((done) => splitter.once('close', done).end());
+    }
+    for (const part of this.#preambleIsCut) {
+      if (part.children.length === 0) this.#defects.add('text-cut', part.number);
     }
     return { fields: this.#gate.fields, root: this.#root!, stoppedBy: this.#stoppedBy };
   }
@@ -243,5 +254,6 @@ class MailReader {
     const kept = bytes.subarray(0, Math.max(0, bounds.preambleBytesMax - this.#preambleBytes));
     if (kept.length > 0) part.pieces.push(Buffer.from(kept));
     this.#preambleBytes += kept.length;
+    if (kept.length < bytes.length) this.#preambleIsCut.add(part);
   }
 }

@@ -4,19 +4,20 @@ import { type Declarations, readDeclarations } from './style.ts';
 /** Rules of a style sheet that can hide text: those with one simple selector (`p`, `.c`, `#i`, `p.c`). */
 export class StyleSheet {
   readonly #rules = new Map<string, Declarations>();
+  #isFull = false;
 
   get isEmpty(): boolean {
     return this.#rules.size === 0;
   }
 
-  /** Adds the rules of a `<style>` element. Rules inside @media count for narrow screens or print, not for the text.
-   *  A scanner over braces: linear, no backtracking. */
-  read(css: string): void {
-    const text = stripCssComments(css.slice(0, bounds.styleCharsMax));
+  /** Adds the rules of a `<style>` element; false when there were more than are kept. Rules inside @media count for
+   *  narrow screens or print, not for the text. A scanner over braces: linear, no backtracking. */
+  read(css: string): boolean {
+    const text = stripCssComments(css);
     let at = 0;
     while (at < text.length) {
       const open = text.indexOf('{', at);
-      if (open < 0) return;
+      if (open < 0) break;
       const head = text.slice(at, open).trim();
       if (/^@(?:media|supports|layer|container)\b/.test(head)) {
         at = endOfBlock(text, open);
@@ -25,9 +26,10 @@ export class StyleSheet {
       const close = text.indexOf('}', open);
       const body = text.slice(open + 1, close < 0 ? text.length : close);
       if (!head.startsWith('@')) this.#add(head, body);
-      if (close < 0) return;
+      if (close < 0) break;
       at = close + 1;
     }
+    return !this.#isFull;
   }
 
   /** Declarations for an element, later rules over earlier ones within tag, class and id, in that order. */
@@ -53,6 +55,7 @@ export class StyleSheet {
       const known = this.#rules.get(name);
       if (known !== undefined) for (const [key, value] of declarations) known.set(key, value);
       else if (this.#rules.size < bounds.styleRulesMax) this.#rules.set(name, new Map(declarations));
+      else this.#isFull = true;
     }
   }
 }

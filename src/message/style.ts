@@ -29,9 +29,9 @@ export function readDeclarations(style: string, into: Declarations = new Map()):
     const name = item.slice(0, colon).trim().toLowerCase();
     const value = item
       .slice(colon + 1)
+      .toLowerCase()
       .replace('!important', '')
-      .trim()
-      .toLowerCase();
+      .trim();
     if (name !== '') into.set(name, value);
   }
   return into;
