@@ -5,6 +5,9 @@ import { build } from 'esbuild';
 const root = new URL('..', import.meta.url).pathname;
 const entries = {
   'cli/tallypost': 'src/cli/tallypost.ts',
+  // What `tallypost demo` plays: data beside the command line, no part of it.
+  'demo/scenario': 'test/scenario/scenario.ts',
+  'demo/desk': 'test/scenario/desk.ts',
   'functions/route/index': 'src/handlers/lambda/route.ts',
   'functions/confirm/index': 'src/handlers/lambda/confirm.ts',
   'functions/compact/index': 'src/handlers/lambda/compact.ts',

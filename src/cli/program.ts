@@ -1,5 +1,16 @@
 import { Command, CommanderError } from 'commander';
+import { addCompact } from './commands/compact.ts';
+import { addConfirm } from './commands/confirm.ts';
+import { addDemo } from './commands/demo.ts';
+import { addErase } from './commands/erase.ts';
+import { addExplain } from './commands/explain.ts';
+import { addInit } from './commands/init.ts';
+import { addQueue } from './commands/queue.ts';
+import { addRecount } from './commands/recount.ts';
 import { addReplay } from './commands/replay.ts';
+import { addRestore } from './commands/restore.ts';
+import { addRun } from './commands/run.ts';
+import { addUndo } from './commands/undo.ts';
 import { exitCodes, type Terminal, writeError } from './terminal.ts';
 
 /** Runs one command line (without node and script) and gives its exit code. Writes only through `terminal`. */
@@ -15,9 +26,12 @@ export async function runProgram(args: readonly string[], terminal: Terminal): P
     .version('0.1.0')
     .helpCommand(false)
     .showHelpAfterError('(tallypost --help lists the commands, tallypost COMMAND --help its options)')
+    .enablePositionalOptions()
     .exitOverride()
     .configureOutput({ writeOut: terminal.out, writeErr: terminal.err });
-  addReplay(program, terminal, end);
+  for (const add of [addDemo, addInit, addRun, addConfirm, addExplain, addReplay, addCompact])
+    add(program, terminal, end);
+  for (const add of [addRecount, addErase, addUndo, addQueue, addRestore]) add(program, terminal, end);
   try {
     await program.parseAsync([...args], { from: 'user' });
     return code;
