@@ -224,7 +224,7 @@ class Round {
       return { features: decodeFeatures(encoded, this.#schema, historyKey(work.message)), said, minus, plus };
     });
     await putNew(this.#world, keys.segments + id, encodeEntries(this.#schema, entries));
-    const erases = planned.some(([{ requests }]) => requests.some((r) => r.kind === 'erase'));
+    const erases = planned.some(([, { move }]) => move?.erases);
     const committed = await commit<boolean>(this.#world, async (manifest, hasTried) => {
       if (isNamed(manifest, id)) return { kind: 'settled', value: true };
       if (hasTried && (await this.#absorbedOf(manifest))(id)) return { kind: 'settled', value: true };

@@ -48,6 +48,8 @@ export interface Move {
   readonly minus: Column | null;
   readonly plus: Column | null;
   readonly said: Said | null;
+  /** It takes the message out for good. */
+  readonly erases: boolean;
   /** As the history keeps them. */
   readonly encoded: string;
 }
@@ -90,7 +92,7 @@ class Draft {
   #isErasing: boolean;
   readonly #landed: readonly Placement[];
   readonly #last: Placement | null;
-  #erasedAtMs = 0;
+  #erasedAt: string;
   #undoneAt: string | null = null;
 
   constructor(message: string, stored: History | null, settled: Settled, schema: string) {
@@ -107,6 +109,7 @@ class Draft {
     this.#landed = Object.hasOwn(this.#features, schema) ? settled.landed : [];
     this.#last = this.#landed.at(-1) ?? null;
     this.#isErasing = stored?.isErasing ?? false;
+    this.#erasedAt = stored?.placements.at(-1)?.at ?? '';
   }
 
   carryOut(request: Request): Answer {
@@ -148,7 +151,7 @@ class Draft {
 
   #erase(atMs: number): Answer {
     this.#isErasing = true;
-    this.#erasedAtMs = atMs;
+    this.#erasedAt = new Date(atMs).toISOString();
     return done(this.#confirmations.length);
   }
 
@@ -180,19 +183,26 @@ class Draft {
       stored !== null && JSON.stringify({ ...next, rev: stored.rev }) === JSON.stringify(stored);
     return {
       next: isAsStored ? null : next,
-      move: isMoved ? { minus, plus, said: this.#said, encoded: this.#features[this.#schema] ?? '' } : null,
+      move: isMoved
+        ? {
+            minus,
+            plus,
+            said: this.#said,
+            erases: this.#isErasing,
+            encoded: this.#features[this.#schema] ?? '',
+          }
+        : null,
     };
   }
 
   #placement(top: Recorded | null, segment: string): Placement {
     if (top !== null) return { queue: top.queue, by: top.by, at: top.at, segment };
-    if (this.#isErasing)
-      return { queue: null, by: 'erase', at: new Date(this.#erasedAtMs).toISOString(), segment };
+    if (this.#isErasing) return { queue: null, by: 'erase', at: this.#erasedAt, segment };
     return { queue: null, by: 'undo', at: this.#undoneAt ?? this.#last?.at ?? '', segment };
   }
 
   #tombstone(stored: History | null): Stored {
-    return { format: 1, rev: (stored?.rev ?? 0) + 1, erasedAt: new Date(this.#erasedAtMs).toISOString() };
+    return { format: 1, rev: (stored?.rev ?? 0) + 1, erasedAt: this.#erasedAt };
   }
 }
 

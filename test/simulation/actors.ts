@@ -68,9 +68,9 @@ export async function foldDrops(
   });
 }
 
-export async function route({ checker }: Simulation, world: World): Promise<void> {
+export async function route({ checker }: Simulation, world: World, loads = 4): Promise<void> {
   let model: LoadedModel | null = null;
-  for (let i = 0; i < 4; i++) {
+  for (let i = 0; i < loads; i++) {
     const cached: LoadedModel | null = model;
     model = (await tolerant(() => loadModel(world, desk, schema, cached))) ?? model;
     if (model === null) continue;
@@ -83,12 +83,14 @@ export async function route({ checker }: Simulation, world: World): Promise<void
   }
 }
 
-export async function compareRecount(world: World): Promise<void> {
+/** Gives the messages counted; null when the store failed. */
+export async function compareRecount(world: World): Promise<number | null> {
   const result = await tolerant(() => recount(world, desk, schema));
-  if (result === null) return;
+  if (result === null) return null;
   if (result.fault) fail(`the recount cannot read the table: ${result.fault.code}`);
   const [first] = result.differences;
   if (first) fail(`version ${result.version}: ${first.cell}: table ${first.left}, recount ${first.right}`);
+  return result.messages;
 }
 
 async function erase({ oracle }: Simulation, world: World, message: string): Promise<void> {

@@ -1,6 +1,5 @@
 import { bounds } from '../../src/bounds.ts';
 import { compact } from '../../src/ledger/compaction.ts';
-import { recount } from '../../src/ledger/recount.ts';
 import { decodeCounts, encodeCounts } from '../../src/model/codec-counts.ts';
 import { decodeEntries } from '../../src/model/codec-entries.ts';
 import { decodeTable } from '../../src/model/codec-table.ts';
@@ -27,14 +26,13 @@ export async function checkEnd(simulation: Simulation): Promise<void> {
   const lost = oracle.delivered.filter((d) => d.acknowledgedAt === null);
   if (lost.length > 0) fail(`${lost.length} confirmations are never acknowledged`);
 
+  // Old enough for what crashed processes began to be taken over, whatever their clocks said.
+  scheduler.nowMs += bounds.foldPatienceMs + 7 * 24 * 3600_000;
   await compactNow();
   scheduler.nowMs += bounds.horizonMs + 7 * 24 * 3600_000;
   await compactNow();
-  await compactNow();
-  for (const prefix of ['model/orders/', 'model/versions/']) {
-    const [left] = objects.keys(prefix);
-    if (left && prefix === 'model/orders/') fail(`${left} is never carried out`);
-  }
+  const [order] = objects.keys('model/orders/');
+  if (order) fail(`${order} is never carried out`);
 
   for (const message of oracle.erasureOrdered) checkErased(simulation, message);
   const standings = checker.standings();
@@ -44,11 +42,9 @@ export async function checkEnd(simulation: Simulation): Promise<void> {
   }
   checkCells(simulation, standings);
   checkUnnamedGone(simulation);
-  await simulation.perform('recount', compareRecount);
-  await simulation.perform('route', (world) => route(simulation, world));
-  const result = await simulation.perform('recount', (world) => recount(world, desk, schema));
-  if (result?.messages !== standings.size)
-    fail(`the recount counts ${result?.messages} messages, not ${standings.size}`);
+  const counted = await simulation.perform('recount', compareRecount);
+  if (counted !== standings.size) fail(`the recount counts ${counted} messages, not ${standings.size}`);
+  await simulation.perform('route', (world) => route(simulation, world, 1));
 }
 
 /** The base, byte for byte, is the one that has just these messages, each counted once from scratch. */

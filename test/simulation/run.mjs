@@ -32,6 +32,7 @@ try {
   const { Simulation } = await import(pathToFileURL(outfile).href);
   const sum = { steps: 0, faults: 0, crashes: 0, versions: 0 };
   const startedAt = performance.now();
+  const usedBefore = process.cpuUsage();
   for (let seed = from; seed < until; seed++) {
     try {
       const simulation = new Simulation(seed);
@@ -49,7 +50,7 @@ try {
   report(until - 1);
   function report(seed) {
     const seconds = Math.round((performance.now() - startedAt) / 100) / 10;
-    console.log(`seeds ${from} to ${seed}: ${seconds} s, ${JSON.stringify(sum)}`);
+    console.log(`seeds ${from} to ${seed}: ${seconds} s (${Math.round(process.cpuUsage(usedBefore).user / 1e5) / 10} s of processor), ${JSON.stringify(sum)}`);
   }
 } finally {
   rmSync(folder, { recursive: true, force: true });
