@@ -8,6 +8,7 @@ import { addInit } from './commands/init.ts';
 import { addQueue } from './commands/queue.ts';
 import { addRecount } from './commands/recount.ts';
 import { addReplay } from './commands/replay.ts';
+import { addReport } from './commands/report.ts';
 import { addRestore } from './commands/restore.ts';
 import { addRun } from './commands/run.ts';
 import { addUndo } from './commands/undo.ts';
@@ -29,7 +30,7 @@ export async function runProgram(args: readonly string[], terminal: Terminal): P
     .enablePositionalOptions()
     .exitOverride()
     .configureOutput({ writeOut: terminal.out, writeErr: terminal.err });
-  for (const add of [addDemo, addInit, addRun, addConfirm, addExplain, addReplay, addCompact])
+  for (const add of [addDemo, addInit, addRun, addConfirm, addExplain, addReplay, addCompact, addReport])
     add(program, terminal, end);
   for (const add of [addRecount, addErase, addUndo, addQueue, addRestore]) add(program, terminal, end);
   try {

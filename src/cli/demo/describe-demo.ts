@@ -115,6 +115,9 @@ export function describeDemo(
         )
       : red(`${plural(recount.differences.length, 'cell')} or more differ`),
   );
-  if (summary.troubles > 0) parts.push(red(`${plural(summary.troubles, 'warning')} in the functions' log`));
+  if (summary.troubles > 0) {
+    parts.push('', red(`${plural(summary.troubles, 'warning')} in the functions' log, the first of them:`));
+    for (const line of summary.firstTroubles) parts.push(`  ${JSON.stringify(line)}`);
+  }
   return parts.join('\n');
 }

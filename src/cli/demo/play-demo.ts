@@ -1,13 +1,15 @@
 import { createExtractor } from '../../features/extractor.ts';
-import { createCompactHandler } from '../../handlers/compact.ts';
 import { createConfirmHandler } from '../../handlers/confirm.ts';
 import type { HandlerDeps, LogLine } from '../../handlers/handler-deps.ts';
 import { createDeskLoader } from '../../handlers/load-desk.ts';
 import { loadTokenKey } from '../../handlers/load-token-key.ts';
 import { queueEvent } from '../../handlers/local-runner.ts';
 import { createRouteHandler } from '../../handlers/route.ts';
+import { type CompactionResult, compact } from '../../ledger/compaction.ts';
 import { changeQueue } from '../../ledger/queues.ts';
+import type { FitModel } from '../../ledger/rebuild.ts';
 import { type RecountResult, recount } from '../../ledger/recount.ts';
+import { fitTable } from '../../model/fit-table.ts';
 import { keys } from '../../store/keys.ts';
 import type { Store } from '../../store/store.ts';
 import { createDemoWorld } from './demo-clock.ts';
@@ -32,7 +34,9 @@ export interface DemoPlay {
   /** By log event: what the confirming function did. */
   readonly confirmations: Readonly<Record<string, number>>;
   readonly compactions: number;
-  readonly lastCompaction: unknown;
+  readonly lastCompaction: CompactionResult | null;
+  /** Nights in which exponents were fitted. */
+  readonly fits: number;
   readonly recount: RecountResult;
   /** Warnings and errors that the functions logged; there should be none. */
   readonly troubles: readonly LogLine[];
@@ -52,8 +56,12 @@ export interface DemoOptions {
 
 const hourMs = 3_600_000;
 const dayMs = 24 * hourMs;
-/** Staff look at the desk's day in these pieces (hours after midnight, UTC); the last one is followed by the night's work. */
-const roundsAtHours = [9, 13, 17, 24] as const;
+/** What arrived and what was said is worked off at these hours of the day (UTC); the last one is followed by the night's work. */
+const roundsAtHours = [12, 24] as const;
+/** Every so many nights a new base is made; each night, in earnest, but then no 120 nights pass in a minute. */
+const compactionDays = 3;
+/** Exponents move little between two nights: the demo fits them again only when there is this much more to learn from. */
+const fitGrowth = 1.4;
 
 /** Plays a scenario on an empty store through the very functions that run in the cloud, fed with the events that they get
  *  there. The same seed plays the same demo. */
@@ -67,7 +75,6 @@ export async function playDemo(options: DemoOptions): Promise<DemoPlay> {
   const deps: HandlerDeps = { world, loadDesk: createDeskLoader(world), tokenKey, log: book.log };
   const route = createRouteHandler(deps);
   const confirm = createConfirmHandler(deps);
-  const compact = createCompactHandler(deps);
   const feed = async (handler: typeof route, objects: readonly string[]) => {
     for (let at = 0; at < objects.length; at += 100)
       await handler(queueEvent(objects.slice(at, at + 100), '', world.nowMs(), world.random));
@@ -81,7 +88,15 @@ export async function playDemo(options: DemoOptions): Promise<DemoPlay> {
   const endMs = drops.at(-1)?.confirmation.atMs ?? arrivals.at(-1)!.arrivesAtMs;
   const days = Math.ceil((Math.max(endMs, arrivals.at(-1)!.arrivesAtMs) - startMs + 1) / dayMs);
   let [arrived, dropped, opened, compactions] = [0, 0, 0, 0];
-  let lastCompaction: unknown = null;
+  let lastCompaction: CompactionResult | null = null;
+  let [fits, fittedMessages] = [0, 0];
+  const fit: FitModel = (counts, sample, previous, settings) => {
+    const messages = counts.messages.reduce((sum, c) => sum + c, 0);
+    if (messages < fittedMessages * fitGrowth) return previous;
+    fits += 1;
+    fittedMessages = messages;
+    return fitTable(counts, sample, previous, settings);
+  };
 
   for (let day = 0; day < days; day += 1) {
     for (const hours of roundsAtHours) {
@@ -109,7 +124,11 @@ export async function playDemo(options: DemoOptions): Promise<DemoPlay> {
       await feed(confirm, said);
       onProgress(arrived, arrivals.length, `day ${day + 1} of ${days}, ${arrived} messages`);
     }
-    lastCompaction = (await compact({})).compaction;
+    if (day % compactionDays !== 0 && day < days - 1) continue;
+    const tonight = await deps.loadDesk();
+    lastCompaction = await compact(world, tonight, createExtractor(tonight, tokenKey).schema, {
+      fitModel: fit,
+    });
     compactions += 1;
   }
   onProgress(arrived, arrivals.length, 'counting everything again');
@@ -121,6 +140,7 @@ export async function playDemo(options: DemoOptions): Promise<DemoPlay> {
     confirmations: book.confirmations(),
     compactions,
     lastCompaction,
+    fits,
     recount: counted,
     troubles: book.troubles(),
     version: counted.version,

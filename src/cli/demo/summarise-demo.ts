@@ -41,10 +41,12 @@ export function summariseDemo(play: DemoPlay, scenario: DemoScenario) {
       },
     ],
     compactions: play.compactions,
+    fits: play.fits,
     lastCompaction: play.lastCompaction,
     recount: play.recount,
     version: play.version,
     troubles: play.troubles.length,
+    firstTroubles: play.troubles.slice(0, 5),
   };
 }
 
