@@ -42,7 +42,7 @@ export function readAddress(text: string): Address | null {
   const at = address.lastIndexOf('@');
   if (at <= 0 || address.length > bounds.addressCharsMax || /[\s<>]|\p{Cc}/u.test(address)) return null;
   const domain = asciiDomain(address.slice(at + 1));
-  if (domain === '') return null;
+  if (domain === '' || domain.startsWith('.')) return null;
   return { address: `${address.slice(0, at).toLowerCase()}@${domain}`, domain };
 }
 

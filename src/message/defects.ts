@@ -53,6 +53,7 @@ export const defectKinds = {
   'line-break-in-header': 'deceit',
   'header-repeated': 'deceit',
   'loop-suspected': 'deceit',
+  'form-suspect': 'deceit',
   // Worth knowing, nothing wrong.
   'text-in-attachment': 'note',
   'text-missing': 'note',

@@ -13,7 +13,7 @@ const noFacts: HeaderFacts = {
   virus: 'missing',
 };
 
-/** Parses one form submission, `{"form", "at", "from", "fields": {name: value}}` in UTF-8 JSON. Never throws: unreadable
+/** Parses one form submission, `{"form", "at", "from", "suspicion", "fields": {name: value}}` in UTF-8 JSON. Never throws: unreadable
  *  JSON gives an empty message with the defect `form-unreadable`. The text is that of all fields, in order, joined by
  *  blank lines; which of them are closed lists only the desk knows. */
 export function parseForm(json: Uint8Array): Message {
@@ -22,6 +22,8 @@ export function parseForm(json: Uint8Array): Message {
   const fields = readFields(data.fields, defects);
   const id = typeof data.form === 'string' ? cleanLine(data.form, 'form', defects) : '';
   if (id === '' || id.length > bounds.fieldNameCharsMax) defects.add('field-unreadable', 'form');
+  // Whatever took the submission says so here, when a program may have sent it; absent or null: nothing speaks for that.
+  if (data.suspicion !== undefined && data.suspicion !== null) defects.add('form-suspect', 'suspicion');
   const text = joinFields(fields, defects);
   if (text === '') defects.add('text-missing', 'message');
   const form: Form = { id: cutText(id, bounds.fieldNameCharsMax), fields: Object.fromEntries(fields) };

@@ -10,15 +10,12 @@ const quoteClasses = new Set([
   'protonmail_quote',
   'tutanota_quote',
   'zmail_extra',
-  'outlookmessageheader',
 ]);
 
-const quoteIds = new Set([
-  'divrplyfwdmsg',
-  'reply-intro',
-  'replysplit',
-  'mail-editor-reference-message-container',
-]);
+const quoteIds = new Set(['reply-intro', 'replysplit', 'mail-editor-reference-message-container']);
+
+/** Blocks after which, to the end of the page, stands nothing but history. */
+const historyNames = new Set(['divrplyfwdmsg', 'outlookmessageheader']);
 
 /** A signature block: `gmail_signature`, `moz-signature`, `Signature`, `ms-outlook-mobile-signature` and their like. */
 const signatureName = /(?:^|[\s_-])signature(?:$|[\s_-])/i;
@@ -39,6 +36,11 @@ export function isQuotation(
     .toLowerCase()
     .split(/\s+/)
     .some((name) => quoteClasses.has(name));
+}
+
+/** True for an element with which the history begins that fills the rest of the page. */
+export function opensHistory(classes: string, id: string): boolean {
+  return historyNames.has(id.toLowerCase()) || historyNames.has(classes.toLowerCase());
 }
 
 /** True for an element that holds the writer's signature. */

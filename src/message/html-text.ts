@@ -1,7 +1,7 @@
 import { Tokenizer, type TokenizerCallbacks } from 'htmlparser2';
 import { bounds } from '../bounds.ts';
 import type { Defects } from './defects.ts';
-import { isQuotation, isSignature } from './html-quotes.ts';
+import { isQuotation, isSignature, opensHistory } from './html-quotes.ts';
 import {
   type Declarations,
   hidesContent,
@@ -117,6 +117,7 @@ class HtmlScanner implements TokenizerCallbacks {
   readonly #openCounts = new Map<string, number>();
   /** Elements opened beyond the depth bound; their end tags must not close others. */
   #ignoredDepth = 0;
+  #isHistory = false;
   #tag = '';
   #attributeName = '';
   #attributes = new Map<string, string>();
@@ -226,6 +227,7 @@ class HtmlScanner implements TokenizerCallbacks {
     const classes = this.#attributes.get('class') ?? '';
     const id = this.#attributes.get('id') ?? '';
     const isUnshown = parent.isUnshown || unshownElements.has(name);
+    if (opensHistory(classes, id)) this.#isHistory = true;
     this.#stack.push({
       name,
       look: lookOf(parent.look, own.declarations),
@@ -322,14 +324,15 @@ class HtmlScanner implements TokenizerCallbacks {
       else if (!frame.isUnshown) this.hiddenChars += text.replace(/\s|\p{DI}/gu, '').length;
       return;
     }
-    if (frame.isQuoted !== this.#outIsQuoted) {
+    const isQuoted = frame.isQuoted || this.#isHistory;
+    if (isQuoted !== this.#outIsQuoted) {
       // White space alone does not change sides.
       if (/^\s*$/.test(text)) {
         this.#hasSpace = true;
         return;
       }
       this.#endSegment();
-      this.#outIsQuoted = frame.isQuoted;
+      this.#outIsQuoted = isQuoted;
     }
     if (frame.isPre) {
       this.#emit(text);

@@ -13,18 +13,23 @@ interface Line {
 export function ownWords(segments: readonly Segment[], whole: string): string {
   if (segments.length === 1 && !segments[0]!.isQuoted && !mayHoldMore(whole)) return whole;
   const lines = segments.flatMap(({ text, isQuoted }) =>
-    text
-      .split('\n')
-      .map((line) => ({ text: line, trimmed: line.trim(), isQuoted: isQuoted || isQuoteLine(line) })),
+    `${text}\n`.split('\n').map((line) => ({
+      text: line,
+      trimmed: line.trim(),
+      isQuoted: line !== '' && (isQuoted || isQuoteLine(line)),
+    })),
   );
-  const own = dropDeviceLine(keepOwn(lines)).join('\n').trim();
+  const own = dropDeviceLine(keepOwn(lines))
+    .join('\n')
+    .replace(/\n{3,}/g, '\n\n')
+    .trim();
   return /[\p{L}\p{N}]/u.test(own) ? own : whole;
 }
 
 /** A quick look: text without any of these holds neither quotation nor signature. */
 function mayHoldMore(text: string): boolean {
   return (
-    /^[ \t]{0,3}>|^-- ?$|[:：]\s*$|---|___|^.{0,40}[:：] /m.test(text) ||
+    /^[ \t]{0,3}>|^-- ?$|[:：]\s*$|---|___|^.{0,40}[:：]/m.test(text) ||
     deviceLines.some((p) => p.test(lastLine(text)))
   );
 }
