@@ -20,3 +20,6 @@ export const keys = {
   /** Ids of webhooks taken, kept a day: longer than their timestamps hold. */
   webhookMarks: 'webhook-marks/',
 } as const;
+
+/** Metadata by which a message carries the id of the request that brought it, from the intake through routing to its fold. */
+export const traceMetadata = 'tallypost-trace';
