@@ -26,6 +26,7 @@ const nothingRead: ReadonlySet<string> = new Set([
   'parser-failed',
 ]);
 const loopDefects: ReadonlySet<string> = new Set(['loop-suspected']);
+const suspectDefects: ReadonlySet<string> = new Set(['form-suspect']);
 /** Defects that explain why there is no text. */
 const textUnreadable: ReadonlySet<string> = new Set(['text-unreadable', 'encrypted', 'opaque-signed']);
 
@@ -82,7 +83,7 @@ export function expectedMinutes(posterior: Posterior, desk: Desk): Float64Array 
 function holdReason({ posterior, message, desk, modelKnows }: DecideInput): HoldReason | null {
   const { virus, spam, isAutomatic } = message.facts;
   // Spam chooses its words to mislead: what the receiving service found weighs more than any count of words.
-  if (virus === 'fail' || spam === 'fail') return 'suspect';
+  if (virus === 'fail' || spam === 'fail' || hasDefect(message, suspectDefects)) return 'suspect';
   if (isUnreadable(message)) return 'unreadable';
   // Routing sends no mail, but what stands behind a queue may: an automatic mail in the desk's own name is one that
   // came back, and would again.

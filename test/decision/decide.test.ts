@@ -156,6 +156,11 @@ describe('whatever the words say', () => {
   it.each<[string, Partial<Message>, string]>([
     ['a virus is held', { facts: { ...facts, virus: 'fail' } }, 'suspect'],
     ['spam is held', { facts: { ...facts, spam: 'fail' } }, 'suspect'],
+    [
+      'a form that a program seems to have sent is held',
+      { defects: [{ code: 'form-suspect', place: 'suspicion' }] },
+      'suspect',
+    ],
     ['an unreadable form is held', { defects: [{ code: 'form-unreadable', place: 'form' }] }, 'unreadable'],
     [
       'an empty object is held',

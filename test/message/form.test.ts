@@ -78,4 +78,13 @@ describe('parseForm', () => {
     expect(message.form).toEqual({ id: '', fields: {} });
     expect(message.text).toBe('');
   });
+
+  test('records that whatever took the form suspects a program, and nothing when it does not', () => {
+    const form = { form: 'contact', fields: { message: 'hello' } };
+    const suspect = [{ code: 'form-suspect', place: 'suspicion' }];
+    expect(parse({ ...form, suspicion: 'trap-filled' }).defects).toEqual(suspect);
+    expect(parse({ ...form, suspicion: 'a reason not known yet' }).defects).toEqual(suspect);
+    expect(parse({ ...form, suspicion: null }).defects).toEqual([]);
+    expect(parse(form).defects).toEqual([]);
+  });
 });
