@@ -34,16 +34,27 @@ function requestOf(event: UrlEvent): IntakeRequest | null {
   try {
     const path = (event.rawPath ?? '/').split('/').filter(Boolean).map(decodeURIComponent);
     const body = Buffer.from(event.body ?? '', event.isBase64Encoded === true ? 'base64' : 'utf8');
-    return { method: event.requestContext.http.method.toUpperCase(), path, headers, body };
+    return {
+      method: event.requestContext.http.method.toUpperCase(),
+      path,
+      headers,
+      body,
+      trace: traceOf(event),
+    };
   } catch {
     return null;
   }
 }
 
+/** Becomes metadata of what is stored, so that only what may stand there passes. */
+function traceOf({ requestContext: { requestId = '' } }: UrlEvent): string {
+  return /^[\x21-\x7e]{1,64}$/.test(requestId) ? requestId : '';
+}
+
 /** The HTTPS intake: forms and signed confirmations in, problem details (RFC 9457) out. Never throws. */
 export function createIntakeHandler(deps: IntakeDeps): (event: UrlEvent) => Promise<UrlResult> {
   return async (event) => {
-    const trace = event.requestContext.requestId ?? '';
+    const trace = traceOf(event);
     const request = requestOf(event);
     let reply = replyProblem(400, 'path', 'The path is not valid percent-encoding (RFC 3986).');
     let fault: string | null = null;
@@ -58,6 +69,7 @@ export function createIntakeHandler(deps: IntakeDeps): (event: UrlEvent) => Prom
       level: fault === null ? 'info' : 'error',
       status: reply.status,
       trace,
+      ...(reply.stored === undefined ? {} : { stored: reply.stored }),
       ...(fault === null ? {} : { fault }),
     });
     return { statusCode: reply.status, headers: reply.headers, body: reply.body };

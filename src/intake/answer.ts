@@ -1,6 +1,6 @@
 import { createHash } from 'node:crypto';
 import type { IntakeForm, IntakeSettings } from '../desk/intake-settings.ts';
-import { keys } from '../store/keys.ts';
+import { keys, traceMetadata } from '../store/keys.ts';
 import type { Store } from '../store/store.ts';
 import { readSubmission } from './read-submission.ts';
 import { readWebhook } from './read-webhook.ts';
@@ -59,15 +59,16 @@ async function takeForm(world: IntakeWorld, form: IntakeForm, request: IntakeReq
     ...(submission.suspicion === null ? {} : { suspicion: submission.suspicion }),
     fields: Object.fromEntries(submission.fields),
   };
-  const put = await world.store.put(keys.inbound + message, utf8.encode(JSON.stringify(document)), {
-    ifNoneMatch: '*',
+  const stored = keys.inbound + message;
+  // No condition: the name is drawn, so nothing can stand there but this very write, sent again after its answer was lost;
+  // with a condition that would come back as a lost race, and telling the two apart would take the right to read forms.
+  await world.store.put(stored, utf8.encode(JSON.stringify(document)), {
     contentType: 'application/json',
+    ...(request.trace === '' ? {} : { metadata: { [traceMetadata]: request.trace } }),
   });
-  if (put.kind === 'lost')
-    return replyProblem(503, 'store-busy', 'Nothing was stored.', { headers: { 'retry-after': '1' } });
-  return form.thanksUrl === null
-    ? replyJson(202, { message })
-    : { ...replyJson(303, { message }), headers: { location: form.thanksUrl, 'cache-control': 'no-store' } };
+  if (form.thanksUrl === null) return { ...replyJson(202, { message }), stored };
+  const headers = { location: form.thanksUrl, 'cache-control': 'no-store' };
+  return { ...replyJson(303, { message }), headers, stored };
 }
 
 /** The drop is written first and the mark after it: a crash between them leaves a drop that a repeated webhook finds
@@ -85,18 +86,16 @@ async function takeConfirmation(
   const { webhookId, ...confirmation } = stated;
   const name = createHash('sha256').update(webhookId).digest('hex');
   const mark = `${keys.webhookMarks}${name}`;
+  const stored = `${keys.confirmations}webhook-${name}.json`;
   if ((await world.store.head(mark)) !== null)
-    return replyJson(200, { message: confirmation.message, taken: 'before' });
-  await world.store.put(
-    `${keys.confirmations}webhook-${name}.json`,
-    utf8.encode(JSON.stringify(confirmation)),
-    {
-      ifNoneMatch: '*',
-      contentType: 'application/json',
-    },
-  );
+    return { ...replyJson(200, { message: confirmation.message, taken: 'before' }), stored };
+  // A lost race is this drop, written by another delivery of the same webhook or by a repeated request of this one.
+  await world.store.put(stored, utf8.encode(JSON.stringify(confirmation)), {
+    ifNoneMatch: '*',
+    contentType: 'application/json',
+  });
   await world.store.put(mark, new Uint8Array(0), { ifNoneMatch: '*' });
-  return replyJson(202, { message: confirmation.message, taken: 'now' });
+  return { ...replyJson(202, { message: confirmation.message, taken: 'now' }), stored };
 }
 
 /** Answers one request. Throws only what the store throws.

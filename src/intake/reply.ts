@@ -4,6 +4,8 @@ export interface Reply {
   readonly status: number;
   readonly headers: Readonly<Record<string, string>>;
   readonly body: string;
+  /** Key of the object written, or found written before, for the log; absent: none. */
+  readonly stored?: string;
 }
 
 /** One fault inside a request: a JSON Pointer into what was sent, and what was expected there. */

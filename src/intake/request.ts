@@ -5,6 +5,8 @@ export interface IntakeRequest {
   readonly path: readonly string[];
   readonly headers: Readonly<Record<string, string>>;
   readonly body: Uint8Array;
+  /** Id of this request in the logs; 1 to 64 printable ASCII characters, or empty. It follows a form to its fold. */
+  readonly trace: string;
 }
 
 /** Media type without parameters, lower-cased (RFC 9110 section 8.3.1); empty when absent. */

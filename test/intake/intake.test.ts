@@ -96,7 +96,21 @@ describe('forms', () => {
       from: 'pat@home.example',
       fields: goodForm,
     });
-    expect(lines).toEqual([{ event: 'intake', level: 'info', status: 202, trace: 'trace-1' }]);
+    expect(got.object.metadata).toEqual({ 'tallypost-trace': 'trace-1' });
+    expect(lines).toEqual([
+      { event: 'intake', level: 'info', status: 202, trace: 'trace-1', stored: `inbound/${message}` },
+    ]);
+  });
+
+  it('writes no trace that could not stand in metadata', async () => {
+    for (const requestId of ['', 'a\r\nb', 'ü', 'x'.repeat(65)]) {
+      const { store, handle, lines } = setUp();
+      const event = post('/forms/contact', JSON.stringify(goodForm));
+      const result = await handle({ ...event, requestContext: { ...event.requestContext, requestId } });
+      expect(result.statusCode).toBe(202);
+      expect((await store.head((await keysOf(store))[0]!))!.metadata).toEqual({});
+      expect(lines).toMatchObject([{ trace: '' }]);
+    }
   });
 
   it('stores a form-encoded submission and sends the browser on', async () => {
