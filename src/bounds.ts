@@ -182,6 +182,12 @@ export const bounds = {
   /** A person's name or address, a queue's name, a time. */
   confirmationLineCharsMax: 200,
 
+  // Metrics (src/metrics)
+  /** Queues told apart in metrics: each is a metric that is paid for by the month, and a dashboard shows no more. */
+  metricQueuesMax: 20,
+  /** Amazon CloudWatch User Guide, "Specification: Embedded metric format": values of one metric in one document. */
+  emfValuesMax: 100,
+
   // Handlers (src/handlers)
   /** The desk's file is looked at again after this: a change acts within a minute, a batch costs no request for it. */
   deskFreshMs: 60_000,
