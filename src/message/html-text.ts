@@ -1,23 +1,20 @@
 import { Tokenizer, type TokenizerCallbacks } from 'htmlparser2';
 import { bounds } from '../bounds.ts';
 import type { Defects } from './defects.ts';
-import { isQuotation, isSignature, opensHistory } from './html-quotes.ts';
 import {
-  type Declarations,
-  hidesContent,
-  isUnseen,
-  type Look,
-  lookOf,
-  plainLook,
-  readDeclarations,
-} from './style.ts';
-import { StyleSheet } from './style-sheet.ts';
-
-/** A run of text and whether the mail client marked it as not this writer's own. */
-export interface Segment {
-  readonly text: string;
-  readonly isQuoted: boolean;
-}
+  blockElements,
+  cellElements,
+  closedByOpening,
+  formattingElements,
+  paragraphElements,
+  tableElements,
+  unshownElements,
+  voidElements,
+} from './html-elements.ts';
+import { isQuotation, isSignature, opensHistory } from './html-quotes.ts';
+import { HtmlStyles, type OwnStyle } from './html-styles.ts';
+import { type Segment, SegmentWriter } from './segment-writer.ts';
+import { isUnseen, type Look, lookOf, plainLook } from './style.ts';
 
 export interface HtmlText {
   readonly segments: readonly Segment[];
@@ -25,74 +22,43 @@ export interface HtmlText {
   readonly hiddenChars: number;
 }
 
-interface Frame {
+/** What an element brings by itself. */
+interface Own {
   readonly name: string;
+  readonly style: OwnStyle;
+  readonly isHiding: boolean;
+  readonly isQuoting: boolean;
+}
+
+/** An open element with what it inherits. */
+interface Frame {
+  readonly own: Own;
   readonly look: Look;
   readonly isHidden: boolean;
   /** Inside scripts, titles and the like: no attempt to hide something from the reader. */
   readonly isUnshown: boolean;
   readonly isQuoted: boolean;
-  readonly isPre: boolean;
+  readonly isPreformatted: boolean;
 }
-
-interface OwnStyle {
-  readonly declarations: Declarations;
-  readonly isHiding: boolean;
-  readonly isPre: boolean;
-}
-
-const noStyle: OwnStyle = { declarations: new Map(), isHiding: false, isPre: false };
-/** Attributes that bear on style, in the order of the key. */
-const styleAttributes = ['style', 'class', 'id', 'color', 'text', 'bgcolor', 'background'] as const;
 
 const outermost: Frame = {
-  name: '',
+  own: {
+    name: '',
+    style: { declarations: new Map(), isHiding: false, isPreformatted: false },
+    isHiding: false,
+    isQuoting: false,
+  },
   look: plainLook,
   isHidden: false,
   isUnshown: false,
   isQuoted: false,
-  isPre: false,
+  isPreformatted: false,
 };
 
-const voidElements = new Set(
-  'area base br col embed hr img input link meta param source track wbr'.split(' '),
-);
-/** Content that is never shown as text. */
-const unshownElements = new Set(
-  'head title style script template object applet iframe noembed noframes svg math audio video canvas select datalist textarea map'.split(
-    ' ',
-  ),
-);
-const blockElements = new Set(
-  'address article aside blockquote body center dd details dialog dir div dl dt fieldset figcaption figure footer form h1 h2 h3 h4 h5 h6 header hr html legend li main menu nav ol p pre section summary table tbody tfoot thead tr ul'.split(
-    ' ',
-  ),
-);
-/** Elements after which a blank line stands. */
-const paragraphElements = new Set('p h1 h2 h3 h4 h5 h6 blockquote ul ol table pre'.split(' '));
-/** An opening element closes these when they are the innermost open ones (HTML Living Standard, section 13.1.2.4). */
-const closedByOpening = new Map<string, readonly string[]>([
-  ['li', ['li']],
-  ['dt', ['dt', 'dd']],
-  ['dd', ['dt', 'dd']],
-  ['tr', ['tr', 'td', 'th']],
-  ['td', ['td', 'th']],
-  ['th', ['td', 'th']],
-  ['tbody', ['tr', 'td', 'th', 'tbody', 'thead']],
-  ['option', ['option']],
-]);
-const readAttributes = new Set([
-  'style',
-  'class',
-  'id',
-  'hidden',
-  'type',
-  'cite',
-  'color',
-  'bgcolor',
-  'text',
-  'background',
-]);
+const readAttributes = new Set('style class id hidden type cite color bgcolor text background'.split(' '));
+const tagCharsMax = 40;
+/** Formatting that is carried over the end of a block; more is nothing that anybody writes. */
+const carriedMax = 8;
 
 /** HTML to the text that a person sees, in one linear pass over the tokens. Scripts, comments and hidden elements are
  *  left out; quotations that mail clients mark come as segments of their own. */
@@ -102,48 +68,34 @@ export function readHtml(html: string, place: string, defects: Defects): HtmlTex
   tokenizer.write(html);
   tokenizer.end();
   if (scanner.isTooDeep) defects.add('html-depth-cut', place);
-  if (scanner.isStyleCut) defects.add('style-cut', place);
+  if (scanner.styles.isCut) defects.add('style-cut', place);
   if (scanner.hiddenChars > 0) defects.add('hidden-text', place);
-  return { segments: scanner.takeSegments(), hiddenChars: scanner.hiddenChars };
+  return { segments: scanner.writer.take(), hiddenChars: scanner.hiddenChars };
 }
 
+/** Follows the open elements. Not the whole of a browser's tree construction: what bears on whether text is seen. */
 class HtmlScanner implements TokenizerCallbacks {
+  readonly writer = new SegmentWriter();
+  readonly styles = new HtmlStyles();
   hiddenChars = 0;
   isTooDeep = false;
-  isStyleCut = false;
   readonly #html: string;
-  readonly #sheet = new StyleSheet();
   readonly #stack: Frame[] = [outermost];
   readonly #openCounts = new Map<string, number>();
   /** Elements opened beyond the depth bound; their end tags must not close others. */
   #ignoredDepth = 0;
+  /** From here to the end of the page stands history. */
   #isHistory = false;
   #tag = '';
   #attributeName = '';
   #attributes = new Map<string, string>();
-  #css = '';
-  #styleChars = 0;
-  #styles = new Map<string, OwnStyle>();
-
-  readonly #segments: Segment[] = [];
-  #out: string[] = [];
-  #outIsQuoted = false;
-  #breaks = 0;
-  #hasSpace = false;
-  #isEmpty = true;
 
   constructor(html: string) {
     this.#html = html;
   }
 
-  get #top(): Frame {
-    return this.#stack[this.#stack.length - 1]!;
-  }
-
-  // Tokens
-
   onopentagname(start: number, end: number): void {
-    this.#tag = this.#html.slice(start, Math.min(end, start + 40)).toLowerCase();
+    this.#tag = this.#html.slice(start, Math.min(end, start + tagCharsMax)).toLowerCase();
     if (this.#attributes.size > 0) this.#attributes = new Map();
   }
 
@@ -174,7 +126,7 @@ class HtmlScanner implements TokenizerCallbacks {
   }
 
   onclosetag(start: number, end: number): void {
-    this.#close(this.#html.slice(start, Math.min(end, start + 40)).toLowerCase());
+    this.#close(this.#html.slice(start, Math.min(end, start + tagCharsMax)).toLowerCase());
   }
 
   ontext(start: number, end: number): void {
@@ -191,182 +143,118 @@ class HtmlScanner implements TokenizerCallbacks {
   onprocessinginstruction(): void {}
   onend(): void {}
 
-  // Elements
+  get #top(): Frame {
+    return this.#stack[this.#stack.length - 1]!;
+  }
 
   #extendAttribute(text: string): void {
     const name = this.#attributeName;
     const value = this.#attributes.get(name) ?? '';
     const room = bounds.attributeCharsMax - value.length;
-    if (text.length > room) this.isStyleCut = true;
+    if (text.length > room) this.styles.isCut = true;
     if (room > 0) this.#attributes.set(name, value + text.slice(0, room));
+  }
+
+  #write(text: string): void {
+    const frame = this.#top;
+    if (frame.isHidden || isUnseen(frame.look)) {
+      if (frame.own.name === 'style') this.styles.extendSheet(text);
+      else if (!frame.isUnshown) this.hiddenChars += text.replace(/\s|\p{DI}/gu, '').length;
+      return;
+    }
+    this.writer.write(text, frame.isQuoted || this.#isHistory, frame.isPreformatted);
+  }
+
+  #break(name: string): void {
+    if (cellElements.has(name)) this.writer.space();
+    else if (blockElements.has(name)) this.writer.breakLine(paragraphElements.has(name) ? 2 : 1);
   }
 
   #open(name: string): void {
     if (name === 'br') {
-      this.#breakLine(1, true);
+      this.writer.addBreak();
       return;
     }
-    if (blockElements.has(name)) {
-      this.#breakLine(paragraphElements.has(name) ? 2 : 1);
-      if (this.#openCounts.get('p') && this.#top.name === 'p') this.#pop();
-    } else if (name === 'td' || name === 'th') this.#hasSpace = true;
+    this.#break(name);
+    if (blockElements.has(name) && this.#top.own.name === 'p') this.#pop();
     const closes = closedByOpening.get(name);
-    if (closes !== undefined) while (closes.includes(this.#top.name)) this.#pop();
+    if (closes !== undefined) while (closes.has(this.#top.own.name)) this.#pop();
     if (voidElements.has(name)) return;
+    const classes = this.#attributes.get('class') ?? '';
+    const id = this.#attributes.get('id') ?? '';
+    if (opensHistory(classes, id)) this.#isHistory = true;
+    const style = this.styles.of(name, this.#attributes);
+    this.#push({
+      name,
+      style,
+      isHiding: style.isHiding || this.#attributes.has('hidden'),
+      isQuoting: isQuotation(name, classes, id, this.#attributes) || isSignature(classes, id),
+    });
+  }
+
+  #push(own: Own): void {
     if (this.#stack.length > bounds.htmlDepthMax) {
       this.isTooDeep = true;
       this.#ignoredDepth++;
       return;
     }
-    this.#push(name);
-  }
-
-  #push(name: string): void {
     const parent = this.#top;
-    const own = this.#styleOf(name);
-    const classes = this.#attributes.get('class') ?? '';
-    const id = this.#attributes.get('id') ?? '';
-    const isUnshown = parent.isUnshown || unshownElements.has(name);
-    if (opensHistory(classes, id)) this.#isHistory = true;
+    const isUnshown = parent.isUnshown || unshownElements.has(own.name);
     this.#stack.push({
-      name,
-      look: lookOf(parent.look, own.declarations),
-      isHidden: parent.isHidden || isUnshown || this.#attributes.has('hidden') || own.isHiding,
+      own,
+      look: lookOf(parent.look, own.style.declarations),
+      isHidden: parent.isHidden || isUnshown || own.isHiding,
       isUnshown,
-      isQuoted:
-        parent.isQuoted || isQuotation(name, classes, id, this.#attributes) || isSignature(classes, id),
-      isPre: parent.isPre || name === 'pre' || own.isPre,
+      isQuoted: parent.isQuoted || own.isQuoting,
+      isPreformatted: parent.isPreformatted || own.name === 'pre' || own.style.isPreformatted,
     });
-    this.#openCounts.set(name, (this.#openCounts.get(name) ?? 0) + 1);
-  }
-
-  /** The element's own style; worked out once for all elements that carry the same, as most do. */
-  #styleOf(name: string): OwnStyle {
-    const attributes = this.#attributes;
-    const isLink = name === 'a';
-    if (attributes.size === 0 && this.#sheet.isEmpty && !isLink) return noStyle;
-    const key = [
-      this.#sheet.isEmpty && !isLink ? '' : name,
-      ...styleAttributes.map((a) => attributes.get(a)),
-    ].join('\n');
-    let style = this.#styles.get(key);
-    if (style === undefined) {
-      const declarations = this.#declare(name);
-      style = {
-        declarations,
-        isHiding: hidesContent(declarations),
-        isPre: /^pre/.test(declarations.get('white-space') ?? ''),
-      };
-      this.#styles.set(key, style);
-    }
-    return style;
-  }
-
-  #declare(name: string): Declarations {
-    const style: Declarations = new Map();
-    const attributes = this.#attributes;
-    // The style sheet of a browser colours links itself, whatever colour stands around them.
-    if (name === 'a') style.set('color', '#0000ee');
-    const color = attributes.get('color') ?? attributes.get('text');
-    if (color) style.set('color', color.toLowerCase());
-    const background = attributes.get('bgcolor');
-    if (background) style.set('background-color', background.toLowerCase());
-    if (attributes.get('background')) style.set('background-image', 'url()');
-    if (!this.#sheet.isEmpty) {
-      const classes = (attributes.get('class') ?? '').split(/\s+/).filter((c) => c !== '');
-      this.#sheet.match(name, classes, attributes.get('id') ?? '', style);
-    }
-    const own = attributes.get('style');
-    return own ? readDeclarations(own, style) : style;
+    this.#openCounts.set(own.name, (this.#openCounts.get(own.name) ?? 0) + 1);
   }
 
   #close(name: string): void {
-    if (name === 'style') this.#endStyle();
+    if (name === 'style') this.styles.endSheet();
     if (name === 'br') {
-      this.#breakLine(1, true);
+      this.writer.addBreak();
       return;
     }
-    if (blockElements.has(name)) this.#breakLine(paragraphElements.has(name) ? 2 : 1);
+    this.#break(name);
     if (this.#ignoredDepth > 0) {
       this.#ignoredDepth--;
       return;
     }
     if (!this.#openCounts.get(name)) return;
-    while (this.#top.name !== name) this.#pop();
+    if (blockElements.has(name)) this.#closeBlock(name);
+    else this.#closeInline(name);
+  }
+
+  /** The end of a block ends all inside it; formatting left open there goes on behind it, as in a browser. */
+  #closeBlock(name: string): void {
+    const carried: Own[] = [];
+    while (this.#top.own.name !== name) {
+      const { own } = this.#top;
+      if (formattingElements.has(own.name)) carried.push(own);
+      this.#pop();
+    }
     this.#pop();
+    if (tableElements.has(name)) return;
+    for (const own of carried.slice(0, carriedMax).reverse()) this.#push(own);
+  }
+
+  /** The end of an inline element leaves the blocks open that were opened inside it: what they hide stays hidden. */
+  #closeInline(name: string): void {
+    let at = this.#stack.length - 1;
+    let isAcrossBlock = false;
+    for (; this.#stack[at]!.own.name !== name; at--) {
+      if (blockElements.has(this.#stack[at]!.own.name)) isAcrossBlock = true;
+    }
+    if (isAcrossBlock) {
+      this.#stack.splice(at, 1);
+      this.#openCounts.set(name, this.#openCounts.get(name)! - 1);
+    } else while (this.#stack.length > at) this.#pop();
   }
 
   #pop(): void {
-    const frame = this.#stack.pop()!;
-    this.#openCounts.set(frame.name, this.#openCounts.get(frame.name)! - 1);
-  }
-
-  #extendStyle(text: string): void {
-    const room = bounds.styleCharsMax - this.#styleChars;
-    if (text.length > room) this.isStyleCut = true;
-    this.#css += text.slice(0, Math.max(0, room));
-    this.#styleChars += text.length;
-  }
-
-  #endStyle(): void {
-    if (this.#css === '') return;
-    if (!this.#sheet.read(this.#css)) this.isStyleCut = true;
-    this.#css = '';
-    this.#styles = new Map();
-  }
-
-  // Text
-
-  #write(text: string): void {
-    const frame = this.#top;
-    if (frame.isHidden || isUnseen(frame.look)) {
-      if (frame.name === 'style') this.#extendStyle(text);
-      else if (!frame.isUnshown) this.hiddenChars += text.replace(/\s|\p{DI}/gu, '').length;
-      return;
-    }
-    const isQuoted = frame.isQuoted || this.#isHistory;
-    if (isQuoted !== this.#outIsQuoted) {
-      // White space alone does not change sides.
-      if (/^\s*$/.test(text)) {
-        this.#hasSpace = true;
-        return;
-      }
-      this.#endSegment();
-      this.#outIsQuoted = isQuoted;
-    }
-    if (frame.isPre) {
-      this.#emit(text);
-      return;
-    }
-    const folded = text.replace(/[ \t\r\n\f]+/g, ' ');
-    if (folded.startsWith(' ')) this.#hasSpace = true;
-    const core = folded.trim() === '' ? '' : folded.replace(/^ | $/g, '');
-    if (core !== '') this.#emit(core);
-    if (folded.endsWith(' ')) this.#hasSpace = true;
-  }
-
-  #emit(text: string): void {
-    if (this.#breaks > 0) {
-      if (!this.#isEmpty) this.#out.push('\n'.repeat(this.#breaks));
-    } else if (this.#hasSpace && !this.#isEmpty) this.#out.push(' ');
-    this.#breaks = 0;
-    this.#hasSpace = false;
-    this.#isEmpty = false;
-    this.#out.push(text);
-  }
-
-  #breakLine(count: number, adds = false): void {
-    this.#breaks = adds ? Math.min(2, this.#breaks + count) : Math.max(this.#breaks, count);
-  }
-
-  #endSegment(): void {
-    if (this.#out.length > 0) this.#segments.push({ text: this.#out.join(''), isQuoted: this.#outIsQuoted });
-    this.#out = [];
-    this.#isEmpty = true;
-  }
-
-  takeSegments(): readonly Segment[] {
-    this.#endSegment();
-    return this.#segments;
+    const { own } = this.#stack.pop()!;
+    this.#openCounts.set(own.name, this.#openCounts.get(own.name)! - 1);
   }
 }

@@ -3,8 +3,9 @@ import { cleanText, cutText } from './clean-text.ts';
 import { decodeBody } from './decode-body.ts';
 import type { Defects } from './defects.ts';
 import { readUnstructured } from './fields.ts';
-import { readHtml, type Segment } from './html-text.ts';
+import { readHtml } from './html-text.ts';
 import { isMultipart, isShownText, isTextType, type Part } from './part.ts';
+import type { Segment } from './segment-writer.ts';
 
 /** All text of a message in reading order. Embedded messages and other people's headers count as quoted. */
 export function readSegments(root: Part, hintCharset: string, defects: Defects): readonly Segment[] {

@@ -1,6 +1,6 @@
 import { bounds } from '../bounds.ts';
-import type { Segment } from './html-text.ts';
 import { bannerPhrases, deviceLines, headerNames, wroteEndings } from './reply-phrases.ts';
+import type { Segment } from './segment-writer.ts';
 
 interface Line {
   readonly text: string;

@@ -67,6 +67,15 @@ export const markupInputs: readonly HostileInput[] = [
     'hidden inside hidden inside shown',
     `${p}<div style="display:none"><p style="display:block">${padding}</p></div>`,
   ),
+  hides(
+    'hidden by a block whose inline parent ends first',
+    `<b>${p}<div style="display:none"></b>${padding}</div>`,
+  ),
+  hides(
+    'white by formatting left open in an earlier paragraph',
+    `${p}<p><font color="white">.</p><div>${padding}</div>`,
+  ),
+  shows('formatting left open in an earlier table cell', `<table><td><font color="white"></td></table>${p}`),
   shows('hidden only for narrow screens', `<style>@media (max-width:600px){p{display:none}}</style>${p}`),
   shows('white on a dark button', `<a style="background:#003366;color:#ffffff">${plea}</a>`),
   shows(
