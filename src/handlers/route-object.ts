@@ -10,7 +10,7 @@ import type { EventObject } from './event-objects.ts';
 import type { HandlerDeps, LogLine } from './handler-deps.ts';
 import { faultMembers } from './log-fault.ts';
 import { readMessage } from './read-message.ts';
-import { isDecided, joinMetadata, metadataOf } from './routing-metadata.ts';
+import { isDecided, joinMetadata, metadataOf, traceIn } from './routing-metadata.ts';
 import type { Workbench } from './workbench.ts';
 
 /** The receiving service leaves this when a rule is set up. */
@@ -23,7 +23,8 @@ export async function routeObject(
   bench: Workbench,
   { key, trace }: EventObject,
 ): Promise<boolean> {
-  const log = (line: LogLine) => deps.log({ ...line, message: key.slice(keys.inbound.length), trace });
+  // A form carries the id of the request that brought it; its line says so.
+  const log = (line: LogLine) => deps.log({ trace, ...line, message: key.slice(keys.inbound.length) });
   if (!isRoutable(key)) {
     log({ level: 'info', event: 'object-skipped' });
     return true;
@@ -64,7 +65,7 @@ async function routeOnce(
     modelVersion: bench.model.version,
     schema: bench.extractor.schema.id,
     atMs: world.nowMs(),
-    trace,
+    trace: traceIn(head.metadata) || trace,
   };
   const metadata = joinMetadata(head.metadata, metadataOf(decision, posterior, context), key);
   const put = await world.store.replaceMetadata(key, metadata, { ifMatch: head.etag });
@@ -75,6 +76,7 @@ async function routeOnce(
     level: parserError === null ? 'info' : 'error',
     event: kind,
     ...members,
+    trace: context.trace,
     model: bench.model.version,
     bytes: head.bytes,
     defects: message.defects.map(({ code }) => code),
