@@ -27,6 +27,8 @@ export function createBatchHandler(
       // What every object needs is missing, such as a desk's file that can be read: all of them come again.
       deps.log({ level: 'error', event: 'batch-failed', objects: objects.length, ...faultMembers(error) });
     }
+    const failures = objects.filter((_, i) => areDone[i] !== true).length;
+    deps.measure?.([{ queue: null, values: { Failed: [failures] } }]);
     let next = 0;
     const failed = deliveries.filter(({ receipt, objects: own, fault }) => {
       if (fault !== null)

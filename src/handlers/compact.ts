@@ -1,23 +1,29 @@
 import { bounds } from '../bounds.ts';
 import { type CompactionResult, compact } from '../ledger/compaction.ts';
+import { type RecountResult, recount } from '../ledger/recount.ts';
+import { measureCompaction, measureRecount } from '../metrics/measurement.ts';
 import { keys } from '../store/keys.ts';
 import type { EventObject } from './event-objects.ts';
 import { foldDrops } from './fold-drops.ts';
 import type { HandlerDeps } from './handler-deps.ts';
 import { faultMembers } from './log-fault.ts';
-import { createDeskOpener } from './workbench.ts';
+import { createDeskOpener, type OpenDesk } from './workbench.ts';
 
 export interface CompactResult {
   readonly compaction: CompactionResult;
   /** Drops that had lain for over an hour: how many are done with now, and how many remain. */
   readonly leftDrops: { readonly done: number; readonly remaining: number };
+  /** Null when the event did not ask for it. */
+  readonly recount: (Pick<RecountResult, 'messages' | 'fault'> & { readonly differences: number }) | null;
 }
 
-/** Folds what `confirm` left lying, then makes a new base. Any event starts it; of two at once one gives way.
+/** Folds what `confirm` left lying, then makes a new base. Any event starts it; of two at once one gives way. An event with
+ *  `"recount": true` also counts every history again and compares: one read a confirmed message, within the function's time.
  *  Throws what stopped the compaction, so that the schedule's retries and alarms see it. */
 export function createCompactHandler(deps: HandlerDeps): (event: unknown) => Promise<CompactResult> {
   const openDesk = createDeskOpener(deps);
-  return async () => {
+  return async (event) => {
+    const startedMs = deps.world.nowMs();
     try {
       const open = await openDesk();
       const left = await leftDrops(deps);
@@ -27,14 +33,33 @@ export function createCompactHandler(deps: HandlerDeps): (event: unknown) => Pro
         done += areDone.filter(Boolean).length;
       }
       const compaction = await compact(deps.world, open.desk, open.extractor.schema);
-      const result = { compaction, leftDrops: { done, remaining: left.length - done } };
-      deps.log({ level: 'info', event: 'compaction', ...result });
+      const tookMs = deps.world.nowMs() - startedMs;
+      deps.measure?.(measureCompaction(compaction, tookMs));
+      const recounted = isRecountAsked(event) ? await recountNow(deps, open) : null;
+      const result = { compaction, leftDrops: { done, remaining: left.length - done }, recount: recounted };
+      deps.log({ level: 'info', event: 'compaction', tookMs, ...result });
       return result;
     } catch (error) {
       deps.log({ level: 'error', event: 'compaction-failed', ...faultMembers(error) });
       throw error;
     }
   };
+}
+
+function isRecountAsked(event: unknown): boolean {
+  return typeof event === 'object' && event !== null && (event as { recount?: unknown }).recount === true;
+}
+
+async function recountNow(
+  deps: HandlerDeps,
+  { desk, extractor }: OpenDesk,
+): Promise<NonNullable<CompactResult['recount']>> {
+  const { messages, fault, differences } = await recount(deps.world, desk, extractor.schema);
+  const recounted = { messages, fault, differences: differences.length };
+  deps.measure?.(measureRecount(recounted));
+  if (fault !== null || differences.length > 0)
+    deps.log({ level: 'error', event: 'recount-differs', ...recounted });
+  return recounted;
 }
 
 /** An event is lost at times, and dead letters are looked at late: what lies for an hour has missed its own. */

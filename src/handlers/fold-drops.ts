@@ -2,12 +2,13 @@ import { bounds } from '../bounds.ts';
 import { type Fault, TallypostError } from '../errors.ts';
 import { foldClaims } from '../ledger/fold.ts';
 import { mapBounded } from '../ledger/pace.ts';
-import type { Claim, FoldOutcome } from '../ledger/world.ts';
+import type { Claim, Confirmation, FoldOutcome } from '../ledger/world.ts';
+import { measureFolding } from '../metrics/measurement.ts';
 import { keys } from '../store/keys.ts';
 import type { ObjectHead } from '../store/store.ts';
 import { claimOf, type ReadClaim } from './claim.ts';
 import type { EventObject } from './event-objects.ts';
-import type { HandlerDeps } from './handler-deps.ts';
+import { type HandlerDeps, keepLines } from './handler-deps.ts';
 import { faultMembers } from './log-fault.ts';
 import { readDrop } from './read-drop.ts';
 import { bytesUpTo } from './read-message.ts';
@@ -38,7 +39,10 @@ export async function foldDrops(
   const outcomes = claims.length === 0 ? [] : await foldClaims(deps.world, desk, extractor.schema, claims);
   let next = 0;
   const settled = taken.map((each) => ({ each, outcome: each.kind === 'claim' ? outcomes[next++]! : null }));
-  return mapBounded(settled, ({ each, outcome }) => settleDrop(deps, each, outcome));
+  const kept = keepLines(deps);
+  const areDone = await mapBounded(settled, ({ each, outcome }) => settleDrop(kept.deps, each, outcome));
+  deps.measure?.(measureFolding(kept.lines));
+  return areDone;
 }
 
 /** Failures of the store may pass; whatever else is wrong with a drop stays. */
@@ -79,19 +83,27 @@ async function settleDrop(deps: HandlerDeps, taken: Taken, outcome: FoldOutcome 
   if (taken.kind === 'gone') return true;
   if (taken.kind === 'retry') return false;
   const { drop } = taken;
+  const trace = (taken.kind === 'claim' && taken.read.trace) || drop.trace;
   const fault = taken.kind === 'refused' ? taken.fault : outcome?.kind === 'refused' ? outcome.fault : null;
   try {
     if (fault !== null) {
       await keepRefused(deps, drop, fault);
-      deps.log({ level: 'warn', event: 'confirmation-refused', drop: drop.key, trace: drop.trace, ...fault });
+      deps.log({ level: 'warn', event: 'confirmation-refused', drop: drop.key, trace, ...fault });
     } else if (taken.kind === 'claim') {
       const { confirmation } = taken.read.claim;
-      const line = { drop: drop.key, message: confirmation.message, trace: taken.read.trace || drop.trace };
+      const line = { drop: drop.key, message: confirmation.message, trace };
       if (outcome!.kind === 'retry') {
         deps.log({ level: 'warn', event: 'confirmation-postponed', ...line, ...outcome!.fault });
         return false;
       }
-      deps.log({ level: 'info', event: `confirmation-${outcome!.kind}`, ...line, queue: confirmation.queue });
+      const lag = outcome!.kind === 'folded' ? lagOf(deps, confirmation) : {};
+      deps.log({
+        level: 'info',
+        event: `confirmation-${outcome!.kind}`,
+        ...line,
+        queue: confirmation.queue,
+        ...lag,
+      });
     }
     await deleteUnchanged(deps, drop);
     return true;
@@ -100,11 +112,17 @@ async function settleDrop(deps: HandlerDeps, taken: Taken, outcome: FoldOutcome 
       level: 'error',
       event: 'confirmation-failed',
       drop: drop.key,
-      trace: drop.trace,
+      trace,
       ...faultMembers(error),
     });
     return false;
   }
+}
+
+/** How long a confirmation waited for its fold; of archived mail it says nothing. */
+function lagOf({ world }: HandlerDeps, { message, at }: Confirmation): { readonly lagMs?: number } {
+  const isArchived = (keys.inbound + message).startsWith(keys.archive);
+  return isArchived ? {} : { lagMs: world.nowMs() - Date.parse(at) };
 }
 
 function checkSize({ key, bytes }: ObjectHead): void {

@@ -1,5 +1,6 @@
 import type { Desk } from '../desk/desk.ts';
 import type { World } from '../ledger/world.ts';
+import type { Measurement } from '../metrics/measurement.ts';
 
 /** One line of structured log. Ids, codes and numbers; never a customer's text. */
 export interface LogLine {
@@ -17,6 +18,20 @@ export interface HandlerDeps {
   /** 16 bytes under which tokens are hashed. */
   readonly tokenKey: Uint8Array;
   readonly log: (line: LogLine) => void;
+  /** Takes what was measured, any number of times an invocation; left out: nobody looks. */
+  readonly measure?: (measurements: readonly Measurement[]) => void;
   /** What stands before every key of this desk in a bucket's events, without the slash; empty or left out: nothing. */
   readonly prefix?: string;
+}
+
+/** The same deps, whose log lines are also kept, so that a batch is measured by what it says of itself. */
+export function keepLines<D extends Pick<HandlerDeps, 'log'>>(
+  deps: D,
+): { readonly deps: D; readonly lines: readonly LogLine[] } {
+  const lines: LogLine[] = [];
+  const log = (line: LogLine) => {
+    lines.push(line);
+    deps.log(line);
+  };
+  return { deps: { ...deps, log }, lines };
 }

@@ -3,6 +3,7 @@ import type { Decision } from '../decision/decision.ts';
 import { TallypostError } from '../errors.ts';
 import type { Said } from '../model/counts.ts';
 import type { Posterior } from '../model/posterior.ts';
+import { traceMetadata } from '../store/keys.ts';
 
 export type Metadata = Readonly<Record<string, string>>;
 
@@ -75,7 +76,7 @@ export function saidIn(metadata: Metadata): Said | null {
 }
 
 export function traceIn(metadata: Metadata): string {
-  return metadata[`${own}trace`] ?? '';
+  return metadata[traceMetadata] ?? '';
 }
 
 function runnerUp({ queues, probability }: Posterior, queue: string): number {

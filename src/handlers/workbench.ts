@@ -26,6 +26,8 @@ export function createDeskOpener(deps: HandlerDeps): () => Promise<OpenDesk> {
 /** What messages are routed with. */
 export interface Workbench extends OpenDesk {
   readonly model: Pick<LoadedModel, 'version' | 'scorer' | 'isEmpty' | 'fault'>;
+  /** Segments beside the base; left out: not known. */
+  readonly segments?: number;
 }
 
 /** Opens the desk with the model as last committed, kept between calls: one conditional read when nothing changed.
@@ -42,7 +44,7 @@ export function createWorkbenchOpener(deps: HandlerDeps): () => Promise<Workbenc
       const model = await loadModel(deps.world, desk, schema, last);
       cached = { schema: schema.id, model };
       if (model.fault !== null) deps.log({ level: 'error', event: 'model-unusable', ...model.fault });
-      return { desk: model.desk, extractor, model };
+      return { desk: model.desk, extractor, model, segments: model.parts.manifest.segments.length };
     } catch (error) {
       if (!(error instanceof TallypostError) || error.code.startsWith('store-')) throw error;
       deps.log({ level: 'error', event: 'model-unusable', ...faultMembers(error) });

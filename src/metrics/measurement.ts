@@ -107,11 +107,9 @@ export interface Compacted {
   readonly tableBytes: number;
 }
 
-/** `differences`: of a recount, where one was asked for. */
 export function measureCompaction(
   { kind, messages, cells, baseBytes, tableBytes }: Compacted,
   tookMs: number,
-  differences: number | null,
 ): Measurement[] {
   const sizes = {
     SegmentsWaiting: [0],
@@ -124,9 +122,17 @@ export function measureCompaction(
     Compactions: [1],
     CompactionSeconds: [tookMs / 1000],
     ...(kind === 'compacted' ? sizes : {}),
-    ...(differences === null ? {} : { RecountDifferences: [differences] }),
   };
   return [{ queue: null, values }];
+}
+
+/** `fault`: why the table could not be read, if it could not. */
+export function measureRecount(result: {
+  readonly differences: number;
+  readonly fault: unknown;
+}): Measurement[] {
+  const differences = Math.max(result.differences, result.fault === null ? 0 : 1);
+  return [{ queue: null, values: { RecountDifferences: [differences] } }];
 }
 
 function add<K>(sums: Map<K, number>, name: K): void {

@@ -58,7 +58,7 @@ const event = {
 };
 
 describe('the route function', () => {
-  it('reads its settings, routes what an SQS batch names, and logs one line of JSON without any text', async () => {
+  it('reads its settings, routes what an SQS batch names, and writes a line of log and one of metrics without any text', async () => {
     settings();
     const written: string[] = [];
     vi.spyOn(process.stdout, 'write').mockImplementation((line) => written.push(String(line)) > 0);
@@ -99,7 +99,7 @@ describe('the route function', () => {
         'tallypost-trace': 'REQ1',
       },
     });
-    expect(written).toHaveLength(1);
+    expect(written).toHaveLength(2);
     expect(JSON.parse(written[0]!)).toMatchObject({
       level: 'info',
       event: 'held',
@@ -107,7 +107,14 @@ describe('the route function', () => {
       message: 'a b',
       trace: 'REQ1',
     });
-    expect(written[0]).not.toContain('bill');
+    expect(JSON.parse(written[1]!)).toMatchObject({
+      _aws: { CloudWatchMetrics: [{ Namespace: 'Tallypost', Dimensions: [['Desk']] }] },
+      Desk: 'fenmark-mail/desks/water',
+      Routed: 0,
+      Held: 1,
+      Failed: 0,
+    });
+    expect(written.join('')).not.toContain('bill');
   });
 
   it('asks once more for what it failed to start with', async () => {

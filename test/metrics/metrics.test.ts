@@ -4,6 +4,7 @@ import {
   type Measurement,
   measureCompaction,
   measureFolding,
+  measureRecount,
   measureRouting,
   metrics,
 } from '../../src/metrics/measurement.ts';
@@ -81,7 +82,7 @@ describe('a compaction', () => {
   const sizes = { messages: 12, cells: 340, baseBytes: 5000, tableBytes: 3000 };
 
   it('tells its duration and the sizes of what it made', () => {
-    expect(measureCompaction({ kind: 'compacted', ...sizes }, 1250, 0)).toEqual([
+    expect(measureCompaction({ kind: 'compacted', ...sizes }, 1250)).toEqual([
       {
         queue: null,
         values: {
@@ -92,7 +93,6 @@ describe('a compaction', () => {
           Cells: [340],
           BaseBytes: [5000],
           TableBytes: [3000],
-          RecountDifferences: [0],
         },
       },
     ]);
@@ -100,9 +100,19 @@ describe('a compaction', () => {
 
   it('that made nothing tells no sizes, which would read as an empty table', () => {
     const nothing = { kind: 'nothing-new', messages: 0, cells: 0, baseBytes: 0, tableBytes: 0 };
-    expect(measureCompaction(nothing, 80, null)).toEqual([
+    expect(measureCompaction(nothing, 80)).toEqual([
       { queue: null, values: { Compactions: [1], CompactionSeconds: [0.08] } },
     ]);
+  });
+});
+
+describe('a recount', () => {
+  it.each([
+    ['that agrees is 0', { differences: 0, fault: null }, 0],
+    ['that differs is the number of cells', { differences: 3, fault: null }, 3],
+    ['of a table that cannot be read is 1', { differences: 0, fault: { code: 'object-damaged' } }, 1],
+  ])('%s', (_title, result, differences) => {
+    expect(measureRecount(result)).toEqual([{ queue: null, values: { RecountDifferences: [differences] } }]);
   });
 });
 

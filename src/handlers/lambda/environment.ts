@@ -2,6 +2,8 @@ import { randomInt } from 'node:crypto';
 import { S3Client } from '@aws-sdk/client-s3';
 import { TallypostError } from '../../errors.ts';
 import type { World } from '../../ledger/world.ts';
+import { documentsOf } from '../../metrics/emf.ts';
+import type { Measurement } from '../../metrics/measurement.ts';
 import { createS3Store } from '../../store/s3.ts';
 import type { HandlerDeps, LogLine } from '../handler-deps.ts';
 import { createDeskLoader } from '../load-desk.ts';
@@ -22,20 +24,31 @@ export function handlerFrom<R>(
     sleep: (ms) => new Promise((resolve) => setTimeout(resolve, ms)),
   };
   const loadDesk = createDeskLoader(world);
+  const desk = prefix === '' ? setting('TALLYPOST_BUCKET') : `${setting('TALLYPOST_BUCKET')}/${prefix}`;
+  const measured: Measurement[] = [];
+  const measure = (more: readonly Measurement[]) => void measured.push(...more);
   let handler: ((event: unknown) => Promise<R>) | null = null;
   return async (event) => {
     // Not kept when it fails: a key that is put there later is found by the next invocation.
     if (handler === null) {
       const tokenKey = await loadTokenKey(store, process.env.TALLYPOST_TOKEN_KEY, null);
-      handler = create({ world, loadDesk, tokenKey, log: writeLine, prefix });
+      handler = create({ world, loadDesk, tokenKey, log: writeLine, measure, prefix });
     }
-    return handler(event);
+    try {
+      return await handler(event);
+    } finally {
+      for (const document of documentsOf(measured.splice(0), desk, Date.now())) write(document);
+    }
   };
 }
 
-/** One line of JSON to the function's log. */
 function writeLine(line: LogLine): void {
-  process.stdout.write(`${JSON.stringify({ time: new Date().toISOString(), ...line })}\n`);
+  write({ time: new Date().toISOString(), ...line });
+}
+
+/** One line of JSON to the function's log. Not by the console: Lambda would wrap it, and metrics must stand at the root. */
+function write(line: object): void {
+  process.stdout.write(`${JSON.stringify(line)}\n`);
 }
 
 function setting(name: string): string {
