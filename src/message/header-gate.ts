@@ -44,10 +44,17 @@ const knownName =
 
 const lf = 0x0a;
 
-/** True for a header section that is empty or begins with a field, as it should. */
-export function startsWithField(header: Buffer): boolean {
-  const start = header.toString('latin1', 0, 100);
-  return /^\s*$/.test(start) || fieldLine.test(start) || start.startsWith('From ');
+/** Lines in the header of a part that are neither fields nor continue one: text whose blank line before it is missing. */
+export function strayLines(header: Buffer): Buffer {
+  const stray: string[] = [];
+  let isInField = false;
+  for (const line of header.toString('latin1').split('\n')) {
+    const content = line.trimEnd();
+    if (content === '' || (isInField && /^[ \t]/.test(line))) continue;
+    isInField = fieldLine.test(content);
+    if (!isInField && !content.startsWith('From ')) stray.push(content);
+  }
+  return Buffer.from(stray.length === 0 ? '' : `${stray.join('\r\n')}\r\n`, 'latin1');
 }
 
 /** Reads the header section of a message piece by piece, however large it is, and keeps the few fields of interest.

@@ -4,7 +4,7 @@ import type { MimeNode, SplitterChunk } from '@zone-eu/mailsplit';
 import { Splitter } from '@zone-eu/mailsplit';
 import { bounds } from '../bounds.ts';
 import type { DefectCode, Defects } from './defects.ts';
-import { type Field, HeaderGate, startsWithField } from './header-gate.ts';
+import { type Field, HeaderGate, strayLines } from './header-gate.ts';
 import { isMultipart, openPart, type Part } from './part.ts';
 import { type Budget, keepBody, openBudget } from './part-budget.ts';
 
@@ -243,11 +243,11 @@ class MailReader {
     });
     parent.children.push(part);
     this.#parts.set(node, part);
-    // A part without header and without the blank line that should stand for it: its text was taken for a header.
-    if (!startsWithField(node.getHeaders())) {
-      this.#defects.add('header-missing', part.number);
-      keepBody(part, node.getHeaders(), this.#budget, this.#defects);
-    }
+    const stray = strayLines(node.getHeaders());
+    if (stray.length === 0) return;
+    this.#defects.add('header-missing', part.number);
+    // In front of base64 they would spoil what follows.
+    if (part.transferEncoding !== 'base64') keepBody(part, stray, this.#budget, this.#defects);
   }
 
   #keepPreamble(part: Part, bytes: Buffer): void {

@@ -124,6 +124,16 @@ describe('parseMail', () => {
     expect(isClosed).toBe(true);
   });
 
+  test('text in the header of a part, its blank line forgotten, counts as text', async () => {
+    const message = await parseMail(
+      wire(
+        'From: a@b.example\nContent-Type: multipart/mixed; boundary=b\n\n--b\nContent-Type: text/plain\nThe water is brown.\n\n--b\nContent-Type: text/html\n<p>Please come.</p>\n--b--\n',
+      ),
+    );
+    expect(message.text).toBe('The water is brown.\n\nPlease come.');
+    expect(codesOf(message)).toEqual(['header-missing', 'header-missing']);
+  });
+
   const subjects: [source: string, subject: string][] = [
     ['Subject: plain', 'plain'],
     ['Subject:  two   spaces\tand a tab ', 'two spaces and a tab'],
