@@ -7,7 +7,7 @@ import { deleteUnnamed } from './deletion.ts';
 import { finishOrders } from './finish-orders.ts';
 import { checkSchema, isPurgeDue, type Manifest } from './manifest.ts';
 import { readCounts, withFresh } from './objects.ts';
-import { type FitModel, rebuild } from './rebuild.ts';
+import { type FitModel, newBaseId, rebuild } from './rebuild.ts';
 import type { World } from './world.ts';
 
 export interface CompactionOptions {
@@ -63,6 +63,7 @@ async function compactOnce(
 ): Promise<Made> {
   const { manifest } = await readManifest(world);
   checkSchema(manifest, schema);
+  const id = newBaseId(world, manifest);
   const segments = manifest.segments.length;
   const isDue = segments > 0 || isPurgeDue(manifest) || (options.force === true && manifest.base !== null);
   if (!isDue) return nothingNew(manifest);
@@ -76,6 +77,7 @@ async function compactOnce(
   };
   if (options.dryRun) return { kind: 'dry-run', ...measured, baseBytes: 0, tableBytes: 0, fit: null };
   const rebuilt = await rebuild(world, desk, schema, manifest, counts, {
+    id,
     renames: manifest.renames,
     fitModel: options.fitModel ?? fitTable,
   });

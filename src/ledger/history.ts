@@ -135,17 +135,26 @@ export interface Settled {
   readonly isChanged: boolean;
 }
 
+const nothingSettled: Settled = {
+  confirmations: [],
+  landed: [],
+  open: null,
+  inVain: new Set(),
+  isChanged: false,
+};
+
 /** Reads a history by a manifest: what a restore took back is taken back, what is void is left out.
  *  `own`: the caller's uncommitted segment, which counts as void. `hasAbsorbed`: whether a segment is in the base. */
 export function settle(
-  history: History,
+  stored: Stored | null,
   manifest: Manifest,
   hasAbsorbed: (segment: string) => boolean,
   own: string | null,
 ): Settled {
+  if (stored === null || isTombstone(stored)) return nothingSettled;
   const dead = new Set(manifest.rolledBack);
   const restore = manifest.restores.at(-1)?.id ?? '';
-  const confirmations = history.confirmations.map((c): Recorded => {
+  const confirmations = stored.confirmations.map((c): Recorded => {
     const { undone, ...kept } = c;
     if (dead.has(c.segment)) return { ...kept, undone: restore };
     return undone === undefined || dead.has(undone) ? kept : c;
@@ -153,16 +162,16 @@ export function settle(
   const landed: Placement[] = [];
   const inVain = new Set<string>();
   let open: Placement | null = null;
-  for (const placement of history.placements) {
-    const isLast = placement === history.placements.at(-1);
+  for (const placement of stored.placements) {
+    const isLast = placement === stored.placements.at(-1);
     if (dead.has(placement.segment)) continue;
     if (!isLast || isLanded(manifest, hasAbsorbed, placement.segment)) landed.push(placement);
     else if (placement.segment === own || isVoid(manifest, placement.segment)) inVain.add(placement.segment);
     else open = placement;
   }
   const isChanged =
-    landed.length + (open ? 1 : 0) !== history.placements.length ||
-    confirmations.some((c, i) => c.undone !== history.confirmations[i].undone);
+    landed.length + (open ? 1 : 0) !== stored.placements.length ||
+    confirmations.some((c, i) => c.undone !== stored.confirmations[i].undone);
   return { confirmations, landed, open, inVain, isChanged };
 }
 
@@ -185,4 +194,9 @@ export function columnAsOf(
     ({ segment }) => !dead.has(segment) && isLanded(manifest, hasAbsorbed, segment),
   );
   return columnOf(last ?? null);
+}
+
+/** The only segment of a history that may not have landed. */
+export function lastSegmentOf(stored: Stored | null): string | null {
+  return stored === null || isTombstone(stored) ? null : (stored.placements.at(-1)?.segment ?? null);
 }

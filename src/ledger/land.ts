@@ -6,19 +6,11 @@ import type { Entry } from '../model/counts.ts';
 import { keys } from '../store/keys.ts';
 import { createAbsorbedReader, type HasAbsorbed } from './absorbed.ts';
 import { commit, readManifest } from './commit.ts';
-import { isLanded, isTombstone, type Settled, type Stored, settle } from './history.ts';
+import { lastSegmentOf, type Settled, type Stored, settle } from './history.ts';
 import { editHistory, historyKey, type ReadHistory, readHistory } from './history-store.ts';
 import { newId } from './ids.ts';
-import {
-  ageMs,
-  checkSchema,
-  isNamed,
-  isOutdated,
-  isVoid,
-  type Manifest,
-  withSegment,
-  withVoided,
-} from './manifest.ts';
+import { landingOf, openAmong } from './landing.ts';
+import { ageMs, checkSchema, isNamed, type Manifest, withSegment, withVoided } from './manifest.ts';
 import { putNew } from './objects.ts';
 import { faultOf, isOfStore, mapBounded, pause } from './pace.ts';
 import { type Answer, type Plan, plan, type Request } from './plan.ts';
@@ -153,7 +145,7 @@ class Round {
     const hasAbsorbed = mayBeAbsorbed ? await this.#absorbedOf(first) : () => false;
     const inTheWay = new Set<string>();
     const ready = opened.filter(({ work, read }) => {
-      const blocking = settleStored(read.stored, first, hasAbsorbed, null).open?.segment;
+      const blocking = settle(read.stored, first, hasAbsorbed, null).open?.segment;
       if (blocking === undefined) return true;
       const isYoung = Math.abs(ageMs(blocking, this.#world.nowMs())) < this.#options.patienceMs;
       if (isYoung && !this.#own.has(blocking)) {
@@ -172,7 +164,7 @@ class Round {
     if (inTheWay.size === 0) return { manifest: first, ready };
     const voided = await commit(this.#world, async (manifest) => {
       const absorbed = await this.#absorbedOf(manifest);
-      const open = [...inTheWay].filter((id) => !isLanded(manifest, absorbed, id) && !isVoid(manifest, id));
+      const open = openAmong(inTheWay, manifest, absorbed);
       if (open.length === 0) return { kind: 'settled', value: null };
       return { kind: 'write', next: withVoided(manifest, this.#world.nowMs(), open), value: null };
     });
@@ -185,7 +177,7 @@ class Round {
     if (this.#isAbandoned) return;
     try {
       const edited = await editHistory(this.#world, work.message, read, (stored) => {
-        const settled = settleStored(stored, manifest, hasAbsorbed, this.#segment);
+        const settled = settle(stored, manifest, hasAbsorbed, this.#segment);
         if (settled.open) return { next: null, value: null };
         const planned = this.#plan(work, stored, settled, manifest);
         return { next: planned.next, value: planned };
@@ -226,10 +218,9 @@ class Round {
     await putNew(this.#world, keys.segments + id, encodeEntries(this.#schema, entries));
     const erases = planned.some(([, { move }]) => move?.erases);
     const committed = await commit<boolean>(this.#world, async (manifest, hasTried) => {
-      if (isNamed(manifest, id)) return { kind: 'settled', value: true };
-      if (hasTried && (await this.#absorbedOf(manifest))(id)) return { kind: 'settled', value: true };
-      if (isVoid(manifest, id) || isOutdated(manifest, readAtVersion))
-        return { kind: 'settled', value: false };
+      const hasAbsorbed = hasTried ? await this.#absorbedOf(manifest) : null;
+      const landing = landingOf(manifest, id, readAtVersion, hasAbsorbed);
+      if (landing !== 'free') return { kind: 'settled', value: landing === 'landed' };
       checkSchema(manifest, this.#schema);
       const next = withSegment(manifest, this.#world.nowMs(), id, this.#schema.id, erases);
       return { kind: 'write', next, value: true };
@@ -241,25 +232,4 @@ class Round {
   #fail(work: Work, fault: Fault): void {
     this.#landings.set(work, { kind: 'unknown', fault });
   }
-}
-
-function lastSegmentOf(stored: Stored | null): string | null {
-  return stored === null || isTombstone(stored) ? null : (stored.placements.at(-1)?.segment ?? null);
-}
-
-const nothingSettled: Settled = {
-  confirmations: [],
-  landed: [],
-  open: null,
-  inVain: new Set(),
-  isChanged: false,
-};
-
-function settleStored(
-  stored: Stored | null,
-  manifest: Manifest,
-  hasAbsorbed: HasAbsorbed,
-  own: string | null,
-): Settled {
-  return stored === null || isTombstone(stored) ? nothingSettled : settle(stored, manifest, hasAbsorbed, own);
 }

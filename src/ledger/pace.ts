@@ -27,15 +27,16 @@ export async function mapBounded<T, R>(items: readonly T[], work: (item: T) => P
 export function faultOf(error: unknown, place: string): Fault {
   if (error instanceof TallypostError)
     return { code: error.code, place: error.place, expected: error.expected, got: error.got };
-  return {
-    code: 'store-failed',
-    place,
-    expected: 'an answer of the store',
-    got: error instanceof Error ? error.name : 'a failure',
-  };
+  const code = isMistake(error) ? 'unexpected' : 'store-failed';
+  const got = error instanceof Error ? error.name : 'a failure';
+  return { code, place, expected: 'an answer of the store', got };
 }
 
-/** Failures of the store may pass; all other errors of our own stay, however often one tries. */
+/** Failures of the store may pass. All other errors of our own, and mistakes in the program, stay however often one tries. */
 export function isOfStore(error: unknown): boolean {
-  return !(error instanceof TallypostError) || error.code.startsWith('store-');
+  return error instanceof TallypostError ? error.code.startsWith('store-') : !isMistake(error);
+}
+
+function isMistake(error: unknown): boolean {
+  return error instanceof TypeError || error instanceof ReferenceError || error instanceof RangeError;
 }

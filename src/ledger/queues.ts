@@ -8,7 +8,7 @@ import { checkSchema, type Manifest, type Renames, successor } from './manifest.
 import { readCounts, withFresh } from './objects.ts';
 import { pause } from './pace.ts';
 import { currentDesk, currentName } from './queue-names.ts';
-import { archive, rebuild } from './rebuild.ts';
+import { archive, newBaseId, rebuild } from './rebuild.ts';
 import type { World } from './world.ts';
 
 /** What may be done to a queue. Counts keep the names that were confirmed; the manifest says what each is called now. */
@@ -51,6 +51,7 @@ export async function changeQueue(
   return withFresh(async () => {
     const { manifest } = await readManifest(world);
     checkSchema(manifest, schema);
+    const id = newBaseId(world, manifest);
     const renames = renamesAfter(desk, manifest.renames, change);
     const messages = await countMoved(world, schema, manifest, renames);
     const isKnown = JSON.stringify(renames) === JSON.stringify(manifest.renames);
@@ -59,7 +60,7 @@ export async function changeQueue(
     const opened = change.kind === 'open' ? await editDeskFile(world, change) : null;
     if (opened === 'missing' || opened === 'unfinished')
       return { kind: 'lost-race', version: manifest.version, messages: 0, deskFile: opened };
-    const done = isKnown ? null : await commitRenames(world, desk, schema, manifest, renames);
+    const done = isKnown ? null : await commitRenames(world, desk, schema, manifest, { id, renames });
     if (done !== null && !done.isCommitted)
       return { kind: 'lost-race', version: done.version, messages: 0, deskFile: opened ?? 'unchanged' };
     const deskFile = opened ?? (await editDeskFile(world, change));
@@ -173,11 +174,11 @@ async function commitRenames(
   desk: Desk,
   schema: Schema,
   manifest: Manifest,
-  renames: Renames,
+  { id, renames }: { readonly id: string; readonly renames: Renames },
 ): Promise<{ isCommitted: boolean; version: number }> {
   if (manifest.schema !== '') {
     const counts = await readCounts(world, schema, manifest);
-    return rebuild(world, desk, schema, manifest, counts, { renames, fitModel: null });
+    return rebuild(world, desk, schema, manifest, counts, { id, renames, fitModel: null });
   }
   const committed = await commit<boolean>(world, async (now) => {
     if (JSON.stringify(now.renames) === JSON.stringify(renames)) return { kind: 'settled', value: true };

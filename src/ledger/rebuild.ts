@@ -23,6 +23,8 @@ import type { World } from './world.ts';
 export type FitModel = typeof fitTable;
 
 export interface RebuildOptions {
+  /** From `newBaseId`, made as soon as the manifest was read. */
+  readonly id: string;
   readonly renames: Renames;
   /** Null: keep the last fit. */
   readonly fitModel: FitModel | null;
@@ -49,8 +51,7 @@ export async function rebuild(
   counts: Counts,
   options: RebuildOptions,
 ): Promise<Rebuilt> {
-  // After everything that it replaces, so that as a floor it lets none of that stay.
-  const id = newId(world, latestName(from), from.atMs);
+  const { id } = options;
   checkCounts(counts, keys.bases + id);
   const table = await makeTable(world, desk, schema, from, counts, options);
   const [base, served] = [encodeCounts(counts), encodeTable(table)];
@@ -127,6 +128,12 @@ function isUnchanged(from: Manifest, now: Manifest, isExclusive: boolean): boole
     JSON.stringify(now.renames) === JSON.stringify(from.renames) &&
     from.segments.every(({ id }) => isNamed(now, id))
   );
+}
+
+/** The name of a new base. It sorts after everything that the base replaces, and after whatever another process names from a
+ *  manifest read before this one changed: as a floor it leaves nothing that may hold what was erased until now. */
+export function newBaseId(world: World, from: Manifest): string {
+  return newId(world, latestName(from), from.atMs + 1);
 }
 
 function latestName({ floor, base, table, absorbed, segments }: Manifest): string {

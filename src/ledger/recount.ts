@@ -13,7 +13,7 @@ import { editHistory, historyKey, listMessages, readHistory } from './history-st
 import { isOutdated, type Manifest } from './manifest.ts';
 import { readCounts, withFresh } from './objects.ts';
 import { faultOf, mapBounded } from './pace.ts';
-import { type FitModel, rebuild } from './rebuild.ts';
+import { type FitModel, newBaseId, rebuild } from './rebuild.ts';
 import type { World } from './world.ts';
 
 export interface RecountOptions {
@@ -42,22 +42,34 @@ export interface RecountResult {
 
 /** Counts every history again from scratch and compares with the table, cell by cell, both as of one version; what is folded
  *  meanwhile changes neither. With `repair` the recount becomes the base. Reads every history once. */
-export async function recount(
+export function recount(
   world: World,
   desk: Desk,
   schema: Schema,
   options: RecountOptions = {},
 ): Promise<RecountResult> {
+  return withFresh(() => recountUndisturbed(world, desk, schema, options));
+}
+
+async function recountUndisturbed(
+  world: World,
+  desk: Desk,
+  schema: Schema,
+  options: RecountOptions,
+): Promise<RecountResult> {
   for (let attempt = 0; ; attempt++) {
     const { manifest } = await readManifest(world);
+    const id = newBaseId(world, manifest);
     const isMigration = manifest.schema !== '' && manifest.schema !== schema.id;
     const unread = isMigration && options.repair ? await rereadHistories(world, schema, options.reread) : 0;
     const { counts, messages } = await countHistories(world, schema, manifest);
-    const { manifest: after } = await readManifest(world);
-    // An erasure or a restore meanwhile changed what the histories say of the version compared.
-    const isDisturbed = after.erasedAtVersion > manifest.version || isOutdated(after, manifest.version);
-    if (isDisturbed && attempt < 5) continue;
     const { table, fault } = await readTableCounts(world, schema, manifest);
+    const { manifest: after } = await readManifest(world);
+    // An erasure or a restore meanwhile changed what the histories say of the version compared; a compaction may have deleted
+    // what it named.
+    const isGone = fault?.code === 'object-missing' && after.version !== manifest.version;
+    const isDisturbed = after.erasedAtVersion > manifest.version || isOutdated(after, manifest.version);
+    if ((isGone || isDisturbed) && attempt < 5) continue;
     const max = options.differencesMax ?? bounds.faultsListedMax;
     const differences = table ? diffCounts(table, counts, max) : [];
     const found = { version: manifest.version, messages, differences, fault, unread };
@@ -65,6 +77,7 @@ export async function recount(
     if (!options.repair) return { ...found, repair: 'none' };
     if (isRight) return { ...found, repair: 'not-needed' };
     const { isCommitted } = await rebuild(world, desk, schema, manifest, counts, {
+      id,
       renames: manifest.renames,
       fitModel: options.fitModel ?? null,
       isExclusive: isMigration,
@@ -131,7 +144,7 @@ async function readTableCounts(
   manifest: Manifest,
 ): Promise<{ table: Counts | null; fault: Fault | null }> {
   try {
-    return { table: await withFresh(() => readCounts(world, schema, manifest)), fault: null };
+    return { table: await readCounts(world, schema, manifest), fault: null };
   } catch (error) {
     if (!(error instanceof TallypostError) || error.code.startsWith('store-')) throw error;
     return { table: null, fault: faultOf(error, '') };

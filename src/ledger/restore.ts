@@ -6,11 +6,10 @@ import { encodeTable } from '../model/codec-table.ts';
 import { keys } from '../store/keys.ts';
 import { readAbsorbed } from './absorbed.ts';
 import { commit, readManifest } from './commit.ts';
-import { newId } from './ids.ts';
 import { checkSchema, decodeManifest, type Manifest, successor } from './manifest.ts';
 import { putNew, readBase } from './objects.ts';
 import { placeOrder } from './orders.ts';
-import { archive, makeTable } from './rebuild.ts';
+import { archive, makeTable, newBaseId } from './rebuild.ts';
 import { sweepHistories } from './sweep.ts';
 import type { World } from './world.ts';
 
@@ -39,15 +38,15 @@ export async function restoreVersion(
   const { manifest: before } = await readManifest(world);
   checkSchema(before, schema);
   checkReachable(before, to);
+  const id = newBaseId(world, before);
   const target = to === before.version ? before : await manifestAt(world, before, to);
   checkSchema(target, schema);
   const gone = await landedSince(world, target, before);
   const outcome = { version: before.version, to, segments: gone.size };
   if (gone.size === 0 && target.base === before.base) return { kind: 'nothing-to-do', ...outcome };
   if (options.dryRun) return { kind: 'dry-run', ...outcome };
-  const table = await tableFor(world, desk, schema, target, before);
+  const table = await tableFor(world, desk, schema, target, before, id);
   await placeOrder(world, { kind: 'sweep', atMs: world.nowMs() });
-  const id = newId(world, before.floor, before.atMs);
   const committed = await commit<boolean>(world, async (manifest) => {
     if (manifest.restores.some((r) => r.id === id)) return { kind: 'settled', value: true };
     if (manifest.version !== before.version) return { kind: 'settled', value: false };
@@ -119,6 +118,7 @@ async function tableFor(
   schema: Schema,
   target: Manifest,
   now: Manifest,
+  id: string,
 ): Promise<string | null> {
   if (target.base === null || JSON.stringify(target.renames) === JSON.stringify(now.renames))
     return target.table;
@@ -127,7 +127,6 @@ async function tableFor(
     renames: now.renames,
     fitModel: null,
   });
-  const id = newId(world, now.floor, now.atMs);
   await putNew(world, keys.tables + id, encodeTable(table));
   return id;
 }

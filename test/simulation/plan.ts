@@ -85,6 +85,8 @@ function drawRates(random: () => number, level: number): FaultRates {
     late: rate(),
     duplicate: rate(),
     spuriouslyLost: rate(),
+    stall: random() < 0.4 ? 0.05 * random() : 0,
+    outage: random() < 0.3 ? 0.02 * random() : 0,
   };
 }
 

@@ -14,6 +14,10 @@ export interface FaultRates {
   readonly duplicate: number;
   /** A conditional write is answered as lost: half of the times it landed. */
   readonly spuriouslyLost: number;
+  /** The process is not chosen for the next hundreds of steps. */
+  readonly stall: number;
+  /** The next dozens of writes of one kind of object fail, some of them to happen later. */
+  readonly outage: number;
 }
 
 export const noFaults: FaultRates = {
@@ -23,6 +27,8 @@ export const noFaults: FaultRates = {
   late: 0,
   duplicate: 0,
   spuriouslyLost: 0,
+  stall: 0,
+  outage: 0,
 };
 
 export interface Process {
@@ -42,6 +48,8 @@ const callsMax = 20_000;
 interface Parked {
   readonly process: Process | null;
   readonly run: () => void;
+  /** Not chosen before this step while others can go on. */
+  readonly fromStep: number;
 }
 
 export class Scheduler {
@@ -57,6 +65,7 @@ export class Scheduler {
   failure: unknown = null;
   readonly #parked: Parked[] = [];
   #spawned = 0;
+  #outage = { kind: '', left: 0 };
   #running = 0;
 
   constructor(random: () => number, startMs: number) {
@@ -117,7 +126,7 @@ export class Scheduler {
             reject(error);
           }
         };
-        const fate = this.#drawFate(isWrite, lost !== null);
+        const fate = this.#drawFate(label, isWrite, lost !== null);
         if (fate !== 'fine') this.faults += 1;
         this.trace?.(`${this.nowMs} ${process.name}: ${label}${fate === 'fine' ? '' : ` (${fate})`}`);
         if (fate === 'crash') {
@@ -141,15 +150,27 @@ export class Scheduler {
     });
   }
 
+  /** From now on nothing goes wrong any more. */
+  calm(): void {
+    this.rates = noFaults;
+    this.#outage.left = 0;
+  }
+
   kill(process: Process): void {
     process.isAlive = false;
     this.crashes += 1;
     this.#onCrash.get(process)?.();
   }
 
-  #drawFate(isWrite: boolean, isConditional: boolean): keyof FaultRates | 'fine' {
-    let x = this.random();
+  #drawFate(label: string, isWrite: boolean, isConditional: boolean): keyof FaultRates | 'fine' {
     const { rates } = this;
+    if (isWrite && this.random() < rates.outage)
+      this.#outage = { kind: kindOf(label), left: 10 + Math.floor(this.random() * 40) };
+    if (isWrite && this.#outage.left > 0 && this.#outage.kind === kindOf(label)) {
+      this.#outage.left -= 1;
+      return this.random() < 0.3 ? 'late' : 'failBefore';
+    }
+    let x = this.random();
     for (const fate of ['crash', 'failBefore', 'failAfter', 'late', 'duplicate', 'spuriouslyLost'] as const) {
       if (!isWrite && fate !== 'crash' && fate !== 'failBefore') continue;
       if (fate === 'spuriouslyLost' && !isConditional) continue;
@@ -160,13 +181,25 @@ export class Scheduler {
   }
 
   #park(process: Process | null, run: () => void): void {
-    this.#parked.push({ process, run });
+    const isStalled = this.random() < this.rates.stall;
+    const fromStep = isStalled ? this.steps + Math.floor(this.random() * 400) : 0;
+    this.#parked.push({ process, run, fromStep });
+  }
+
+  #choose(): number {
+    // A few draws: when all of them are stalled, one of the stalled goes on.
+    let i = 0;
+    for (let draw = 0; draw < 4; draw++) {
+      i = Math.floor(this.random() * this.#parked.length);
+      if (this.#parked[i].fromStep <= this.steps) break;
+    }
+    return i;
   }
 
   /** Lets one parked process go on; false when none is parked. */
   async step(): Promise<boolean> {
     while (this.#parked.length > 0) {
-      const i = Math.floor(this.random() * this.#parked.length);
+      const i = this.#choose();
       const { process, run } = this.#parked[i];
       this.#parked[i] = this.#parked.at(-1) as Parked;
       this.#parked.pop();
@@ -180,6 +213,11 @@ export class Scheduler {
     await settled();
     return this.#parked.length > 0;
   }
+}
+
+/** `put histories/m1.json` to `put histories`. */
+function kindOf(label: string): string {
+  return label.slice(0, label.lastIndexOf('/'));
 }
 
 /** All that follows from one answer without another call of the store has happened when this resolves. */

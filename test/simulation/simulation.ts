@@ -5,7 +5,7 @@ import { Checker } from './checker.ts';
 import { checkEnd } from './end.ts';
 import { Oracle } from './oracle.ts';
 import { drawPlan, type Job, type Plan } from './plan.ts';
-import { noFaults, type Process, Scheduler } from './scheduler.ts';
+import { type Process, Scheduler } from './scheduler.ts';
 import { Objects, storeOf } from './simulated-store.ts';
 
 export interface Summary {
@@ -62,7 +62,7 @@ export class Simulation {
       if (plan.hasLongPauses && this.#random() < 0.004) scheduler.nowMs += 16 * 24 * 3600_000;
       await scheduler.step();
     }
-    scheduler.rates = noFaults;
+    scheduler.calm();
     while (await scheduler.step()) if (scheduler.failure) throw scheduler.failure;
     await checkEnd(this);
     if (scheduler.failure) throw scheduler.failure;
