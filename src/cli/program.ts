@@ -1,6 +1,7 @@
 import { Command, CommanderError } from 'commander';
 import { addCompact } from './commands/compact.ts';
 import { addConfirm } from './commands/confirm.ts';
+import { addCost } from './commands/cost.ts';
 import { addDemo } from './commands/demo.ts';
 import { addErase } from './commands/erase.ts';
 import { addExplain } from './commands/explain.ts';
@@ -32,7 +33,8 @@ export async function runProgram(args: readonly string[], terminal: Terminal): P
     .configureOutput({ writeOut: terminal.out, writeErr: terminal.err });
   for (const add of [addDemo, addInit, addRun, addConfirm, addExplain, addReplay, addCompact, addReport])
     add(program, terminal, end);
-  for (const add of [addRecount, addErase, addUndo, addQueue, addRestore]) add(program, terminal, end);
+  for (const add of [addRecount, addErase, addUndo, addQueue, addRestore, addCost])
+    add(program, terminal, end);
   try {
     await program.parseAsync([...args], { from: 'user' });
     return code;

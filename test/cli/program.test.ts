@@ -24,6 +24,7 @@ const commands = [
   'undo',
   'queue',
   'restore',
+  'cost',
 ];
 
 describe('the command line', () => {
@@ -58,6 +59,7 @@ describe('the command line', () => {
     ['a number that is none', ['restore', '--store', 's', '--version', 'last']],
     ['a number out of range', ['run', '--store', 's', '--every', '0']],
     ['a wrong number of messages', ['demo', '--messages', '1']],
+    ['a share above one', ['cost', '--messages', '9', '--mail-share', '2']],
   ])('refuses %s with 2 and says so on stderr', async (_, args) => {
     const { code, out, err } = await runCli(...args);
     expect(code).toBe(2);
@@ -118,5 +120,23 @@ describe('the command line', () => {
     expect(asJson.err).toBe('');
     expect(Object.keys(asJson.json().error)).toEqual(['code', 'place', 'expected', 'got']);
     expect(asJson.json().error.code).toBe(code);
+  });
+});
+
+describe('cost', () => {
+  it('adds a month up, line by line', async () => {
+    const { code, json } = await runCli('cost', '--messages', '100000', '--mail-share', '1', '--json');
+    expect(code).toBe(0);
+    const { lines, totalDollars } = json();
+    // 100,000 mails at $100 a million.
+    expect(lines.find((line: { what: string }) => line.what === 'mail received').dollars).toBeCloseTo(10, 9);
+    expect(totalDollars).toBeCloseTo(
+      lines.reduce((sum: number, line: { dollars: number }) => sum + line.dollars, 0),
+      9,
+    );
+  });
+  it('is shown as a table for people', async () => {
+    const { out } = await runCli('cost', '--messages', '1000');
+    expect(out).toMatch(/\$\d+\.\d\d +a month +1,000 messages/);
   });
 });
