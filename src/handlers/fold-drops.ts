@@ -88,7 +88,9 @@ async function settleDrop(deps: HandlerDeps, taken: Taken, outcome: FoldOutcome 
   try {
     if (fault !== null) {
       await keepRefused(deps, drop, fault);
-      deps.log({ level: 'warn', event: 'confirmation-refused', drop: drop.key, trace, ...fault });
+      // What was there instead stands in the record kept: whoever made the drop may have put anything there.
+      const { got: _, ...shown } = fault;
+      deps.log({ level: 'warn', event: 'confirmation-refused', drop: drop.key, trace, ...shown });
     } else if (taken.kind === 'claim') {
       const { confirmation } = taken.read.claim;
       const line = { drop: drop.key, message: confirmation.message, trace };

@@ -16,9 +16,17 @@ export function faultMembers(error: unknown): Omit<LogLine, 'level' | 'event'> {
       ...(error.cause === undefined ? {} : { cause: nameOf(error.cause) }),
     };
   }
-  const frames =
-    error instanceof Error ? (error.stack ?? '').split('\n').filter((line) => /^\s+at /.test(line)) : [];
-  return { code: 'unexpected', error: nameOf(error), frames: frames.slice(0, 8).map((line) => line.trim()) };
+  return { code: 'unexpected', error: nameOf(error), frames: framesOf(error) };
+}
+
+/** What stands behind the message in the stack: a message may have lines that look like frames. */
+function framesOf(error: unknown): string[] {
+  if (!(error instanceof Error)) return [];
+  const { stack = '', message } = error;
+  const at = stack.indexOf(message);
+  const lines = at === -1 ? [] : stack.slice(at + message.length).split('\n');
+  const frames = lines.filter((line) => /^\s+at /.test(line));
+  return frames.slice(0, 8).map((line) => line.trim());
 }
 
 function nameOf(error: unknown): string {
