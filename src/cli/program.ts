@@ -14,6 +14,7 @@ import { addRestore } from './commands/restore.ts';
 import { addRun } from './commands/run.ts';
 import { addUndo } from './commands/undo.ts';
 import { exitCodes, type Terminal, writeError } from './terminal.ts';
+import { version } from './version.ts';
 
 /** Runs one command line (without node and script) and gives its exit code. Writes only through `terminal`. */
 export async function runProgram(args: readonly string[], terminal: Terminal): Promise<number> {
@@ -25,7 +26,7 @@ export async function runProgram(args: readonly string[], terminal: Terminal): P
     .description(
       'Routes inbound mail and web forms to the right queue, with a probability that can be trusted.',
     )
-    .version('0.1.0')
+    .version(version)
     .helpCommand(false)
     .showHelpAfterError('(tallypost --help lists the commands, tallypost COMMAND --help its options)')
     .enablePositionalOptions()

@@ -1,0 +1,2 @@
+/** Also in package.json; a test compares them. */
+export const version = '0.1.0';
