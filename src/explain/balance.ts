@@ -59,14 +59,24 @@ export function weighEvidence(
   const tokens: EvidencePart[] = [];
   let volume = 0;
   let absence = 0;
+  // A mail has chosen nothing in each field of every form: one circumstance, not twenty.
+  let unchosen = 0;
   for (const part of parts) {
     if (part.kind === 'token') tokens.push(part);
     else if (part.kind === 'absent') absence += decibansOf(part);
-    else if (part.kind === 'slot') {
+    else if (part.kind === 'slot' && part.place.startsWith('field:') && part.value === 'missing') {
+      unchosen += decibansOf(part);
+    } else if (part.kind === 'slot') {
       const label = describeSlot(part.place, part.value);
       items.push({ kind: 'circumstance', label, slot: part.place, decibans: decibansOf(part) });
     } else volume += decibansOf(part);
   }
+  items.push({
+    kind: 'circumstance',
+    label: 'nothing chosen in other fields of forms',
+    slot: '',
+    decibans: unchosen,
+  });
   items.push({
     kind: 'volume',
     label: `messages of ${queue} and of ${rival} so far`,

@@ -1,0 +1,95 @@
+import { createExtractor } from '../../src/features/extractor.ts';
+import type { HandlerDeps, LogLine } from '../../src/handlers/handler-deps.ts';
+import { createDeskLoader } from '../../src/handlers/load-desk.ts';
+import { createLocalRunner } from '../../src/handlers/local-runner.ts';
+import { readMessage } from '../../src/handlers/read-message.ts';
+import { loadModel } from '../../src/ledger/load-model.ts';
+import type { World } from '../../src/ledger/world.ts';
+import { keys } from '../../src/store/keys.ts';
+import { createMemoryStore } from '../../src/store/memory.ts';
+import type { Store } from '../../src/store/store.ts';
+import { deskJson } from '../scenario/desk.ts';
+import { createChance } from '../scenario/random.ts';
+import { generateScenario, type ScenarioMessage } from '../scenario/scenario.ts';
+
+export interface SmallDesk {
+  readonly world: World;
+  readonly store: Store;
+  readonly deps: HandlerDeps;
+  readonly runner: ReturnType<typeof createLocalRunner>;
+  readonly messages: readonly ScenarioMessage[];
+  readonly logged: readonly LogLine[];
+  setNow(ms: number): void;
+  openBench(): Promise<Awaited<ReturnType<typeof openBench>>>;
+  readMessage(key: string): ReturnType<typeof readParsed>;
+}
+
+export const smallTokenKey = new Uint8Array(16).fill(5);
+
+/** A desk that learned the first `learned` messages of a small scenario and then routed the rest, which nobody confirmed. */
+export async function playSmallDesk(
+  learned: number,
+  all: number,
+  store: Store = createMemoryStore(),
+): Promise<SmallDesk> {
+  const { messages } = generateScenario(4, { messages: all });
+  const chance = createChance(9);
+  let nowMs = messages[0]!.arrivesAtMs;
+  const world: World = { store, nowMs: () => nowMs, random: chance.next, sleep: async () => {} };
+  const logged: LogLine[] = [];
+  const deps: HandlerDeps = {
+    world,
+    loadDesk: createDeskLoader(world, 0),
+    tokenKey: smallTokenKey,
+    log: (line) => logged.push(line),
+  };
+  await store.put(keys.desk, deskJson(), { contentType: 'application/json' });
+  const runner = createLocalRunner(deps);
+  const feed = async (part: readonly ScenarioMessage[]) => {
+    for (const { key, bytes, contentType } of part) await store.put(key, bytes, { contentType });
+    nowMs = part.at(-1)!.arrivesAtMs;
+    await runner.run({ segmentsMax: Number.POSITIVE_INFINITY });
+  };
+  const confirm = async (part: readonly ScenarioMessage[]) => {
+    for (const [i, { key, trueQueue }] of part.entries()) {
+      const drop = {
+        message: key.slice(keys.inbound.length),
+        queue: trueQueue,
+        by: 'a.tolland',
+        at: new Date(nowMs).toISOString(),
+      };
+      await store.put(`${keys.confirmations}small-${nowMs}-${i}.json`, Buffer.from(JSON.stringify(drop)));
+    }
+    await runner.run({ segmentsMax: 0 });
+  };
+  const half = Math.floor(learned / 2);
+  await feed(messages.slice(0, half));
+  await confirm(messages.slice(0, half));
+  await feed(messages.slice(half, learned));
+  await confirm(messages.slice(half, learned));
+  await feed(messages.slice(learned));
+  return {
+    world,
+    store,
+    deps,
+    runner,
+    messages,
+    logged,
+    setNow: (ms) => {
+      nowMs = ms;
+    },
+    openBench: () => openBench(deps),
+    readMessage: (key) => readParsed(world, key),
+  };
+}
+
+async function openBench({ world, loadDesk, tokenKey }: HandlerDeps) {
+  const file = await loadDesk();
+  const extractor = createExtractor(file, tokenKey);
+  const model = await loadModel(world, file, extractor.schema, null);
+  return { desk: model.desk, extractor, model };
+}
+
+async function readParsed(world: World, key: string) {
+  return (await readMessage(world, key, () => true))?.message ?? null;
+}
