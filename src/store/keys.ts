@@ -17,6 +17,8 @@ export const keys = {
   versions: 'model/versions/',
   orders: 'model/orders/',
   reports: 'reports/',
+  /** Of the page for held messages: what a person can still take back, and links that were used. */
+  settling: 'settling/',
   /** Ids of webhooks taken, kept a day: longer than their timestamps hold. */
   webhookMarks: 'webhook-marks/',
 } as const;
