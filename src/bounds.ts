@@ -207,4 +207,32 @@ export const bounds = {
   localPauseMs: 2_000,
   /** Drops taken up by one compaction; the rest is left to the next. */
   leftDropsMax: 20_000,
+
+  // Report (src/report)
+  /** Newest messages looked at one by one: a month of a busy desk, two small reads each, a minute at most. */
+  reportMessagesMax: 5_000,
+  /** Of them, those scored again without themselves for a second look: a few seconds. */
+  secondLookMessagesMax: 2_000,
+  /** More than this nobody looks at in a morning. */
+  secondLookListedMax: 40,
+  /** Held messages compared pair by pair for a new queue: 20,000 pairs, about a second. */
+  groupedMessagesMax: 200,
+  newQueuesListedMax: 5,
+  /** Messages read to find the words behind the hashes of one queue. */
+  wordsReadMax: 40,
+
+  // The page for held messages (src/settle)
+  /** A link is for one person to come in with, once; a working day later it is stale. */
+  settleLinkMs: 24 * 3600 * 1000,
+  /** A person stays in for a working day. */
+  settleSessionMs: 12 * 3600 * 1000,
+  /** What was settled and could still be taken back is dropped for good when nothing follows. */
+  settleUndoMs: 10 * 60 * 1000,
+  /** Body of a request of the page: a message's id, a queue and a token. */
+  settleBodyBytesMax: 8 * 1024,
+  /** Messages listed on the page; whoever settles these sees the next ones. */
+  settleListedMax: 200,
+  /** Words marked in one message, and rows of evidence beside it: more would not be read. */
+  settleMarksMax: 300,
+  settleEvidenceMax: 8,
 } as const;

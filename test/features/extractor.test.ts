@@ -3,7 +3,7 @@ import { describe, expect, it } from 'vitest';
 import type { Desk } from '../../src/desk/desk.ts';
 import { createExtractor } from '../../src/features/extractor.ts';
 import { schemaOf } from '../../src/features/schema-of.ts';
-import { createTokenHash } from '../../src/features/token-hash.ts';
+import { createSipHash } from '../../src/features/siphash.ts';
 import type { Message } from '../../src/message/message.ts';
 import { exampleDesk, exampleKey, formOf, mailOf } from './example.ts';
 
@@ -228,10 +228,34 @@ describe('regions', () => {
   it('hold hashes ascending, each below 2^40', () => {
     const { regions } = extractor.extract(mail);
     expect(regions.map((each) => each.length)).toEqual([1, 3, 5, 6]); // ' a ', ' big', 'big ', ' bil', 'bill', 'ill '
-    const hash = createTokenHash(exampleKey);
+    const sipHash = createSipHash(exampleKey);
+    const hash = (text: string) => sipHash.token(Buffer.from(text), Buffer.byteLength(text));
+    expect(regions[0]).toEqual(Float64Array.of(hash('bill')));
     expect(regions[1]).toEqual(
       Float64Array.from([hash('a'), hash('big'), hash('bill')].sort((a, b) => a - b)),
     );
+    const grams = [' a ', ' big', 'big ', ' bil', 'bill', 'ill '].map(hash);
+    expect(regions[3]).toEqual(Float64Array.from(grams.sort((a, b) => a - b)));
+  });
+
+  it('hash a pair by the hashes of its words, five bytes each, low byte first', () => {
+    const sipHash = createSipHash(exampleKey);
+    const five = (token: number) => [0, 8, 16, 24, 32].map((bits) => Math.floor(token / 2 ** bits) % 256);
+    const hash = (text: string) => sipHash.token(Buffer.from(text), Buffer.byteLength(text));
+    const pair = (a: string, b: string) =>
+      sipHash.token(Uint8Array.from([...five(hash(a)), ...five(hash(b))]), 10);
+    const { regions } = extractor.extract(mailOf({ subject: '', ownText: 'wörter 水' }));
+    const expected = [pair('^', 'wörter'), pair('wörter', '水'), pair('水', '$')];
+    expect(regions[2]).toEqual(Float64Array.from(expected.sort((a, b) => a - b)));
+  });
+
+  it('are the same after a hundred thousand other words', () => {
+    const before = extractor.extract(mail);
+    for (let m = 0; m < 20; m++) {
+      const other = Array.from({ length: 5000 }, (_, i) => `w${m}x${i}`).join(' ');
+      extractor.extract(mailOf({ ownText: other }));
+    }
+    expect(extractor.extract(mail)).toEqual(before);
   });
 
   it('keep the first tokens of a flood', () => {

@@ -2,7 +2,6 @@ declare module 'siphash' {
   const siphash: {
     /** Key: four 32-bit words, little endian. */
     hash(key: readonly number[], message: string | Uint8Array): { readonly h: number; readonly l: number };
-    hash_hex(key: readonly number[], message: string | Uint8Array): string;
   };
   export default siphash;
 }
