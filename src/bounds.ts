@@ -7,8 +7,8 @@ export const bounds = {
   /** Messages whose leave-one-out scores exponents are fitted to: a dozen exponents are known well from a few thousand, and
    *  more would only make compaction slower. */
   fitMessagesMax: 4000,
-  /** Values of log ratios that a scorer remembers for each reading: 8 MB; the tokens that make up most of all mail. */
-  rememberedLogsMax: 1_000_000,
+  /** Ratios that a scorer remembers for each reading: 8 MB; the tokens that make up most of all mail. */
+  rememberedRatiosMax: 1_000_000,
 
   // Messages (src/message)
   /** Header fields of a part that are kept: real ones hold a few KB; 10,000 recipients would be 300 KB. */
@@ -78,8 +78,8 @@ export const bounds = {
   wordTokensMax: 1024,
   pairTokensMax: 2048,
   gramTokensMax: 3072,
-  /** Hashes of tokens held in memory between messages, twice this at most: about 15 MB. */
-  rememberedTokensMax: 64 * 1024,
+  /** Words, and grams, whose hashes are held in memory between messages: about 15 MB. */
+  rememberedWordsMax: 64 * 1024,
 
   // Labelled histories (src/cli/labelled)
   /** A JSON line holds one raw message, at worst with an escape of two characters for every line end and quote. */
@@ -134,6 +134,8 @@ export const bounds = {
   phrasesMax: 500,
   phraseCharsMax: 200,
   sendersMax: 1000,
+  /** First words of phrases looked for by one expression: its time grows with their number. */
+  firstWordsMax: 64,
 
   // Ledger (src/ledger)
   /** Superseded objects stay this long: longer than any delivery is retried (SQS keeps a message 14 days at most). */

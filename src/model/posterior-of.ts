@@ -3,7 +3,6 @@ import { tokenHex } from '../features/schema.ts';
 import type { Block } from './fit.ts';
 import type { EvidencePart, Posterior } from './posterior.ts';
 import {
-  addToken,
   blockScores,
   emptySums,
   lengthScale,
@@ -11,9 +10,10 @@ import {
   priorScore,
   type ReadingSums,
   slotScore,
+  sumsOfToken,
 } from './score.ts';
 import { countTokens, rowOf, type Scorer, type ScorerReading } from './scorer.ts';
-import { tokenLogs } from './view.ts';
+import { tokenRatios } from './view.ts';
 
 /** log P(queue | x) = Σ_b w_bk · score_bk + bias_k, normalised over the queues. Never changes the scorer's table.
  *  Throws TallypostError `schema-mismatch`. */
@@ -77,12 +77,11 @@ export function explainParts(scorer: Scorer, features: Features): EvidencePart[]
   schema.regions.forEach(({ id }, g) => {
     const present = features.regions[g];
     const scale = lengthScale(present.length);
-    /** Weighed sum over the readings of what `fill` adds to each. */
-    const part = (kind: string, value: string, fill: (sums: ReadingSums, reading: ScorerReading) => void) => {
+    /** Weighed sum over the readings of what `sumsOf` gives for each. */
+    const part = (kind: string, value: string, sumsOf: (reading: ScorerReading) => ReadingSums) => {
       const score = new Float64Array(queues.length);
       for (const reading of scorer.readings[g]) {
-        const sums = emptySums(queues.length);
-        fill(sums, reading);
+        const sums = sumsOf(reading);
         for (const { index, part } of reading.blocks) {
           weighed(fit.blocks[index], partOf(sums, part), scale).forEach((x, k) => {
             score[k] += x;
@@ -92,14 +91,13 @@ export function explainParts(scorer: Scorer, features: Features): EvidencePart[]
       parts.push({ kind, place: id, value, score });
     };
     if (scorer.readings[g].some((reading) => reading.countsAbsent)) {
-      part('absent', '', (sums, { view }) => sums.absent.set(view.absent ?? new Float64Array(queues.length)));
+      const none = emptySums(queues.length);
+      part('absent', '', ({ view }) => ({ ...none, absent: view.absent ?? none.absent }));
     }
     for (const token of present) {
       const row = rowOf(scorer.regions[g], token);
       if (row < 0) continue;
-      part('token', tokenHex(token), (sums, { view }) =>
-        addToken(sums, tokenLogs(scorer.regions[g], view, row)),
-      );
+      part('token', tokenHex(token), ({ view }) => sumsOfToken(tokenRatios(scorer.regions[g], view, row)));
     }
   });
   return parts;

@@ -2,7 +2,7 @@ import type { Features } from '../features/schema.ts';
 import type { TokensBlock } from './fit.ts';
 import { schemaMismatch } from './fold.ts';
 import { type Own, rowOf, type Scorer, type ScorerReading, type ScorerRegion } from './scorer.ts';
-import { createView, type TokenLogs, tokenLogs, type View, viewLeaving } from './view.ts';
+import { createView, type TokenRatios, tokenRatios, type View, viewLeaving } from './view.ts';
 
 /** Each block's score, before exponents: nats; [blocks * queues], block-major. With `own` the message's contribution is
  *  taken out of its queue's counts and exposures first (leave-one-out), exactly as unfolding it would.
@@ -60,35 +60,66 @@ export function lengthScale(tokens: number): number {
 
 /** Sums over a message's tokens, before length scaling and exponents; each [queues]. */
 export interface ReadingSums {
-  /** Σ of present tokens' contributions above 0, and below. */
+  /** Σ log p_k/m of present tokens where it is above 0, and where below. */
   readonly for: Float64Array;
   readonly against: Float64Array;
-  /** Σ over the tokens that are absent. */
+  /** Σ log (1 - p_k)/(1 - m) over the tokens that are absent. */
   readonly absent: Float64Array;
 }
 
+/** Ratios are multiplied and a logarithm is taken only when a product nears the end of the range: a multiplication a token and
+ *  queue in place of a logarithm. */
 function sumTokens(region: ScorerRegion, view: View, rows: Int32Array): ReadingSums {
-  const sums = emptySums(view.exposure.draws.length);
+  const queues = view.exposure.draws.length;
+  const sums = emptySums(queues);
   if (view.absent !== null) sums.absent.set(view.absent);
-  for (const row of rows) if (row >= 0) addToken(sums, tokenLogs(region, view, row));
+  const products = emptySums(queues, 1);
+  for (const row of rows) {
+    if (row < 0) continue;
+    const { present, absent } = tokenRatios(region, view, row);
+    for (let k = 0; k < queues; k++) {
+      if (present[k] > 1) {
+        products.for[k] *= present[k];
+        if (products.for[k] > 1e200) flush(products.for, sums.for, k);
+      } else {
+        products.against[k] *= present[k];
+        if (products.against[k] < 1e-200) flush(products.against, sums.against, k);
+      }
+    }
+    if (absent === null) continue;
+    for (let k = 0; k < queues; k++) {
+      products.absent[k] /= absent[k];
+      if (products.absent[k] > 1e200 || products.absent[k] < 1e-200) flush(products.absent, sums.absent, k);
+    }
+  }
+  for (let k = 0; k < queues; k++) {
+    flush(products.for, sums.for, k);
+    flush(products.against, sums.against, k);
+    flush(products.absent, sums.absent, k);
+  }
   return sums;
 }
 
-export function emptySums(queues: number): ReadingSums {
+function flush(product: Float64Array, sum: Float64Array, k: number): void {
+  sum[k] += Math.log(product[k]);
+  product[k] = 1;
+}
+
+export function emptySums(queues: number, value = 0): ReadingSums {
   return {
-    for: new Float64Array(queues),
-    against: new Float64Array(queues),
-    absent: new Float64Array(queues),
+    for: new Float64Array(queues).fill(value),
+    against: new Float64Array(queues).fill(value),
+    absent: new Float64Array(queues).fill(value),
   };
 }
 
-/** Adds what one present token contributes; it leaves the sum of the absent ones. */
-export function addToken(sums: ReadingSums, { present, absent }: TokenLogs): void {
-  for (let k = 0; k < present.length; k++) {
-    if (present[k] > 0) sums.for[k] += present[k];
-    else sums.against[k] += present[k];
-  }
-  if (absent !== null) for (let k = 0; k < absent.length; k++) sums.absent[k] -= absent[k];
+/** What one present token adds to the sums; it leaves the sum of the absent ones. */
+export function sumsOfToken({ present, absent }: TokenRatios): ReadingSums {
+  return {
+    for: present.map((ratio) => Math.max(0, Math.log(ratio))),
+    against: present.map((ratio) => Math.min(0, Math.log(ratio))),
+    absent: absent === null ? new Float64Array(present.length) : absent.map((factor) => -Math.log(factor)),
+  };
 }
 
 /** What a block takes of its reading's sums; [queues]. */

@@ -9,12 +9,15 @@ export interface View {
   readonly own: Own | null;
   /** Σ_t log((1 - p_kt)/(1 - m_t)) over all tokens held, as if none were present; null where absence is not counted; [queues]. */
   readonly absent: Float64Array | null;
-  /** Logs of rows that were asked for before. Null for a view that serves one message only. */
-  readonly remembered: Map<number, TokenLogs> | null;
+  /** Ratios of rows that were asked for before. Null for a view that serves one message only. */
+  readonly remembered: Map<number, TokenRatios> | null;
+  /** Work space. */
+  readonly hits: Hits;
 }
 
-/** What a token adds: log p_k/m when present, log (1 - p_k)/(1 - m) when absent (null where that is not counted); [queues]. */
-export interface TokenLogs {
+/** What a token multiplies the odds by, before exponents: p_k/m when present, (1 - p_k)/(1 - m) when absent (null where that
+ *  is not counted); [queues]. */
+export interface TokenRatios {
   readonly present: Float64Array;
   readonly absent: Float64Array | null;
 }
@@ -33,6 +36,7 @@ export function createView(
     own,
     absent: countsAbsent ? absentSum(region, left) : null,
     remembered: new Map(),
+    hits: createHits(left.draws.length),
   };
 }
 
@@ -47,32 +51,29 @@ export function viewLeaving(region: ScorerRegion, exposure: Exposure, rows: Int3
     if (hits.length === 0) only++;
   }
   const left = exposureWithout(exposure, own.queue, own.weight * rows.length, only);
-  return { exposure: left, own, absent: null, remembered: null };
+  return { exposure: left, own, absent: null, remembered: null, hits };
 }
 
-/** The logs of one row. Remembered, since a few thousand tokens make up most of all mail. */
-export function tokenLogs(region: ScorerRegion, view: View, row: number): TokenLogs {
+/** The ratios of one row. Remembered, since a few thousand tokens make up most of all mail. */
+export function tokenRatios(region: ScorerRegion, view: View, row: number): TokenRatios {
   const known = view.remembered?.get(row);
   if (known) return known;
-  const { exposure, own } = view;
+  const { exposure, own, hits } = view;
   const queues = exposure.draws.length;
-  const hits = createHits(queues);
   let absent: Float64Array | null = null;
   if (view.absent !== null) {
     // As summed in view.absent: with the message's own count, which the sum over all tokens could not know to leave out.
     readHits(region, row, null, hits);
-    absent = hits.length === 0 ? new Float64Array(queues) : absentFactors(exposure, hits).map(Math.log);
+    absent = hits.length === 0 ? new Float64Array(queues).fill(1) : absentFactors(exposure, hits);
   }
   readHits(region, row, own, hits);
-  const present = new Float64Array(queues);
-  if (hits.length > 0) {
-    rateRatios(exposure, hits, present);
-    for (let k = 0; k < queues; k++) present[k] = Math.log(present[k]);
+  const present = new Float64Array(queues).fill(1);
+  if (hits.length > 0) rateRatios(exposure, hits, present);
+  const ratios = { present, absent };
+  if (view.remembered !== null && view.remembered.size * queues < bounds.rememberedRatiosMax) {
+    view.remembered.set(row, ratios);
   }
-  const logs = { present, absent };
-  if (view.remembered !== null && view.remembered.size * queues < bounds.rememberedLogsMax)
-    view.remembered.set(row, logs);
-  return logs;
+  return ratios;
 }
 
 function createHits(queues: number): Hits {
