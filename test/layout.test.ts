@@ -54,8 +54,9 @@ const allowed: Record<string, readonly string[]> = {
   metrics: [],
   intake: ['store', 'desk', 'message', 'text'],
   report: [...core(), 'explain', 'html', 'store', 'ledger'],
-  handlers: [...core(), 'explain', 'html', 'metrics', 'store', 'ledger', 'intake', 'report'],
-  cli: [...core(), 'explain', 'html', 'cost', 'store', 'ledger', 'intake', 'report', 'handlers'],
+  settle: [...core(), 'explain', 'html', 'store', 'ledger'],
+  handlers: [...core(), 'explain', 'html', 'metrics', 'store', 'ledger', 'intake', 'report', 'settle'],
+  cli: [...core(), 'explain', 'html', 'cost', 'store', 'ledger', 'intake', 'report', 'settle', 'handlers'],
 };
 
 /** Values in, values out. */
