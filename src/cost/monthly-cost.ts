@@ -1,58 +1,5 @@
+import { batchOf, busyShare, type Load, type Machine } from './load.ts';
 import type { Prices } from './prices.ts';
-
-/** What a desk does in a month, as far as it costs. */
-export interface Load {
-  readonly messages: number;
-  /** Share that comes by mail; the rest are forms through the intake. */
-  readonly mailShare: number;
-  readonly mailKb: number;
-  readonly formKb: number;
-  /** Share of messages that somebody confirms or corrects. */
-  readonly confirmedShare: number;
-  /** Messages of one route invocation, confirmations of one fold. At low volume batches hold one. */
-  readonly routeBatch: number;
-  readonly confirmBatch: number;
-  /** Billed for one message, parse to metadata. */
-  readonly routeMs: number;
-  readonly confirmMs: number;
-  /** Billed once an invocation: init when cold, reading the table's version when warm; a mean. */
-  readonly invocationMs: number;
-  readonly routeMemoryMb: number;
-  readonly compactSeconds: number;
-  readonly compactMemoryMb: number;
-  readonly rawDays: number;
-  readonly historyKb: number;
-  /** Months of histories kept. */
-  readonly historyMonths: number;
-  readonly logBytesPerMessage: number;
-  readonly alarms: number;
-  readonly metrics: number;
-}
-
-export const ordinaryLoad: Omit<Load, 'messages' | 'routeBatch' | 'confirmBatch'> = {
-  mailShare: 0.8,
-  mailKb: 60,
-  formKb: 2,
-  confirmedShare: 0.4,
-  routeMs: 25,
-  confirmMs: 30,
-  invocationMs: 60,
-  routeMemoryMb: 512,
-  compactSeconds: 60,
-  compactMemoryMb: 2048,
-  rawDays: 90,
-  historyKb: 12,
-  historyMonths: 24,
-  logBytesPerMessage: 400,
-  alarms: 8,
-  metrics: 12,
-};
-
-/** Batches fill with the traffic: the mean arrivals within one batching window, at least one, at most the batch size. */
-export function batchOf(messagesPerMonth: number, windowSeconds: number, batchMax: number): number {
-  const perSecond = messagesPerMonth / (30 * 24 * 3600);
-  return Math.min(batchMax, Math.max(1, perSecond * windowSeconds));
-}
 
 export interface CostLine {
   readonly service: string;
@@ -62,32 +9,83 @@ export interface CostLine {
   readonly dollars: number;
 }
 
+/** S3 requests as the handlers make them; deletions are free. */
+export const requests = {
+  /** Read and head of the message; the copy that writes its metadata. */
+  message: { reads: 2, writes: 1 },
+  /** A look at the manifest. */
+  routeBatch: { reads: 1, writes: 0 },
+  /** The form document. */
+  form: { reads: 0, writes: 1 },
+  /** A look for the webhook's mark; the drop and the mark. */
+  webhook: { reads: 1, writes: 2 },
+  /** The drop, the message, its history, a last look at the drop; the history. */
+  confirmation: { reads: 4, writes: 1 },
+  /** The manifest twice and the list of absorbed segments; the segment and the manifest. */
+  fold: { reads: 3, writes: 2 },
+} as const;
+
 const million = 1e6;
 const kbPerGb = 1024 * 1024;
+const nights = 30;
+const recounts = 30 / 7;
 
-/** Cost of one month, line by line, in US dollars; free tiers left out.
- *  Requests counted as the handlers make them: a route reads the message and writes its metadata by one copy; a batch reads
- *  the manifest once and, when a fold landed since, one segment; a confirmation is a drop read, the message read, a history
- *  read and written; a fold writes a segment and the manifest. */
-export function monthlyCost(load: Load, prices: Prices): readonly CostLine[] {
-  const mails = load.messages * load.mailShare;
-  const forms = load.messages - mails;
-  const confirmed = load.messages * load.confirmedShare;
-  const routes = load.messages / load.routeBatch;
-  const folds = confirmed / load.confirmBatch;
-  const nights = 30;
+/** Cost of one month, line by line, in US dollars; free tiers and what goes over the wire left out. */
+export function monthlyCost(load: Load, machine: Machine, prices: Prices): readonly CostLine[] {
+  const { messages } = load;
+  const mails = messages * load.mailShare;
+  const forms = messages - mails;
+  const confirmed = messages * load.confirmedShare;
+  const routes = messages / batchOf(messages, 1, machine.routeBatchMax);
+  const folds = confirmed / batchOf(confirmed, machine.confirmWindowSeconds, machine.confirmBatchMax);
   const intakes = forms + confirmed;
-  const writes = load.messages + load.messages + confirmed * 3 + folds * 2 + nights * 10;
-  const reads = load.messages + routes + folds * 2 + confirmed * 4 + nights * 2000;
+  const histories = confirmed * load.historyMonths;
+  // Listing pages, 1,000 keys each, are billed as writes.
+  const nightly = { reads: 2000 + folds / nights, writes: 10 + histories / 1000 };
+  // Beyond the time of a function nobody recounts there.
+  const isRecounted = histories / machine.recountPerSecond <= machine.functionSecondsMax;
+  const recounted = isRecounted ? histories : 0;
+  const counted: readonly (readonly [number, { readonly reads: number; readonly writes: number }])[] = [
+    [mails, { reads: 0, writes: 1 }],
+    [messages, requests.message],
+    [routes, requests.routeBatch],
+    [forms, requests.form],
+    [confirmed, requests.webhook],
+    [confirmed, requests.confirmation],
+    [folds, requests.fold],
+    // A router reads each new segment.
+    [Math.min(routes, folds), { reads: 1, writes: 0 }],
+    [nights, nightly],
+    [recounts, { reads: recounted, writes: recounted / 1000 }],
+  ];
+  const reads = counted.reduce((sum, [times, each]) => sum + times * each.reads, 0);
+  const writes = counted.reduce((sum, [times, each]) => sum + times * each.writes, 0);
+  const compactSeconds = Math.min(
+    machine.functionSecondsMax,
+    machine.compactSeconds + (histories / million) * machine.compactSecondsPerMillion,
+  );
   const gbSeconds =
-    ((load.messages * load.routeMs +
-      confirmed * load.confirmMs +
-      (routes + folds + intakes) * load.invocationMs) /
+    ((messages * machine.routeMs + confirmed * machine.confirmMs + (routes + folds) * machine.invocationMs) /
       1000) *
-      (load.routeMemoryMb / 1024) +
-    nights * load.compactSeconds * (load.compactMemoryMb / 1024);
-  const rawGb = ((mails * load.mailKb + forms * load.formKb) * load.rawDays) / 30 / kbPerGb;
-  const historyGb = (confirmed * load.historyKb * load.historyMonths) / kbPerGb;
+      (machine.routeMemoryMb / 1024) +
+    ((intakes * machine.intakeMs) / 1000) * (machine.intakeMemoryMb / 1024) +
+    (nights * compactSeconds + recounts * (recounted / machine.recountPerSecond)) *
+      (machine.compactMemoryMb / 1024);
+  // Each message comes, is overwritten and expires; each confirmation's drop and mark come and go, its history is written.
+  const events = 3 * messages + 5 * confirmed + 2 * folds;
+  const rawKb = mails * load.mailKb + forms * load.formKb;
+  const logBytes =
+    messages * machine.routeLineBytes +
+    confirmed * machine.confirmLineBytes +
+    intakes * machine.intakeLineBytes +
+    (routes + folds + intakes) * machine.invocationLineBytes +
+    (routes + folds) * machine.metricLineBytes +
+    Math.min(messages, routes * load.queues) * machine.queueLineBytes;
+  const metrics =
+    machine.routeMetrics * busyShare(messages) +
+    machine.confirmMetrics * busyShare(confirmed) +
+    machine.compactMetrics / 24 +
+    load.queues * busyShare(messages / load.queues);
   const line = (service: string, what: string, amount: number, unit: string, price: number): CostLine => ({
     service,
     what,
@@ -104,28 +102,44 @@ export function monthlyCost(load: Load, prices: Prices): readonly CostLine[] {
       '256 KB chunks',
       prices.sesChunksMillion / million,
     ),
-    line('S3', 'writes', writes, 'requests', prices.s3WritesMillion / million),
+    line('S3', 'writes and listings', writes, 'requests', prices.s3WritesMillion / million),
     line('S3', 'reads', reads, 'requests', prices.s3ReadsMillion / million),
-    line('S3', 'raw messages kept', rawGb, 'GB-months', prices.s3GbMonth),
-    line('S3', 'histories kept', historyGb, 'GB-months', prices.s3GbMonth),
+    line(
+      'S3',
+      'raw messages kept',
+      (rawKb * (load.rawDays + load.supersededDays)) / 30 / kbPerGb,
+      'GB-months',
+      prices.s3GbMonth,
+    ),
+    line('S3', 'histories kept', (histories * machine.historyKb) / kbPerGb, 'GB-months', prices.s3GbMonth),
+    line(
+      'S3',
+      'tables kept',
+      (machine.modelMb * (machine.modelNights + load.supersededDays)) / 1024,
+      'GB-months',
+      prices.s3GbMonth,
+    ),
+    line('EventBridge', 'events of the bucket', events, 'events', prices.eventBridgeMillion / million),
     line(
       'SQS',
       'send, receive, delete',
-      load.messages + confirmed + 2 * (routes + folds),
+      messages + confirmed + 2 * (routes + folds) + machine.idlePolls,
       'requests',
       prices.sqsRequestsMillion / million,
     ),
     line(
       'Lambda',
       'invocations',
-      routes + folds + intakes + nights,
+      routes + folds + intakes + nights + recounts,
       'requests',
       prices.lambdaRequestsMillion / million,
     ),
     line('Lambda', 'time', gbSeconds, 'GB-seconds', prices.lambdaGbSecond),
-    line('CloudWatch', 'logs', (load.messages * load.logBytesPerMessage) / 1024 ** 3, 'GB', prices.logsGb),
-    line('CloudWatch', 'alarms', load.alarms, 'alarms', prices.alarmMonth),
-    line('CloudWatch', 'metrics', load.metrics, 'metrics', prices.metricMonth),
+    line('CloudWatch', 'logs', logBytes / 1024 ** 3, 'GB', prices.logsGb),
+    line('CloudWatch', 'metrics', metrics, 'metric-months', prices.metricMonth),
+    line('CloudWatch', 'alarms', machine.alarmMetrics, 'metrics watched', prices.alarmMonth),
+    line('CloudWatch', 'dashboard', machine.dashboards, 'dashboards', prices.dashboardMonth),
+    line('Secrets Manager', 'secrets', machine.secrets, 'secrets', prices.secretMonth),
   ];
 }
 
