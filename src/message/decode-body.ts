@@ -1,4 +1,4 @@
-import { Buffer } from 'node:buffer';
+import { Buffer, isAscii } from 'node:buffer';
 import libmime from 'libmime';
 import { decode as decodeCharset } from 'libmime/lib/charset.js';
 import { decode as decodeQuotedPrintable } from 'libqp';
@@ -127,11 +127,6 @@ function isKnownCharset(name: string): boolean {
   }
   if (knownCharsets.size < 200) knownCharsets.set(key, isKnown);
   return isKnown;
-}
-
-function isAscii(bytes: Buffer): boolean {
-  for (let i = 0; i < bytes.length; i++) if (bytes[i]! > 0x7f) return false;
-  return true;
 }
 
 /** Charsets that write other scripts or wide characters with bytes below 0x80. */

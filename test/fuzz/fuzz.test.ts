@@ -1,6 +1,7 @@
 import { Buffer } from 'node:buffer';
 import { readFileSync } from 'node:fs';
 import fc from 'fast-check';
+import { simpleParser } from 'mailparser';
 import { afterAll, describe, expect, test } from 'vitest';
 import { bounds } from '../../src/bounds.ts';
 import { Defects, defectKinds } from '../../src/message/defects.ts';
@@ -79,7 +80,7 @@ describe(`generated mail (seed ${seed})`, () => {
             for (const word of written.attachedWords) expect(message.text).not.toContain(word);
           }
         }),
-        runs(0.3),
+        runs(0.25),
       ),
     timeoutMs,
   );
@@ -91,6 +92,25 @@ describe(`generated mail (seed ${seed})`, () => {
         fc.asyncProperty(tree, lineEnd, fc.integer({ min: 1, max: 400 }), async (root, eol, size) => {
           const { raw } = writeMail(root, eol);
           expect(await parsed(inPieces(raw, size))).toEqual(await parsed(raw));
+        }),
+        runs(0.05),
+      ),
+    timeoutMs,
+  );
+
+  test(
+    'mailparser finds no text and no header that is not found here',
+    () =>
+      fc.assert(
+        fc.asyncProperty(tree, lineEnd, async (root, eol) => {
+          const { raw, texts } = writeMail(root, eol);
+          const message = await parsed(raw);
+          const other = await simpleParser(raw, { skipHtmlToText: true, skipTextToHtml: true });
+          const found = `${other.text ?? ''} ${other.html || ''}`;
+          const words = texts.flatMap((text) => text.words).filter((word) => found.includes(word));
+          expect(words.filter((word) => !message.text.includes(word))).toEqual([]);
+          expect(message.subject).toBe(other.subject);
+          expect(message.from?.address).toBe(other.from?.value[0]?.address);
         }),
         runs(0.05),
       ),

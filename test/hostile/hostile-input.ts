@@ -15,6 +15,7 @@ export interface HostileInput {
   readonly defects: readonly DefectCode[];
   /** Set when no other defect may be on record. */
   readonly isExact?: boolean;
+  /** For a message that was read to its end; a source that fails is tried again instead. */
   readonly expectedDecision: ExpectedDecision;
   /** Text that must be found, and text that must not count as the writer's. */
   readonly keeps?: string;
