@@ -29,7 +29,7 @@ export function ownWords(segments: readonly Segment[], whole: string): string {
 /** A quick look: text without any of these holds neither quotation nor signature. */
 function mayHoldMore(text: string): boolean {
   return (
-    /^[ \t]{0,3}>|^-- ?$|[:：]\s*$|---|___|^.{0,40}[:：]/m.test(text) ||
+    /^[ \t]{0,3}\|?>|^-- ?$|[:：]\s*$|---|___|^.{0,40}[:：]/m.test(text) ||
     deviceLines.some((p) => p.test(lastLine(text)))
   );
 }
@@ -40,7 +40,7 @@ function lastLine(text: string): string {
 
 /** RFC 3676 section 4.5: quoted lines start with `>`; some clients put up to three spaces before it. */
 function isQuoteLine(line: string): boolean {
-  return /^[ \t]{0,3}>/.test(line);
+  return /^[ \t]{0,3}\|?>/.test(line);
 }
 
 function keepOwn(lines: readonly Line[]): string[] {
@@ -141,6 +141,8 @@ const wroteEnd = new RegExp(`(?:${alternatives(wroteEndings)})\\s*[:：]?$`, 'iu
 /** Polish, French and others put the verb before the name: "Am … schrieb Anna:", "W dniu … Jan pisze:". */
 const wroteInside = new RegExp(`(?:^|[\\s,>])(?:${alternatives(wroteEndings)})(?:[\\s:：]|$)`, 'iu');
 const hasWhen = /\d{1,2}[:.]\d{2}|\d{4}|\d{1,2}[./-]\d{1,2}[./-]/;
+const hasClock = /\d{1,2}[:.]\d{2}/;
+const addressAtEnd = /[<(][^\s<>@]{1,64}@[^\s<>@]{1,255}[>)][:：]$/;
 const hasAddress = /[<([]?[^\s<>@]{1,64}@[^\s<>@]{1,255}/;
 
 /** How many lines from here make up an introduction of a quotation; 0 when none does. */
@@ -160,16 +162,15 @@ function attributionLines(lines: readonly Line[], at: number): number {
 }
 
 function isAttribution(text: string, isQuotedNext: boolean): boolean {
-  const when = hasWhen.test(text);
-  const address = hasAddress.test(text);
+  const isSure = isQuotedNext || hasAddress.test(text);
   if (/[:：]$/.test(text)) {
-    if (wroteEnd.test(text)) return when || address || isQuotedNext;
-    if (wroteInside.test(text))
-      return when && (address || isQuotedNext || /^\P{L}*\p{L}+\P{L}+\d|\d{4}/u.test(text));
+    // Prose dates what somebody wrote as well; mail clients add the time of day.
+    if (wroteEnd.test(text)) return isSure || hasClock.test(text);
+    if (wroteInside.test(text)) return isSure && hasWhen.test(text);
     // Some languages' clients write no verb: "2026年3月3日(火) 10:15 Name <a@b.example>:".
-    return when && /[<(][^\s<>@]{1,64}@[^\s<>@]{1,255}[>)][:：]$/.test(text) && /\d{4}/.test(text);
+    return /\d{4}/.test(text) && hasClock.test(text) && addressAtEnd.test(text);
   }
-  return wroteEnd.test(text) && when && (address || isQuotedNext);
+  return wroteEnd.test(text) && hasWhen.test(text) && isSure;
 }
 
 /** RFC 3676 section 4.3: `-- ` alone on a line. Many programs drop the space; then only a short rest is a signature. */

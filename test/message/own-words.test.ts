@@ -52,6 +52,10 @@ describe('own words in plain text', () => {
 
   const kept: [string, string][] = [
     ['a line with a colon', 'My neighbour wrote: pay nothing.\nIs that right?'],
+    [
+      'prose that dates what somebody wrote',
+      'On 3 March 2026 your engineer, Mr Brown, wrote in his report the following:\nthe pipe is sound.',
+    ],
     ['a line that ends with a colon', 'The notice wrote:\nthe water is off from 8 to 12.\nIs that right?'],
     ['a period of time', 'We are away.\nFrom: 3 March\nTo: 9 March\nPlease stop the supply.'],
     ['a list of two dashes', 'Broken:\n-- the tap\n-- the meter'],
