@@ -6,6 +6,7 @@ import { addDemo } from './commands/demo.ts';
 import { addErase } from './commands/erase.ts';
 import { addExplain } from './commands/explain.ts';
 import { addInit } from './commands/init.ts';
+import { addIntake } from './commands/intake.ts';
 import { addQueue } from './commands/queue.ts';
 import { addRecount } from './commands/recount.ts';
 import { addReplay } from './commands/replay.ts';
@@ -34,7 +35,7 @@ export async function runProgram(args: readonly string[], terminal: Terminal): P
     .configureOutput({ writeOut: terminal.out, writeErr: terminal.err });
   for (const add of [addDemo, addInit, addRun, addConfirm, addExplain, addReplay, addCompact, addReport])
     add(program, terminal, end);
-  for (const add of [addRecount, addErase, addUndo, addQueue, addRestore, addCost])
+  for (const add of [addRecount, addErase, addUndo, addQueue, addRestore, addCost, addIntake])
     add(program, terminal, end);
   try {
     await program.parseAsync([...args], { from: 'user' });

@@ -58,9 +58,9 @@ it('plays a demo into a fresh directory, and again into the same one', { timeout
   const args = ['demo', '--dir', 'play', '--messages', '20'];
   const first = await run(...args, '--json');
   expect(first).toMatchObject({ code: 0, err: '' });
-  expect(JSON.parse(first.out)).toMatchObject({ messages: 20, recount: { differences: [], fault: null } });
+  expect(JSON.parse(first.out)).toMatchObject({ messages: 20, recount: { differences: 0 }, faults: [] });
   expect(await readdir(join(root, 'play'))).toEqual(
-    expect.arrayContaining(['config', 'inbound', 'demo-summary.json']),
+    expect.arrayContaining(['config', 'inbound', 'reports', 'demo-summary.json']),
   );
   await writeFile(join(root, 'play/left-from-before'), '');
   const again = await run(...args);

@@ -25,6 +25,7 @@ const commands = [
   'queue',
   'restore',
   'cost',
+  'intake',
 ];
 
 describe('the command line', () => {

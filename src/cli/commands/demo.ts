@@ -65,7 +65,7 @@ async function demo(flags: Flags, terminal: Terminal): Promise<Answer> {
   }).finally(progress.end);
   const summary = { seconds: (performance.now() - startedMs) / 1000, ...summariseDemo(play, scenario) };
   await writeFile(join(flags.dir, summaryName), `${JSON.stringify(summary, null, 2)}\n`);
-  const isRight = play.recount.differences.length === 0 && play.recount.fault === null;
+  const isRight = play.recount.differences === 0 && play.faults.length === 0;
   return {
     json: { store: flags.dir, ...summary },
     text: `${describeDemo(summary, terminal)}\n\n${whereToLook(flags.dir, play)}`,
@@ -122,19 +122,19 @@ function titlesIn(desk: Uint8Array): Map<string, string> {
   return new Map(queues.map(({ id, title }) => [id, title]));
 }
 
-function whereToLook(dir: string, { rows }: DemoPlay): string {
+function whereToLook(dir: string, play: DemoPlay): string {
   const script = relative('', process.argv[1] ?? '') || 'tallypost';
   const command = script.endsWith('.js') ? `node ${script}` : 'tallypost';
-  const held = rows.findLast((row) => row.kind === 'held' && row.reason === 'unsure');
-  const shown = held ?? rows.at(-1);
-  const lines = [
-    'What to look at',
-    `  ${join(dir, 'config/desk.json')}    queues, costs and guards of the desk`,
-    `  ${join(dir, 'inbound')}             the mail and the forms, as they arrived`,
-    `  ${join(dir, summaryName)}   all numbers of this page, and more`,
-    `  ${command} recount --store ${dir}`,
+  const held = play.rows.findLast((row) => row.kind === 'held' && row.reason === 'unsure');
+  const shown = held ?? play.rows.at(-1);
+  const rows = [
+    [join(dir, 'reports/latest.html'), 'the page for the lead: open it in a browser'],
+    [join(dir, 'config/desk.json'), 'queues, costs and guards of the desk'],
+    [join(dir, 'inbound'), 'the mail and the forms, as they arrived'],
+    [join(dir, summaryName), 'all numbers of this page, and more'],
+    [`${command} recount --store ${dir}`, ''],
   ];
   if (shown !== undefined)
-    lines.push(`  ${command} explain --store ${dir} ${shown.message.key.slice('inbound/'.length)}`);
-  return lines.join('\n');
+    rows.push([`${command} explain --store ${dir} ${shown.message.key.slice('inbound/'.length)}`, '']);
+  return `What to look at\n${rows.map(([what, why]) => `  ${what!.padEnd(36)}${why}`.trimEnd()).join('\n')}`;
 }

@@ -122,8 +122,7 @@ function describe(explained: Explained, { colours }: Terminal): string {
     '',
     bold(`${balance.queue} against ${balance.rival}: ${signedDecibans(balance.decibans)} decibans`),
     dim(
-      `before the record's correction, ${oddsInWords(balance.decibans)} for ${balance.decibans < 0 ? balance.rival : balance.queue}; ` +
-        `10 decibans are odds of 10 to 1; + speaks for ${balance.queue}, − for ${balance.rival}`,
+      `${leaning(balance)}; 10 decibans are odds of 10 to 1; + speaks for ${balance.queue}, − for ${balance.rival}`,
     ),
   ];
   for (const group of balance.groups) {
@@ -139,6 +138,11 @@ function describe(explained: Explained, { colours }: Terminal): string {
   if (defects.length > 0)
     lines.push('', dim(`on record: ${defects.map(({ code, place }) => `${code} (${place})`).join(', ')}`));
   return lines.join('\n');
+}
+
+function leaning({ queue, rival, decibans }: Balance): string {
+  const odds = oddsInWords(decibans);
+  return odds.includes(' to 1') ? `${odds} for ${decibans < 0 ? rival : queue}` : odds;
 }
 
 function decisionInWords(decision: Decision): string {

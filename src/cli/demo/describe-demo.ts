@@ -36,7 +36,7 @@ export function describeDemo(
   const isWithin = calibration.bands.filter(
     (band) => band.said >= band.interval[0] && band.said <= band.interval[1],
   );
-  const isSame = recount.fault === null && recount.differences.length === 0;
+  const isSame = summary.faults.length === 0 && recount.differences === 0;
   const parts = [
     bold(
       `${plural(summary.messages, 'message')} in ${summary.days} days, played in ${summary.seconds.toFixed(0)} s`,
@@ -113,7 +113,7 @@ export function describeDemo(
       ? green(
           `0 cells differ: after ${plural(summary.compactions, 'compaction')} the table is what ${plural(recount.messages, 'history', 'histories')} say, version ${summary.version}`,
         )
-      : red(`${plural(recount.differences.length, 'cell')} or more differ`),
+      : red([`${plural(recount.differences, 'cell')} or more differ`, ...summary.faults].join('; ')),
   );
   if (summary.troubles > 0) {
     parts.push('', red(`${plural(summary.troubles, 'warning')} in the functions' log, the first of them:`));

@@ -4,12 +4,13 @@ import type { HandlerDeps, LogLine } from '../../handlers/handler-deps.ts';
 import { createDeskLoader } from '../../handlers/load-desk.ts';
 import { loadTokenKey } from '../../handlers/load-token-key.ts';
 import { queueEvent } from '../../handlers/local-runner.ts';
+import { readMessage } from '../../handlers/read-message.ts';
 import { createRouteHandler } from '../../handlers/route.ts';
 import { type CompactionResult, compact } from '../../ledger/compaction.ts';
 import { changeQueue } from '../../ledger/queues.ts';
 import type { FitModel } from '../../ledger/rebuild.ts';
-import { type RecountResult, recount } from '../../ledger/recount.ts';
 import { fitTable } from '../../model/fit-table.ts';
+import { writeReport } from '../../report/write-report.ts';
 import { keys } from '../../store/keys.ts';
 import type { Store } from '../../store/store.ts';
 import { createDemoWorld } from './demo-clock.ts';
@@ -37,7 +38,12 @@ export interface DemoPlay {
   readonly lastCompaction: CompactionResult | null;
   /** Nights in which exponents were fitted. */
   readonly fits: number;
-  readonly recount: RecountResult;
+  /** Every history counted again and compared with the table. */
+  readonly recount: { readonly messages: number; readonly differences: number };
+  /** What is wrong with the table; there should be nothing. */
+  readonly faults: readonly string[];
+  /** Key of the report's page. */
+  readonly report: string;
   /** Warnings and errors that the functions logged; there should be none. */
   readonly troubles: readonly LogLine[];
   readonly version: number;
@@ -58,10 +64,11 @@ const hourMs = 3_600_000;
 const dayMs = 24 * hourMs;
 /** What arrived and what was said is worked off at these hours of the day (UTC); the last one is followed by the night's work. */
 const roundsAtHours = [12, 24] as const;
-/** Every so many nights a new base is made; each night, in earnest, but then no 120 nights pass in a minute. */
-const compactionDays = 3;
+/** A new base is made each night of the first week and then each Sunday; in earnest it is each night, but then no 120 nights
+ *  pass in a minute. */
+const hasCompaction = (day: number) => day < 7 || day % 7 === 6;
 /** Exponents move little between two nights: the demo fits them again only when there is this much more to learn from. */
-const fitGrowth = 1.4;
+const fitGrowth = 2;
 
 /** Plays a scenario on an empty store through the very functions that run in the cloud, fed with the events that they get
  *  there. The same seed plays the same demo. */
@@ -124,16 +131,19 @@ export async function playDemo(options: DemoOptions): Promise<DemoPlay> {
       await feed(confirm, said);
       onProgress(arrived, arrivals.length, `day ${day + 1} of ${days}, ${arrived} messages`);
     }
-    if (day % compactionDays !== 0 && day < days - 1) continue;
+    if (!hasCompaction(day) && day < days - 1) continue;
     const tonight = await deps.loadDesk();
     lastCompaction = await compact(world, tonight, createExtractor(tonight, tokenKey).schema, {
       fitModel: fit,
     });
     compactions += 1;
   }
-  onProgress(arrived, arrivals.length, 'counting everything again');
+  onProgress(arrived, arrivals.length, 'counting everything again, and writing the report');
   const desk = await deps.loadDesk();
-  const counted = await recount(world, desk, createExtractor(desk, tokenKey).schema);
+  const { data, page } = await writeReport(world, desk, createExtractor(desk, tokenKey), {
+    readMessage: async (key) => (await readMessage(world, key, () => true))?.message ?? null,
+    isRecounting: true,
+  });
   return {
     rows: book.rows(),
     days,
@@ -141,9 +151,11 @@ export async function playDemo(options: DemoOptions): Promise<DemoPlay> {
     compactions,
     lastCompaction,
     fits,
-    recount: counted,
+    recount: data.health.recount ?? { messages: 0, differences: 0 },
+    faults: data.health.faults,
+    report: page,
     troubles: book.troubles(),
-    version: counted.version,
+    version: data.modelVersion,
   };
 }
 

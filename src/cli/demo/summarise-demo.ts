@@ -44,6 +44,8 @@ export function summariseDemo(play: DemoPlay, scenario: DemoScenario) {
     fits: play.fits,
     lastCompaction: play.lastCompaction,
     recount: play.recount,
+    faults: play.faults,
+    report: play.report,
     version: play.version,
     troubles: play.troubles.length,
     firstTroubles: play.troubles.slice(0, 5),
