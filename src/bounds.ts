@@ -7,6 +7,14 @@ export const bounds = {
   /** Messages whose leave-one-out scores exponents are fitted to: a dozen exponents are known well from a few thousand, and
    *  more would only make compaction slower. */
   fitMessagesMax: 4000,
+  /** Size of a served table: at 8 queues 1.4 MB, which a cold function reads, checks and compiles in some 30 ms. */
+  tableBytesPerQueueMax: 175_000,
+  /** A desk of few queues may hold as much as one of this many. */
+  tableQueuesMin: 8,
+  /** Weeks for which a new token is held however little it tells yet. */
+  newTokenEpochs: 8,
+  /** Dropped tokens seen this often are listed in the table, lest a later entry take one for new; rarer ones are as good as new. */
+  droppedSeenMin: 5,
   /** Ratios that a scorer remembers for each reading: 8 MB; the tokens that make up most of all mail. */
   rememberedRatiosMax: 1_000_000,
 

@@ -2,11 +2,11 @@ import { bounds } from '../bounds.ts';
 import type { Features } from '../features/schema.ts';
 import type { Counts } from './counts.ts';
 import type { Block, Fit } from './fit.ts';
-import { minimiseNonNegative, type Point } from './minimise.ts';
-import { normalise } from './posterior-of.ts';
+import { fitQueues, fitShared, type LabelledScores, type Shrinkage } from './fit-exponents.ts';
+import { chooseHold, holdAll } from './prune.ts';
 import { blockScores } from './score.ts';
 import { createScorer, type Scorer } from './scorer.ts';
-import { serve, weightOf } from './served-table.ts';
+import { project, serve, weightOf } from './served-table.ts';
 
 /** A confirmed message that stands in the counts. */
 export interface FoldedMessage {
@@ -19,84 +19,84 @@ export interface FitOptions {
   readonly halfLifeDays: number | null;
 }
 
-/** Exponents that minimise the mean log loss of leave-one-out scores, shrunk towards the last fit as if that rested on a
- *  few messages. Every message of the sample must stand in the counts. Uses at most `fitMessagesMax` of them, evenly spread
- *  over the sample's order. Deterministic. Cost: O(messages · queues · (tokens + blocks²)). */
+/** What is known before: a few dozen messages' worth for the shared exponents, so that a desk's first fits stay near what
+ *  serves most desks; more for single queues, of which there are many. Any value from a half to twice these fits as well. */
+const shrinkage: Shrinkage = { shared: 10, queue: 20, bias: 10 };
+
+/** Exponents that minimise the log loss of leave-one-out scores, first shared by all queues and shrunk towards the last fit,
+ *  then by queue, shrunk towards the shared ones. Every message of the sample must stand in the counts; at most
+ *  `fitMessagesMax` are used, evenly spread over the sample's order. Deterministic.
+ *  Cost: O(messages · queues · (tokens + blocks²)). */
 export function fitTable(
   counts: Counts,
   sample: readonly FoldedMessage[],
   previousFit: Fit,
   options: FitOptions = { halfLifeDays: null },
 ): Fit {
-  const table = serve(counts, previousFit, options);
+  const { projected, referenceEpoch } = project(counts, options.halfLifeDays);
+  const hold = chooseHold(counts, projected, previousFit, referenceEpoch);
+  const table = serve(counts, { ...previousFit, hold: holdAll }, options);
   const queues = table.counts.columns.map((c) => c.queue);
-  const scorer = createScorer(table, [], queues, options.halfLifeDays);
-  const used = spread(sample, bounds.fitMessagesMax)
-    .map((message) => ({
-      features: message.features,
-      queue: queues.indexOf(message.queue),
-      weight: weightOf(message.epoch, table.referenceEpoch, options.halfLifeDays),
+  const own = spread(sample, bounds.fitMessagesMax)
+    .map(({ features, queue, epoch }) => ({
+      features,
+      queue: queues.indexOf(queue),
+      weight: weightOf(epoch, table.referenceEpoch, options.halfLifeDays),
     }))
     .filter((message) => message.queue >= 0 && message.weight > 0);
-  if (used.length === 0 || queues.length < 2) return previousFit;
-  const scores = used.map((own) => blockScores(scorer, own.features, own));
-  const truth = used.map((own) => own.queue);
-  const blocks = previousFit.blocks;
-  const last = Float64Array.from(blocks, (block) => block.exponent);
-  const { w } = minimiseNonNegative((at) => lossAt(at, scores, truth, scorer, last), last, 50);
+  if (own.length === 0 || queues.length < 2) return { ...previousFit, hold };
+  const scorer = createScorer(table, [], queues, options.halfLifeDays, {
+    isForFit: true,
+    seenMin: hold.sparesNew ? 0 : hold.seenMin,
+  });
+  const { active, scores } = leaveOneOut(scorer, own);
+  const before = Float64Array.from(active, (b) => previousFit.blocks[b].exponent);
+  const shared = fitShared(scores, before, shrinkage);
+  const byQueue = fitQueues(scores, shared, shrinkage);
   return {
     ...previousFit,
-    blocks: blocks.map((block, b): Block => ({ ...block, exponent: w[b] })),
-    logLoss: lossAt(w, scores, truth, scorer, w).value,
-    messages: used.length,
+    blocks: previousFit.blocks.map((block, b): Block => {
+      const at = active.indexOf(b);
+      if (at < 0) return { ...block, byQueue: {} };
+      const own = queues.map(
+        (queue, k) => [queue, rounded(byQueue.exponents[k * active.length + at])] as const,
+      );
+      const exponent = rounded(shared[at]);
+      return { ...block, exponent, byQueue: Object.fromEntries(own.filter(([, w]) => w !== exponent)) };
+    }),
+    bias: Object.fromEntries(queues.map((queue, k) => [queue, rounded(byQueue.bias[k])])),
+    hold,
+    logLoss: byQueue.logLoss,
+    messages: own.length,
   };
 }
 
-/** How much the last fit counts: (w - last)² of every exponent, as many nats in all, however many messages there are. */
-const shrinkage = 1;
-
-/** Mean log loss at exponents w, with its derivatives, plus shrinkage · Σ (w - last)² / messages. */
-function lossAt(
-  w: Float64Array,
-  scores: readonly Float64Array[],
-  truth: readonly number[],
+/** Leave-one-out scores of the blocks that score anything at all (`active`). */
+function leaveOneOut(
   scorer: Scorer,
-  last: Float64Array,
-): Point {
-  const blocks = w.length;
+  own: readonly { readonly features: Features; readonly queue: number; readonly weight: number }[],
+): { readonly active: readonly number[]; readonly scores: LabelledScores } {
   const queues = scorer.queues.length;
-  const gradient = new Float64Array(blocks);
-  const hessian = new Float64Array(blocks * blocks);
-  const mean = new Float64Array(blocks);
-  let value = 0;
-  scores.forEach((x, i) => {
-    const sum = new Float64Array(queues);
-    for (let b = 0; b < blocks; b++) for (let k = 0; k < queues; k++) sum[k] += w[b] * x[b * queues + k];
-    const logs = normalise(sum);
-    value -= logs[truth[i]];
-    mean.fill(0);
+  const all = own.map((message) => Float32Array.from(blockScores(scorer, message.features, message)));
+  const active = [...scorer.fit.blocks.keys()].filter((b) =>
+    all.some((x) => x.subarray(b * queues, (b + 1) * queues).some((score) => score !== 0)),
+  );
+  const blocks = active.length;
+  const x = new Float32Array(own.length * queues * blocks);
+  all.forEach((score, i) => {
     for (let k = 0; k < queues; k++) {
-      const p = Math.exp(logs[k]);
-      if (p < 1e-9) continue;
-      for (let b = 0; b < blocks; b++) {
-        const px = p * x[b * queues + k];
-        mean[b] += px;
-        for (let c = 0; c <= b; c++) hessian[b * blocks + c] += px * x[c * queues + k];
-      }
-    }
-    for (let b = 0; b < blocks; b++) {
-      gradient[b] += mean[b] - x[b * queues + truth[i]];
-      for (let c = 0; c <= b; c++) hessian[b * blocks + c] -= mean[b] * mean[c];
+      for (let b = 0; b < blocks; b++) x[(i * queues + k) * blocks + b] = score[active[b] * queues + k];
     }
   });
-  for (let b = 0; b < blocks; b++) {
-    value += shrinkage * (w[b] - last[b]) ** 2;
-    gradient[b] += 2 * shrinkage * (w[b] - last[b]);
-    hessian[b * blocks + b] += 2 * shrinkage;
-    for (let c = 0; c < b; c++) hessian[c * blocks + b] = hessian[b * blocks + c];
-  }
-  const n = scores.length;
-  return { value: value / n, gradient: gradient.map((g) => g / n), hessian: hessian.map((h) => h / n) };
+  return {
+    active,
+    scores: { messages: own.length, queues, blocks, x, truth: Uint32Array.from(own, (m) => m.queue) },
+  };
+}
+
+/** Four decimals move no posterior that is written, and keep the table small. */
+function rounded(exponent: number): number {
+  return Math.round(exponent * 1e4) / 1e4;
 }
 
 /** At most `max` items, evenly spaced and in order. */

@@ -39,6 +39,16 @@ export interface Reading {
   readonly pooledRate: 'fixed' | 'unknown';
 }
 
+/** Which tokens a served table holds. */
+export interface Hold {
+  /** Confirmed messages that hold the token, at least. */
+  readonly seenMin: number;
+  /** Posterior probability that its rate depends on the queue, at least. */
+  readonly relevanceMin: number;
+  /** A token that fails stays while it is new: seen within the last `newTokenEpochs`. */
+  readonly sparesNew: boolean;
+}
+
 /** Everything fitted from the counts: small, kept beside them in the served table. */
 export interface Fit {
   readonly version: 1;
@@ -49,6 +59,8 @@ export interface Fit {
   readonly alpha: number;
   /** Pseudo-count of each value, by slot id. */
   readonly beta: Readonly<Record<string, number>>;
+  /** Chosen for the table's size; the exponents were fitted without the tokens that fail it. */
+  readonly hold: Hold;
   /** Mean leave-one-out log loss of the fitted sample, nats; null where nothing was fitted. */
   readonly logLoss: number | null;
   /** Messages in that sample. */
@@ -56,8 +68,17 @@ export interface Fit {
 }
 
 /** Concentrations from a prior that a few draws overrule to one that thousands do not: the evidence of each token's own
- *  counts chooses among them, so that none is tuned. Half a decade finer changed log loss by less than 0.01. */
+ *  counts chooses among them, so that none is tuned. A grid twice as fine changed log loss by less than 0.01. */
 const concentrations = { tokens: [3, 30, 300, 3000], messages: [0.3, 3, 30, 300] } as const;
+
+/** Exponents between those fitted on short forms and on long mail:
+ *  [tokens for, tokens against, messages for, messages against, messages absent]. */
+const regionDefaults: Readonly<Record<string, readonly number[]>> = {
+  subject: [0.6, 0.15, 0.4, 0.1, 0],
+  word: [0.6, 0.7, 0.35, 0.4, 0],
+  pair: [0.3, 0.15, 0.15, 0.15, 0],
+  gram: [0.6, 0.5, 0.25, 0.3, 0],
+};
 
 /** What is used until there is enough to fit: for every region both readings, each by its parts. */
 export function defaultFit(schema: Schema): Fit {
@@ -65,19 +86,25 @@ export function defaultFit(schema: Schema): Fit {
   return {
     version: 1,
     blocks: [
-      { kind: 'prior', exponent: 1, byQueue: {} },
+      { kind: 'prior', exponent: 0.5, byQueue: {} },
       ...groups.map((group): SlotsBlock => ({ kind: 'slots', group, exponent: 0.5, byQueue: {} })),
-      ...schema.regions.flatMap(({ id }) => [
-        tokens(id, 'tokens', 'for', 0.3),
-        tokens(id, 'tokens', 'against', 0.3),
-        tokens(id, 'messages', 'for', 0.3),
-        tokens(id, 'messages', 'against', 0.1),
-        tokens(id, 'messages', 'absent', 0.1),
-      ]),
+      ...schema.regions.flatMap(({ id }) => {
+        const [tokensFor, tokensAgainst, messagesFor, messagesAgainst, absent] = regionDefaults[id] ?? [
+          0.5, 0.4, 0.3, 0.25, 0,
+        ];
+        return [
+          tokens(id, 'tokens', 'for', tokensFor),
+          tokens(id, 'tokens', 'against', tokensAgainst),
+          tokens(id, 'messages', 'for', messagesFor),
+          tokens(id, 'messages', 'against', messagesAgainst),
+          tokens(id, 'messages', 'absent', absent),
+        ];
+      }),
     ],
     bias: {},
     alpha: 1,
     beta: Object.fromEntries(schema.slots.map((slot) => [slot.id, 1])),
+    hold: { seenMin: 0, relevanceMin: 0, sparesNew: true },
     logLoss: null,
     messages: 0,
   };
@@ -91,4 +118,14 @@ function tokens(
 ): TokensBlock {
   const reading: Reading = { region, draws, concentrations: concentrations[draws], pooledRate: 'fixed' };
   return { kind: 'tokens', ...reading, part, exponent, byQueue: {} };
+}
+
+/** A block's exponent for a queue. */
+export function exponentOf(block: Block, queue: string): number {
+  return block.byQueue[queue] ?? block.exponent;
+}
+
+/** Whether a block moves no queue's posterior. */
+export function isIdle(block: Block): boolean {
+  return block.exponent === 0 && Object.values(block.byQueue).every((exponent) => exponent === 0);
 }

@@ -1,4 +1,4 @@
-/** A twice differentiable convex function of w at one point. */
+/** A twice differentiable convex function at one point. */
 export interface Point {
   readonly value: number;
   /** [parameters]. */
@@ -7,37 +7,40 @@ export interface Point {
   readonly hessian: Float64Array;
 }
 
-/** The least value of a convex function over w ≥ 0: Newton's method on the coordinates that are free (not held at zero by
- *  the gradient), the step shortened until the value falls. Deterministic. A dozen parameters, so that a Hessian costs
- *  little and a handful of steps suffice.
+/** Least value of a convex function over w ≥ lower: Newton's method on the coordinates that are free (not held at their bound
+ *  by the gradient), the step shortened until the value falls. Deterministic. For a few dozen parameters, whose Hessian costs
+ *  little, so that a handful of steps suffice.
  *  Source: Bertsekas, Projected Newton methods for optimization problems with simple constraints, SIAM J. Control 20 (1982). */
-export function minimiseNonNegative(
+export function minimise(
   evaluate: (w: Float64Array) => Point,
   start: Float64Array,
+  lower: Float64Array,
   stepsMax: number,
 ): { readonly w: Float64Array; readonly value: number; readonly steps: number } {
-  let w: Float64Array = start.map((x) => Math.max(0, x));
+  let w: Float64Array = start.map((x, i) => Math.max(lower[i], x));
   let point = evaluate(w);
   for (let steps = 0; ; steps++) {
-    const free = [...w.keys()].filter((i) => w[i] > 0 || point.gradient[i] < 0);
+    const free = [...w.keys()].filter((i) => w[i] > lower[i] || point.gradient[i] < 0);
     const slope = Math.max(0, ...free.map((i) => Math.abs(point.gradient[i])));
-    if (slope < 1e-7 || steps === stepsMax) return { w, value: point.value, steps };
+    if (slope < 1e-6 * (1 + Math.abs(point.value)) || steps === stepsMax)
+      return { w, value: point.value, steps };
     const direction = newtonDirection(point, free, w.length);
     let next: { w: Float64Array; point: Point } | null = null;
     for (let scale = 1; scale > 1e-6 && next === null; scale /= 2) {
-      const candidate = w.map((x, i) => Math.max(0, x + scale * direction[i]));
+      const candidate = w.map((x, i) => Math.max(lower[i], x + scale * direction[i]));
       const there = evaluate(candidate);
       // Armijo's rule: at least a small part of the fall that the slope promises.
       const promised = candidate.reduce((sum, x, i) => sum + point.gradient[i] * (x - w[i]), 0);
-      if (there.value <= point.value + 1e-4 * promised && there.value < point.value)
+      if (there.value < point.value && there.value <= point.value + 1e-4 * promised) {
         next = { w: candidate, point: there };
+      }
     }
     if (next === null) return { w, value: point.value, steps };
     ({ w, point } = next);
   }
 }
 
-/** -H⁻¹g on the free coordinates, 0 elsewhere, by Cholesky; a ridge keeps flat directions finite. */
+/** -H⁻¹g on the free coordinates, 0 elsewhere, by Cholesky's factors; a ridge keeps flat directions finite. */
 function newtonDirection({ gradient, hessian }: Point, free: readonly number[], size: number): Float64Array {
   const n = free.length;
   const lower = new Float64Array(n * n);

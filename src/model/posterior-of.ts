@@ -1,6 +1,6 @@
 import type { Features } from '../features/schema.ts';
 import { tokenHex } from '../features/schema.ts';
-import type { Block } from './fit.ts';
+import { type Block, exponentOf } from './fit.ts';
 import type { EvidencePart, Posterior } from './posterior.ts';
 import {
   blockScores,
@@ -35,10 +35,6 @@ export function combine(scorer: Scorer, scores: Float64Array): Float64Array {
     for (let k = 0; k < queues; k++) sum[k] += exponentOf(block, scorer.queues[k]) * scores[b * queues + k];
   });
   return sum;
-}
-
-export function exponentOf(block: Block, queue: string): number {
-  return block.byQueue[queue] ?? block.exponent;
 }
 
 /** Subtracts log Σ exp, so that exp sums to 1; the largest is taken out first, so that nothing overflows. */

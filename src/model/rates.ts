@@ -1,4 +1,5 @@
 import type { Reading } from './fit.ts';
+import type { Hits } from './hits.ts';
 import { logBetaBinomial, logGammaDrop, logHits } from './special.ts';
 
 /** What a reading draws from: E, by queue and in all, and the tokens held. With what follows from them alone. */
@@ -41,14 +42,6 @@ export function exposureWithout(exposure: Exposure, k: number, draws: number, to
 export function pooledRate({ reading, drawsSum, vocabulary }: Exposure, seen: number): number {
   const draws = reading.draws === 'tokens' ? drawsSum + 0.5 * vocabulary : drawsSum + 1;
   return Math.min((seen + 0.5) / draws, 1 - 1e-9);
-}
-
-/** One token's non-zero counts: queue[i] holds count[i], i < length; `seen` is their sum D. */
-export interface Hits {
-  readonly queue: Uint32Array;
-  readonly count: Float64Array;
-  length: number;
-  seen: number;
 }
 
 /** Posterior weights of the models of one token's rates, given its counts: for each concentration s_j that the rate depends

@@ -1,7 +1,8 @@
 import type { Features } from '../features/schema.ts';
 import type { TokensBlock } from './fit.ts';
 import { schemaMismatch } from './fold.ts';
-import { type Own, rowOf, type Scorer, type ScorerReading, type ScorerRegion } from './scorer.ts';
+import type { Own } from './hits.ts';
+import { rowOf, type Scorer, type ScorerReading, type ScorerRegion } from './scorer.ts';
 import { createView, type TokenRatios, tokenRatios, type View, viewLeaving } from './view.ts';
 
 /** Each block's score, before exponents: nats; [blocks * queues], block-major. With `own` the message's contribution is

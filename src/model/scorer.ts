@@ -1,7 +1,8 @@
 import type { Features, Schema } from '../features/schema.ts';
 import type { Counts, Entry, RegionCounts } from './counts.ts';
-import type { Block, Fit, Reading, TokensBlock } from './fit.ts';
+import { type Block, type Fit, isIdle, type Reading, type TokensBlock } from './fit.ts';
 import { addCounts, deltaOf } from './fold.ts';
+import { pickTokens } from './prune.ts';
 import { exposureOf } from './rates.ts';
 import { type ServedTable, weightOf } from './served-table.ts';
 import { indexOfToken } from './sparse.ts';
@@ -28,6 +29,8 @@ export interface ScorerRegion {
   readonly pruned: Float64Array;
   /** Table column to queue, -1 for a queue that is not open; [columns]. */
   readonly queueOf: Int32Array;
+  /** Tokens held by fewer messages score nothing. */
+  readonly seenMin: number;
 }
 
 export interface ScorerReading {
@@ -40,12 +43,11 @@ export interface ScorerReading {
   readonly leaving: Map<string, View>;
 }
 
-/** A folded message that is scored as if it had not been folded. */
-export interface Own {
-  /** Index of the queue under which it stands. */
-  readonly queue: number;
-  /** Its weight in that queue's counts. */
-  readonly weight: number;
+export interface ScorerOptions {
+  /** Scores blocks with an exponent of 0 too. */
+  readonly isForFit?: boolean;
+  /** Tokens held by fewer messages are scored as if the table did not hold them. */
+  readonly seenMin?: number;
 }
 
 /** Compiles a served table with the entries that came after it. Queues without a column have counts of zero; columns of
@@ -55,6 +57,7 @@ export function createScorer(
   overlay: readonly Entry[],
   queues: readonly string[],
   halfLifeDays: number | null,
+  { isForFit = false, seenMin = 0 }: ScorerOptions = {},
 ): Scorer {
   const counts = overlayEntries(table, overlay, halfLifeDays);
   const { schema } = counts;
@@ -74,11 +77,16 @@ export function createScorer(
     }
     return out;
   });
-  const regions = counts.regions.map((region, g) => ({ counts: region, pruned: table.pruned[g], queueOf }));
+  const regions = counts.regions.map((region, g) => ({
+    counts: region,
+    pruned: table.pruned[g],
+    queueOf,
+    seenMin,
+  }));
   const readings = schema.regions.map(({ id }, g) => {
     const draws = { tokens: byQueue(counts.regions[g].total), messages };
     const added = counts.regions[g].tokens.length - table.counts.regions[g].tokens.length;
-    return readingsOf(table.fit.blocks, id).map(({ reading, blocks }) => {
+    return readingsOf(table.fit.blocks, id, isForFit).map(({ reading, blocks }) => {
       const exposure = exposureOf(reading, draws[reading.draws], table.vocabulary[g] + added);
       const countsAbsent =
         reading.draws === 'messages' && blocks.some((b) => b.part === 'all' || b.part === 'absent');
@@ -116,34 +124,17 @@ function withoutTokens(region: RegionCounts, dropped: Float64Array): RegionCount
   return pickTokens(region, kept);
 }
 
-/** The rows at `kept`, ascending; totals stay. */
-export function pickTokens(region: RegionCounts, kept: ArrayLike<number>): RegionCounts {
-  const tokens = new Float64Array(kept.length);
-  const start = new Uint32Array(kept.length + 1);
-  for (let n = 0; n < kept.length; n++) {
-    tokens[n] = region.tokens[kept[n]];
-    start[n + 1] = start[n] + region.start[kept[n] + 1] - region.start[kept[n]];
-  }
-  const column = new Uint32Array(start[kept.length]);
-  const count = new Float64Array(start[kept.length]);
-  for (let n = 0; n < kept.length; n++) {
-    const [from, to] = [region.start[kept[n]], region.start[kept[n] + 1]];
-    column.set(region.column.subarray(from, to), start[n]);
-    count.set(region.count.subarray(from, to), start[n]);
-  }
-  return { tokens, start, column, count, total: region.total };
-}
-
 function readingsOf(
   blocks: readonly Block[],
   region: string,
+  isForFit: boolean,
 ): { reading: Reading; blocks: ScorerReading['blocks'] }[] {
   const found = new Map<
     string,
     { reading: Reading; blocks: { index: number; part: TokensBlock['part'] }[] }
   >();
   blocks.forEach((block, index) => {
-    if (block.kind !== 'tokens' || block.region !== region) return;
+    if (block.kind !== 'tokens' || block.region !== region || (isIdle(block) && !isForFit)) return;
     const key = `${block.draws} ${block.pooledRate} ${block.concentrations.join()}`;
     const same = found.get(key);
     if (same) same.blocks.push({ index, part: block.part });

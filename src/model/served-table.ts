@@ -2,6 +2,7 @@ import type { Schema } from '../features/schema.ts';
 import type { Column, Counts } from './counts.ts';
 import { defaultFit, type Fit } from './fit.ts';
 import { emptyCounts, remapCounts } from './fold.ts';
+import { applyHold } from './prune.ts';
 
 /** What routers load: the counts by queue, aged to the newest epoch, with what was fitted from them. */
 export interface ServedTable {
@@ -36,15 +37,16 @@ export function emptyTable(schema: Schema): ServedTable {
   return serve(emptyCounts(schema), defaultFit(schema), { halfLifeDays: null });
 }
 
-/** The table that routers load, made from the counts of all epochs. O(cells). */
-export function serve(counts: Counts, fit: Fit, options: ServeOptions): ServedTable {
-  const { projected, referenceEpoch } = project(counts, options.halfLifeDays);
+/** The table that routers load, made from the counts of all epochs, with the tokens that `fit.hold` holds. O(cells). */
+export function serve(counts: Counts, fit: Fit, { halfLifeDays }: ServeOptions): ServedTable {
+  const { projected, referenceEpoch } = project(counts, halfLifeDays);
+  const { held, dropped } = applyHold(counts, projected, fit, referenceEpoch);
   return {
-    counts: projected,
+    counts: held,
     referenceEpoch,
-    halfLifeDays: options.halfLifeDays,
+    halfLifeDays,
     vocabulary: projected.regions.map((r) => r.tokens.length),
-    pruned: projected.regions.map(() => new Float64Array(0)),
+    pruned: dropped,
     fit,
   };
 }

@@ -1,6 +1,7 @@
 import { bounds } from '../bounds.ts';
-import { type Exposure, exposureWithout, type Hits, pooledRate, rateRatios } from './rates.ts';
-import type { Own, ScorerRegion } from './scorer.ts';
+import { createHits, type Hits, kindOf, type Own, readHits } from './hits.ts';
+import { type Exposure, exposureWithout, pooledRate, rateRatios } from './rates.ts';
+import type { ScorerRegion } from './scorer.ts';
 
 /** One reading of a region as a message sees it: the whole table, or the table without that message. */
 export interface View {
@@ -47,7 +48,7 @@ export function viewLeaving(region: ScorerRegion, exposure: Exposure, rows: Int3
   let only = 0;
   for (const row of rows) {
     if (row < 0) continue;
-    readHits(region, row, own, hits);
+    readHits(region.counts, region.queueOf, row, own, hits);
     if (hits.length === 0) only++;
   }
   const left = exposureWithout(exposure, own.queue, own.weight * rows.length, only);
@@ -63,37 +64,17 @@ export function tokenRatios(region: ScorerRegion, view: View, row: number): Toke
   let absent: Float64Array | null = null;
   if (view.absent !== null) {
     // As summed in view.absent: with the message's own count, which the sum over all tokens could not know to leave out.
-    readHits(region, row, null, hits);
-    absent = hits.length === 0 ? new Float64Array(queues).fill(1) : absentFactors(exposure, hits);
+    readHits(region.counts, region.queueOf, row, null, hits);
+    absent = !isHeld(region, hits) ? new Float64Array(queues).fill(1) : absentFactors(exposure, hits);
   }
-  readHits(region, row, own, hits);
+  readHits(region.counts, region.queueOf, row, own, hits);
   const present = new Float64Array(queues).fill(1);
-  if (hits.length > 0) rateRatios(exposure, hits, present);
+  if (isHeld(region, hits)) rateRatios(exposure, hits, present);
   const ratios = { present, absent };
   if (view.remembered !== null && view.remembered.size * queues < bounds.rememberedRatiosMax) {
     view.remembered.set(row, ratios);
   }
   return ratios;
-}
-
-function createHits(queues: number): Hits {
-  return { queue: new Uint32Array(queues), count: new Float64Array(queues), length: 0, seen: 0 };
-}
-
-/** The counts of a row by queue, those of the message left out. */
-function readHits(region: ScorerRegion, row: number, own: Own | null, hits: Hits): void {
-  const { start, column, count } = region.counts;
-  hits.length = 0;
-  hits.seen = 0;
-  for (let p = start[row]; p < start[row + 1]; p++) {
-    const k = region.queueOf[column[p]];
-    if (k < 0) continue;
-    const left = own !== null && k === own.queue ? count[p] - own.weight : count[p];
-    if (left <= 0) continue;
-    hits.queue[hits.length] = k;
-    hits.count[hits.length++] = left;
-    hits.seen += left;
-  }
 }
 
 /** Σ_t log((1 - p_kt)/(1 - m_t)) over all tokens of a region. Tokens seen once or twice, most of all, fall into few kinds
@@ -106,8 +87,8 @@ export function absentSum(region: ScorerRegion, exposure: Exposure): Float64Arra
   const sum = new Float64Array(queues);
   const kinds = new Map<number, { readonly factors: Float64Array; times: number }>();
   for (let row = 0; row < region.counts.tokens.length; row++) {
-    readHits(region, row, null, hits);
-    if (hits.length === 0) continue;
+    readHits(region.counts, region.queueOf, row, null, hits);
+    if (!isHeld(region, hits)) continue;
     const kind = kindOf(hits, queues);
     const same = kinds.get(kind);
     if (same) {
@@ -148,10 +129,6 @@ function absentFactors(exposure: Exposure, hits: Hits): Float64Array {
   return factors;
 }
 
-/** Which queues hold the one or two sightings of a token; -1 for any other token. */
-function kindOf({ seen, length, queue, count }: Hits, queues: number): number {
-  if (seen === 1 && length === 1) return queue[0];
-  if (seen !== 2 || (length === 2 && count[0] !== 1)) return -1;
-  const [a, b] = length === 1 ? [queue[0], queue[0]] : [queue[0], queue[1]];
-  return queues * (1 + Math.min(a, b)) + Math.max(a, b);
+function isHeld(region: ScorerRegion, hits: Hits): boolean {
+  return hits.length > 0 && hits.seen >= region.seenMin;
 }
