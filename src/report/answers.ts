@@ -3,6 +3,11 @@ import { ago, count, inHundred, listed, minutes, percent, plural, shortDay } fro
 
 /** Each view's answer in words: what the picture shows, and what to make of it. */
 
+/** In sentences titles stand in quotes: many hold an “and”. */
+function quoted(data: ReportData, queue: string): string {
+  return `“${titleOf(data, queue)}”`;
+}
+
 export function titleOf(data: ReportData, queue: string): string {
   return data.queues.find((each) => each.id === queue)?.title ?? queue;
 }
@@ -78,7 +83,7 @@ export function correctionsAnswer(data: ReportData): string {
   const share = (first.routed + first.held) / Math.max(1, routedWrong + heldWrong);
   return (
     `People moved ${plural(routedWrong, 'routed message')} to another queue, and chose another than the likeliest for ${plural(heldWrong, 'held one')}.` +
-    ` Most often from ${titleOf(data, first.from)} to ${titleOf(data, first.to)} (${inHundred(share)} of all).` +
+    ` Most often from ${quoted(data, first.from)} to ${quoted(data, first.to)} (${inHundred(share)} of all).` +
     (revised > 0 ? ` For ${plural(revised, 'message')} people changed what they had confirmed before.` : '')
   );
 }
@@ -107,7 +112,7 @@ function heldShare(steps: ReportData['volume']['steps']): number | null {
 export function driftAnswer(data: ReportData): string {
   if (data.drift.length === 0)
     return 'In no queue do the words of the last two weeks differ from before by more than chance.';
-  const names = data.drift.map((each) => titleOf(data, each.queue));
+  const names = data.drift.map((each) => quoted(data, each.queue));
   return `Since ${shortDay(data.drift[0]!.since)} people write in other words to ${listed(names)}. It learns them by itself; somebody may want to know why.`;
 }
 
@@ -170,7 +175,7 @@ export function tasksOf(data: ReportData): Task[] {
     },
     data.drift.length > 0 && {
       anchor: 'drift',
-      text: `Ask ${titleOf(data, data.drift[0]!.queue)} what is new there.`,
+      text: `Ask ${quoted(data, data.drift[0]!.queue)} what is new there.`,
       command: '',
     },
     data.looked.confirmed < 100 && {

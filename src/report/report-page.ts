@@ -132,7 +132,7 @@ function corrections(data: ReportData): Markup {
 <ul class="bars">${pairs.map(
           (
             pair,
-          ) => html`<li><span class="number">${pair.routed} + ${pair.held}</span>${answers.titleOf(data, pair.from)} → ${answers.titleOf(data, pair.to)}
+          ) => html`<li><span class="number">${pair.routed} routed, ${pair.held} held</span>${answers.titleOf(data, pair.from)} → ${answers.titleOf(data, pair.to)}
 <svg aria-hidden="true">${pair.routed > 0 && bar(pair.routed / most)}${pair.held > 0 && bar(pair.held / most, 'held', pair.routed / most)}</svg></li>`,
         )}</ul>${rest > 0 && html`<p class="quiet">${plural(rest, 'further pair')}, all rarer.</p>`}`,
   );
@@ -181,6 +181,10 @@ function strength(decibans: number): string {
   return decibans >= 30 ? 'certain' : decibans >= 20 ? 'very likely' : 'likely';
 }
 
+function surely(decibans: number): string {
+  return decibans >= 60 ? 'almost certainly' : decibans >= 40 ? 'very likely' : 'likely';
+}
+
 function secondLook(data: ReportData): Markup {
   return view(
     'second-look',
@@ -208,7 +212,7 @@ function newQueues(data: ReportData): Markup {
       : data.newQueues.map(
           (group, i) => html`<h3>Group ${i + 1}: ${plural(group.messages.length, 'message')}</h3>
 <p>${group.words.length > 0 ? html`Typical words: <span class="words">${group.words.map((word) => plainLine(word, 40)).join(', ')}</span>.` : 'None of these messages is left to read.'}
-A queue of their own is ${strength(group.decibans)} the better account of them.</p>
+A queue of their own is ${surely(group.decibans)} the better account of them.</p>
 <details><summary>The messages</summary><ul>${group.messages.map((message) => html`<li><code>${plainLine(message, 80)}</code></li>`)}</ul></details>`,
         ),
   );
@@ -225,7 +229,7 @@ function health(data: ReportData): Markup {
 <dt>Size</dt><dd>${size(state.tableBytes)}</dd><dt>Compacted</dt><dd>${state.compactedAt === null ? 'not yet' : day(state.compactedAt)}</dd>
 <dt>Batches since</dt><dd>${count(state.segments)}</dd>
 <dt>Tuned on</dt><dd>${state.fit.messages === 0 ? 'nothing yet: it works with what it started with' : plural(state.fit.messages, 'message')}</dd></dl>
-<h3>What counts how much</h3><ul class="bars">${state.weights
+<h3>What counts how much</h3><p class="quiet">Tuned on what was confirmed: 1 is full weight, 0 none.</p><ul class="bars">${state.weights
       .filter((each) => each.exponent > 0.005)
       .map(
         (each) =>

@@ -55,12 +55,13 @@ svg text.dim { fill: var(--quiet); }
 .edge { fill: none; stroke: var(--held); stroke-width: 1.5; }
 table { border-collapse: collapse; width: 100%; font-variant-numeric: tabular-nums; }
 caption { text-align: left; color: var(--quiet); font-size: .9rem; padding-bottom: .35rem; }
-th, td { text-align: left; vertical-align: top; padding: .3rem .75rem .3rem 0; border-top: 1px solid var(--line); overflow-wrap: anywhere; }
+th, td { text-align: left; vertical-align: top; padding: .3rem .75rem .3rem 0; border-top: 1px solid var(--line); overflow-wrap: break-word; }
 th { font-weight: 600; font-size: .9rem; }
-td.n, th.n { text-align: right; white-space: nowrap; overflow-wrap: normal; }
+td.n, th.n { text-align: right; }
+td.n { white-space: nowrap; }
 td.pic { width: 45%; padding-right: 1rem; }
 td.pic svg { display: block; width: 100%; height: 1.5rem; overflow: visible; }
-td.name { min-width: 6.5rem; }
+th.name { white-space: nowrap; }
 .said { fill: var(--band); stroke: var(--quiet); stroke-width: 1; }
 .whisker { stroke: var(--routed); stroke-width: 2; }
 .broken .whisker { stroke: var(--held); } .broken .dot { fill: var(--held); }
@@ -75,10 +76,10 @@ td.name { min-width: 6.5rem; }
 .unsound { border-left: 4px solid var(--held); padding-left: .75rem; }
 details { margin: .5rem 0; }
 summary { cursor: pointer; color: var(--quiet); padding: .25rem 0; }
-.wide { overflow-x: auto; }
+.wide { overflow-x: auto; } .wide table { min-width: 38rem; }
 dl { display: grid; grid-template-columns: max-content 1fr; gap: .2rem 1rem; margin: 0 0 .75rem; }
 dt { color: var(--quiet); } dd { margin: 0; }
-@media (max-width: 30rem) { dl { grid-template-columns: 1fr; gap: 0; } dd { margin-bottom: .5rem; } td.pic { width: 38%; } }
+@media (max-width: 30rem) { dl { grid-template-columns: 1fr; gap: 0; } dd { margin-bottom: .5rem; } td.pic { width: 30%; padding-right: .75rem; } th, td { padding-right: .5rem; } }
 @media print {
   :root { --paper: #fff; --ink: #000; --quiet: #444; --line: #bbb; --band: #eee; --routed: #0072b2; --held: #d55e00; --guarded: #007a59; }
   body { padding: 0; font-size: 10pt; }

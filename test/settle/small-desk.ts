@@ -3,8 +3,12 @@ import type { HandlerDeps, LogLine } from '../../src/handlers/handler-deps.ts';
 import { createDeskLoader } from '../../src/handlers/load-desk.ts';
 import { createLocalRunner } from '../../src/handlers/local-runner.ts';
 import { readMessage } from '../../src/handlers/read-message.ts';
-import { loadModel } from '../../src/ledger/load-model.ts';
+import { type LoadedModel, loadModel } from '../../src/ledger/load-model.ts';
 import type { World } from '../../src/ledger/world.ts';
+import { parseForm } from '../../src/message/form.ts';
+import { parseMail } from '../../src/message/mail.ts';
+import type { Message } from '../../src/message/message.ts';
+import type { Bench } from '../../src/settle/likelihood.ts';
 import { keys } from '../../src/store/keys.ts';
 import { createMemoryStore } from '../../src/store/memory.ts';
 import type { Store } from '../../src/store/store.ts';
@@ -20,16 +24,20 @@ export interface SmallDesk {
   readonly messages: readonly ScenarioMessage[];
   readonly logged: readonly LogLine[];
   setNow(ms: number): void;
-  openBench(): Promise<Awaited<ReturnType<typeof openBench>>>;
+  openBench: ReturnType<typeof createBenchOpener>;
   readMessage(key: string): ReturnType<typeof readParsed>;
+  /** A message of the scenario, parsed. */
+  read(message: ScenarioMessage): Promise<Message>;
 }
 
 export const smallTokenKey = new Uint8Array(16).fill(5);
 
-/** A desk that learned the first `learned` messages of a small scenario and then routed the rest, which nobody confirmed. */
+/** A desk that learned the first `learned` messages of a small scenario and then routed those up to `routed`, which nobody
+ *  confirmed; the rest never came in. */
 export async function playSmallDesk(
   learned: number,
   all: number,
+  routed = all,
   store: Store = createMemoryStore(),
 ): Promise<SmallDesk> {
   const { messages } = generateScenario(4, { messages: all });
@@ -67,7 +75,7 @@ export async function playSmallDesk(
   await confirm(messages.slice(0, half));
   await feed(messages.slice(half, learned));
   await confirm(messages.slice(half, learned));
-  await feed(messages.slice(learned));
+  await feed(messages.slice(learned, routed));
   return {
     world,
     store,
@@ -78,16 +86,21 @@ export async function playSmallDesk(
     setNow: (ms) => {
       nowMs = ms;
     },
-    openBench: () => openBench(deps),
+    openBench: createBenchOpener(deps),
     readMessage: (key) => readParsed(world, key),
+    read: async ({ bytes, contentType }) =>
+      contentType === 'application/json' ? parseForm(bytes) : parseMail(bytes, { nowMs: world.nowMs }),
   };
 }
 
-async function openBench({ world, loadDesk, tokenKey }: HandlerDeps) {
-  const file = await loadDesk();
-  const extractor = createExtractor(file, tokenKey);
-  const model = await loadModel(world, file, extractor.schema, null);
-  return { desk: model.desk, extractor, model };
+function createBenchOpener({ world, loadDesk, tokenKey }: HandlerDeps) {
+  let cached: LoadedModel | null = null;
+  return async (): Promise<Bench> => {
+    const file = await loadDesk();
+    const extractor = createExtractor(file, tokenKey);
+    cached = await loadModel(world, file, extractor.schema, cached);
+    return { desk: cached.desk, extractor, model: cached };
+  };
 }
 
 async function readParsed(world: World, key: string) {
