@@ -1,3 +1,4 @@
+import { bounds } from '../bounds.ts';
 import { choiceOf, isUnder } from '../desk/comparison.ts';
 import type { ClosedField, Desk, Guard } from '../desk/desk.ts';
 import type { Address, Form, Message } from '../message/message.ts';
@@ -44,6 +45,9 @@ interface Phrases {
     string,
     readonly { readonly words: readonly string[]; readonly guard: number }[]
   >;
+  /** Finds any of these first words; null when they are too many for one expression. A text without any of them, and most
+   *  are, need not be cut into words. */
+  readonly firstWords: RegExp | null;
   /** Phrases of scripts without spaces: where their words are cut depends on the text around, so they are looked for
    *  as they stand. */
   readonly asTheyStand: readonly { readonly folded: string; readonly guard: number }[];
@@ -69,13 +73,19 @@ function phrasesOf(desk: Desk): Phrases {
       byFirstWord.set(first, [...(byFirstWord.get(first) ?? []), { words, guard }]);
     }
   });
-  const phrases = { byFirstWord, asTheyStand };
+  const phrases = { byFirstWord, firstWords: expressionOf([...byFirstWord.keys()]), asTheyStand };
   prepared.set(desk, phrases);
   return phrases;
 }
 
+/** Words hold letters, marks and digits only: nothing in them means anything to an expression. */
+function expressionOf(words: readonly string[]): RegExp | null {
+  const isShort = words.length > 0 && words.length <= bounds.firstWordsMax;
+  return isShort ? new RegExp(`(?<![\\p{L}\\p{M}\\p{N}])(?:${words.join('|')})`, 'u') : null;
+}
+
 /** Index of the first guard whose phrase is in one of the texts; Infinity when there is none. */
-function phraseGuard(texts: readonly string[], { byFirstWord, asTheyStand }: Phrases): number {
+function phraseGuard(texts: readonly string[], { byFirstWord, firstWords, asTheyStand }: Phrases): number {
   let first = Number.POSITIVE_INFINITY;
   if (byFirstWord.size === 0 && asTheyStand.length === 0) return first;
   for (const text of texts) {
@@ -83,6 +93,7 @@ function phraseGuard(texts: readonly string[], { byFirstWord, asTheyStand }: Phr
     for (const phrase of asTheyStand) {
       if (phrase.guard < first && folded.includes(phrase.folded)) first = phrase.guard;
     }
+    if (firstWords !== null && !firstWords.test(folded)) continue;
     const words = wordsOf(folded);
     words.forEach((word, at) => {
       for (const phrase of byFirstWord.get(word) ?? []) {

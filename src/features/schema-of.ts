@@ -1,8 +1,8 @@
 import { bounds } from '../bounds.ts';
 import type { Desk } from '../desk/desk.ts';
 import type { RegionSchema, Schema, SlotSchema } from './schema.ts';
+import { createSipHash } from './siphash.ts';
 import { slotsOf } from './slots.ts';
-import { fingerprint } from './token-hash.ts';
 
 /** Raised whenever the same message would give other features under the same desk's file: old tables are refused then. */
 export const schemaVersion = 1;
@@ -27,5 +27,5 @@ export function schemaOf(desk: Desk, tokenKey: Uint8Array): Schema {
 /** The id is a keyed fingerprint, so that tables hashed under another key are refused and the key stays unknown. */
 export function schemaFrom(slots: readonly SlotSchema[], tokenKey: Uint8Array): Schema {
   const body = { version: schemaVersion, slots, regions: regionSchemas };
-  return { id: fingerprint(tokenKey, JSON.stringify(body)), ...body };
+  return { id: createSipHash(tokenKey).fingerprint(JSON.stringify(body)), ...body };
 }

@@ -12,10 +12,8 @@ export const scripts = [
   'han',
 ] as const;
 
-/** First and last code unit of the main blocks of each script (Unicode 15, Blocks.txt), ascending. */
+/** First and last code unit of the main blocks of each script behind ASCII (Unicode 15, Blocks.txt), ascending. */
 const blocks: readonly (readonly [number, number, (typeof scripts)[number]])[] = [
-  [0x41, 0x5a, 'latin'],
-  [0x61, 0x7a, 'latin'],
   [0xc0, 0x24f, 'latin'],
   [0x370, 0x3ff, 'greek'],
   [0x400, 0x52f, 'cyrillic'],
@@ -31,7 +29,7 @@ const blocks: readonly (readonly [number, number, (typeof scripts)[number]])[] =
   [0x3400, 0x9fff, 'han'],
   [0xac00, 0xd7af, 'hangul'],
 ];
-const sampleChars = 2048;
+const sampleChars = 1024;
 /** Japanese text is rarely less than a third kana; a Chinese text with a Japanese name stays below this. */
 const kanaShareMin = 0.1;
 
@@ -39,10 +37,18 @@ const kanaShareMin = 0.1;
 export function scriptOf(text: string): string {
   const counts = new Map<string, number>();
   const to = Math.min(text.length, sampleChars);
+  let latin = 0;
   for (let i = 0; i < to; i++) {
-    const script = scriptOfUnit(text.charCodeAt(i));
+    const unit = text.charCodeAt(i);
+    if (unit < 0x80) {
+      const letter = unit | 0x20;
+      if (letter >= 0x61 && letter <= 0x7a) latin += 1;
+      continue;
+    }
+    const script = scriptOfUnit(unit);
     if (script !== null) counts.set(script, (counts.get(script) ?? 0) + 1);
   }
+  counts.set('latin', (counts.get('latin') ?? 0) + latin);
   const kana = counts.get('kana') ?? 0;
   const han = counts.get('han') ?? 0;
   if (kana > 0 && kana >= kanaShareMin * (kana + han)) {

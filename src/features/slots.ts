@@ -165,10 +165,18 @@ function dayAndHourIn(timeZone: string): (sentAtMs: number | null) => DayAndHour
     hour: '2-digit',
     hourCycle: 'h23',
   });
+  // Two slots ask for one time.
+  let last = { sentAtMs: Number.NaN, found: missing };
   return (sentAtMs) => {
     if (sentAtMs === null || !(Math.abs(sentAtMs) <= 8.64e15)) return missing;
+    if (last.sentAtMs === sentAtMs) return last.found;
     const parts = format.formatToParts(sentAtMs);
     const part = (type: string) => parts.find((each) => each.type === type)?.value ?? '';
-    return { day: part('weekday').toLowerCase(), hour: hourBands[Math.floor(Number(part('hour')) / 6)]! };
+    const found = {
+      day: part('weekday').toLowerCase(),
+      hour: hourBands[Math.floor(Number(part('hour')) / 6)]!,
+    };
+    last = { sentAtMs, found };
+    return found;
   };
 }

@@ -27,13 +27,43 @@ export function foldText(text: string): string {
 /** The words of folded text, in order, repeats kept: runs of letters, marks and digits; runs of scripts without
  *  spaces are cut by dictionary. A word longer than `wordChars` is cut to it. */
 export function wordsOf(folded: string): string[] {
-  const runs = folded.match(wordRun) ?? [];
   const words: string[] = [];
-  for (const run of runs) {
-    if (firstUnspaced.test(run)) pushUnspaced(run, words);
+  eachWord(folded, (text, from, to) => {
+    words.push(text.slice(from, to));
+  });
+  return words;
+}
+
+/** The same words by their place, `text[from .. to)`: no string is made of them where all is ASCII, which takes half the
+ *  time. */
+export function eachWord(folded: string, visit: (text: string, from: number, to: number) => void): void {
+  if (!notAscii.test(folded)) {
+    eachPlainWord(folded, visit);
+    return;
+  }
+  const words: string[] = [];
+  const hasUnspaced = firstUnspaced.test(folded);
+  for (const run of folded.match(wordRun) ?? []) {
+    if (hasUnspaced && firstUnspaced.test(run)) pushUnspaced(run, words);
     else words.push(cut(run));
   }
-  return words;
+  for (const word of words) visit(word, 0, word.length);
+}
+
+function eachPlainWord(folded: string, visit: (text: string, from: number, to: number) => void): void {
+  const { length } = folded;
+  for (let i = 0; i < length; i++) {
+    if (!isPlainLetter(folded.charCodeAt(i))) continue;
+    const from = i;
+    do i++;
+    while (i < length && isPlainLetter(folded.charCodeAt(i)));
+    visit(folded, from, Math.min(i, from + bounds.wordCharsMax));
+  }
+}
+
+/** A lower-case letter or a digit of ASCII. */
+function isPlainLetter(unit: number): boolean {
+  return unit >= 0x61 ? unit <= 0x7a : unit >= 0x30 && unit <= 0x39;
 }
 
 /** Whether folded text holds letters of a script without spaces: its words depend on their neighbours. */
