@@ -5,7 +5,7 @@ import { type IntakeRequest, mediaTypeOf, nestsDeeperThan, textOf } from './requ
 
 /** A form submission that fits its declaration. */
 export interface Submission {
-  /** Declared, visible fields in the declared order. */
+  /** Declared, visible fields in the declared order, but the sender's. */
   readonly fields: ReadonlyMap<string, string>;
   readonly sender: string | null;
   /** Why a machine may have sent it; null: nothing speaks for that. */
@@ -139,6 +139,8 @@ export function readSubmission(form: IntakeForm, request: IntakeRequest, nowMs: 
     return replyProblem(422, 'fields', 'Some fields do not fit their declaration.', { errors });
   const fields = new Map<string, string>();
   for (const field of form.fields) {
+    // An address among the fields would be counted as a word of the text; it stands beside them.
+    if (field.name === form.senderField) continue;
     const given = raw.get(field.name);
     if (given !== undefined && given !== '') fields.set(field.name, given);
   }

@@ -94,7 +94,7 @@ describe('forms', () => {
       form: 'contact',
       at: '2026-03-02T09:00:00.000Z',
       from: 'pat@home.example',
-      fields: goodForm,
+      fields: { topic: 'bill', message: 'My bill is too high.' },
     });
     expect(got.object.metadata).toEqual({ 'tallypost-trace': 'trace-1' });
     expect(lines).toEqual([
