@@ -21,12 +21,13 @@ export async function readManifest(world: World): Promise<ReadManifest> {
 export type Step<T> =
   /** There is nothing to write: it has happened already, or it cannot happen. */
   | { readonly kind: 'settled'; readonly value: T }
-  /** Replace it. `gone`: the segments that this absorbs or rolls back. */
+  /** Replace it. `gone`: the segments that this absorbs or rolls back; `back`: those in the base that it lists again. */
   | {
       readonly kind: 'write';
       readonly next: Manifest;
       readonly value: T;
       readonly gone?: ReadonlySet<string>;
+      readonly back?: ReadonlySet<string>;
     };
 
 export type Commit<T> =
@@ -49,7 +50,7 @@ export async function commit<T>(
       const { manifest, etag } = await readManifest(world);
       const step = await decide(manifest, hasTried);
       if (step.kind === 'settled') return { kind: 'known', value: step.value, manifest };
-      checkSuccession(manifest, step.next, step.gone ?? new Set());
+      checkSuccession(manifest, step);
       hasTried = true;
       const condition = etag === null ? { ifNoneMatch: '*' as const } : { ifMatch: etag };
       const put = await world.store.put(keys.manifest, encodeManifest(step.next), condition);
@@ -62,8 +63,8 @@ export async function commit<T>(
   return { kind: 'unknown', fault };
 }
 
-function checkSuccession(before: Manifest, after: Manifest, gone: ReadonlySet<string>): void {
-  const rule = brokenRule(before, after, gone);
+function checkSuccession(before: Manifest, { next, gone, back }: Step<unknown> & { kind: 'write' }): void {
+  const rule = brokenRule(before, next, gone ?? new Set(), back ?? new Set());
   if (rule !== null)
     throw new TallypostError({
       code: 'invariant-broken',

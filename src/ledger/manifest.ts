@@ -178,8 +178,14 @@ export function withVoided(before: Manifest, nowMs: number, ids: readonly string
 }
 
 /** What each successor must satisfy, checked before every compare-and-set: the first rule broken, or null.
- *  `gone`: segments that this change absorbs or rolls back; none for any other change. */
-export function brokenRule(before: Manifest, after: Manifest, gone: ReadonlySet<string>): string | null {
+ *  `gone`: segments that this change absorbs or rolls back; `back`: those in the base that it lists again; none for any
+ *  other change. */
+export function brokenRule(
+  before: Manifest,
+  after: Manifest,
+  gone: ReadonlySet<string>,
+  back: ReadonlySet<string>,
+): string | null {
   const ids = after.segments.map((s) => s.id);
   const named = new Set(ids);
   const old = new Set(before.segments.map((s) => s.id));
@@ -192,7 +198,7 @@ export function brokenRule(before: Manifest, after: Manifest, gone: ReadonlySet<
       'no segment leaves the list unless absorbed or rolled back',
       [...old].every((id) => named.has(id) || gone.has(id)),
     ],
-    ['no void segment lands', ids.every((id) => old.has(id) || !isVoid(before, id))],
+    ['no void segment lands', ids.every((id) => old.has(id) || back.has(id) || !isVoid(before, id))],
     ['a segment is void or named, never both', after.voided.every((id) => !named.has(id))],
     [
       'a void segment is forgotten only below the floor',

@@ -68,7 +68,9 @@ export async function rebuild(
   const isPurge = isPurgeDue(from);
   const committed = await commit<boolean>(world, async (manifest) => {
     if (manifest.base === id) return { kind: 'settled', value: true };
-    if (!isUnchanged(from, manifest, options.isExclusive ?? false)) return { kind: 'settled', value: false };
+    // Below the floor the objects just made may be deleted already: this process slept through the horizon.
+    const isOpen = id >= manifest.floor && isUnchanged(from, manifest, options.isExclusive ?? false);
+    if (!isOpen) return { kind: 'settled', value: false };
     await archive(world, manifest);
     const floor = isPurge ? id : manifest.floor;
     const next = successor(manifest, world.nowMs(), {

@@ -61,7 +61,7 @@ export async function restoreVersion(
       restores: [...manifest.restores, { id, version, to }],
       shapedAtVersion: version,
     });
-    return { kind: 'write', next, value: true, gone };
+    return { kind: 'write', next, value: true, gone, back: new Set(target.segments.map((s) => s.id)) };
   });
   if (committed.kind === 'unknown') return { kind: 'unfinished', ...outcome };
   const { version } = committed.manifest;

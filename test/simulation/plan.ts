@@ -1,7 +1,7 @@
 import type { QueueChange } from '../../src/ledger/queues.ts';
 import { desk, startMs } from '../ledger/fixture.ts';
 import type { Delivered } from './oracle.ts';
-import type { FaultRates } from './scheduler.ts';
+import { type FaultRates, noFaults } from './scheduler.ts';
 
 /** What a run consists of; drawn from its seed. Each run leaves out some of it: a rare fault shows best among few others. */
 export interface Plan {
@@ -10,8 +10,8 @@ export interface Plan {
   readonly rates: FaultRates;
   readonly processesMax: number;
   readonly jobs: readonly Job[];
-  /** Now and then two weeks and more pass between two calls. */
-  readonly hasLongPauses: boolean;
+  /** How often two weeks and more pass between two calls. */
+  readonly longPauseRate: number;
   readonly skewMsMax: number;
   readonly patienceMs: number;
 }
@@ -41,14 +41,20 @@ export function drawPlan(random: () => number): Plan {
   });
   // Equal confirmations are one confirmation.
   const drops = [...new Map(drawn.map((d) => [JSON.stringify(d.confirmation), d])).values()];
+  // Some runs are about one kind of trouble alone.
+  const theme = oneOf(['mixed', 'mixed', 'mixed', 'mixed', 'outages', 'pauses']);
+  const batched = theme === 'outages' ? 0.5 : oneOf([0.1, 0.4]);
   const jobs = drops.map(
-    (drop): Job => ({ kind: 'fold', drops: [drop, ...drops.filter((d) => d !== drop && random() < 0.15)] }),
+    (drop): Job => ({
+      kind: 'fold',
+      drops: [drop, ...drops.filter((d) => d !== drop && random() < batched)],
+    }),
   );
   const sometimes = (p: number, times: number, job: () => Job) => {
     if (random() >= p) return;
     for (let i = pick(times); i >= 0; i--) jobs.push(job());
   };
-  sometimes(0.8, 3, () => ({ kind: 'compact' }));
+  sometimes(theme === 'pauses' ? 1 : 0.8, theme === 'pauses' ? 6 : 3, () => ({ kind: 'compact' }));
   sometimes(0.5, 3, () => ({ kind: 'route' }));
   sometimes(0.3, 2, () => ({ kind: 'recount' }));
   sometimes(0.25, 2, () => ({ kind: 'erase', message: oneOf(messages) }));
@@ -67,16 +73,18 @@ export function drawPlan(random: () => number): Plan {
   return {
     messages,
     drops,
-    rates: drawRates(random, oneOf([0, 0.01, 0.04, 0.1])),
+    rates: ratesOf(theme, random, oneOf([0, 0.01, 0.04, 0.1])),
     processesMax: 1 + pick(6),
     jobs,
-    hasLongPauses: random() < 0.2,
+    longPauseRate: theme === 'pauses' ? 0.02 : random() < 0.2 ? 0.004 : 0,
     skewMsMax: oneOf([0, 1000, 3 * dayMs]),
     patienceMs: oneOf([0, 300, 20_000]),
   };
 }
 
-function drawRates(random: () => number, level: number): FaultRates {
+function ratesOf(theme: string, random: () => number, level: number): FaultRates {
+  if (theme === 'outages') return { ...noFaults, outage: 0.15 };
+  if (theme === 'pauses') return { ...noFaults, stall: 0.1 };
   const rate = () => (random() < 0.5 ? level * random() : 0);
   return {
     crash: rate(),
@@ -86,7 +94,7 @@ function drawRates(random: () => number, level: number): FaultRates {
     duplicate: rate(),
     spuriouslyLost: rate(),
     stall: random() < 0.4 ? 0.05 * random() : 0,
-    outage: random() < 0.3 ? 0.02 * random() : 0,
+    outage: random() < 0.3 ? 0.05 * random() : 0,
   };
 }
 

@@ -16,7 +16,7 @@ export interface FaultRates {
   readonly spuriouslyLost: number;
   /** The process is not chosen for the next hundreds of steps. */
   readonly stall: number;
-  /** The next dozens of writes of one kind of object fail, some of them to happen later. */
+  /** The next dozens of writes of one object fail, some of them to happen later. */
   readonly outage: number;
 }
 
@@ -65,7 +65,7 @@ export class Scheduler {
   failure: unknown = null;
   readonly #parked: Parked[] = [];
   #spawned = 0;
-  #outage = { kind: '', left: 0 };
+  #outage = { label: '', left: 0 };
   #running = 0;
 
   constructor(random: () => number, startMs: number) {
@@ -135,16 +135,16 @@ export class Scheduler {
         } else if (fate === 'failBefore') reject(new Error('connection reset'));
         else if (fate === 'failAfter') {
           effect();
-          reject(new Error('timeout'));
+          this.#later(process, () => reject(new Error('timeout')));
         } else if (fate === 'late') {
-          this.#park(null, effect);
+          this.#later(null, effect);
           reject(new Error('timeout'));
         } else if (fate === 'duplicate') {
-          this.#park(null, effect);
+          this.#later(null, effect);
           answer(effect);
         } else if (fate === 'spuriouslyLost') {
           if (this.random() < 0.5) effect();
-          resolve(lost as T);
+          this.#later(process, () => resolve(lost as T));
         } else answer(effect);
       });
     });
@@ -165,8 +165,8 @@ export class Scheduler {
   #drawFate(label: string, isWrite: boolean, isConditional: boolean): keyof FaultRates | 'fine' {
     const { rates } = this;
     if (isWrite && this.random() < rates.outage)
-      this.#outage = { kind: kindOf(label), left: 10 + Math.floor(this.random() * 40) };
-    if (isWrite && this.#outage.left > 0 && this.#outage.kind === kindOf(label)) {
+      this.#outage = { label, left: 12 + Math.floor(this.random() * 30) };
+    if (isWrite && this.#outage.left > 0 && this.#outage.label === label) {
       this.#outage.left -= 1;
       return this.random() < 0.3 ? 'late' : 'failBefore';
     }
@@ -184,6 +184,12 @@ export class Scheduler {
     const isStalled = this.random() < this.rates.stall;
     const fromStep = isStalled ? this.steps + Math.floor(this.random() * 400) : 0;
     this.#parked.push({ process, run, fromStep });
+  }
+
+  /** A lost answer is noticed after a time-out, and what was held up on the way arrives whenever it will. */
+  #later(process: Process | null, run: () => void): void {
+    const isSoon = this.random() < 0.5;
+    this.#parked.push({ process, run, fromStep: isSoon ? 0 : this.steps + Math.floor(this.random() * 150) });
   }
 
   #choose(): number {
@@ -213,11 +219,6 @@ export class Scheduler {
     await settled();
     return this.#parked.length > 0;
   }
-}
-
-/** `put histories/m1.json` to `put histories`. */
-function kindOf(label: string): string {
-  return label.slice(0, label.lastIndexOf('/'));
 }
 
 /** All that follows from one answer without another call of the store has happened when this resolves. */

@@ -59,7 +59,7 @@ export class Simulation {
       const mayStart = waiting.length > 0 && scheduler.running < plan.processesMax;
       if (mayStart && (scheduler.running === 0 || this.#random() < 0.15))
         this.#start(waiting.shift() as Job, waiting);
-      if (plan.hasLongPauses && this.#random() < 0.004) scheduler.nowMs += 16 * 24 * 3600_000;
+      if (this.#random() < plan.longPauseRate) scheduler.nowMs += 16 * 24 * 3600_000;
       await scheduler.step();
     }
     scheduler.calm();
