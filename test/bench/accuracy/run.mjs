@@ -1,6 +1,7 @@
 // Accuracy beside scikit-learn's classifiers, on the same messages and the same split, as one table.
 //   node test/bench/accuracy/run.mjs --learn PATH --score PATH [--text own|all] [--baselines-only]
-// Needs the built command line (npm run build) and, for the baselines, Debian's python3-sklearn.
+// Needs Debian's python3-sklearn for the baselines, and says so when it is absent. --text own gives the baselines the text without
+// quoted history and signatures, as the product reads it.
 import { execFileSync, spawnSync } from 'node:child_process';
 import { createWriteStream, mkdtempSync, rmSync } from 'node:fs';
 import { tmpdir } from 'node:os';
@@ -25,28 +26,40 @@ if (values.learn === undefined || values.score === undefined) {
 const folder = mkdtempSync(join(tmpdir(), 'tallypost-bench-'));
 try {
   const rows = [];
-  if (!values['baselines-only']) rows.push(replayRow());
+  if (!values['baselines-only']) rows.push(await replayRow());
   rows.push(...(await baselineRows()));
   print(rows);
 } finally {
   rmSync(folder, { recursive: true, force: true });
 }
 
-function replayRow() {
+async function replayRow() {
+  const script = join(folder, 'tallypost.mjs');
+  await bundle({ entryPoints: ['src/cli/tallypost.ts'], outfile: script });
   const started = process.hrtime.bigint();
-  const output = execFileSync(
-    'node',
-    [join(root, 'dist/cli/tallypost.js'), 'replay', '--learn', values.learn, '--score', values.score, '--json'],
-    { maxBuffer: 1 << 28, encoding: 'utf8' },
-  );
+  const args = ['replay', '--learn', values.learn, '--score', values.score, '--json'];
+  const output = execFileSync('node', [script, ...args], { maxBuffer: 1 << 28, encoding: 'utf8' });
   const seconds = Number(process.hrtime.bigint() - started) / 1e9;
   return { method: 'tallypost', ...JSON.parse(output), seconds };
+}
+
+function bundle(options) {
+  return build({
+    absWorkingDir: root,
+    bundle: true,
+    platform: 'node',
+    format: 'esm',
+    mainFields: ['module', 'main'],
+    banner: { js: `import { createRequire as __r } from 'node:module'; const require = __r(import.meta.url);` },
+    logLevel: 'warning',
+    ...options,
+  });
 }
 
 /** The baselines see the text that the product's own parser read: subject, then the body. */
 async function baselineRows() {
   const reader = join(folder, 'texts.mjs');
-  await build({
+  await bundle({
     stdin: {
       contents: `export { readLabelled } from './src/cli/labelled/read-labelled.ts';
         export { parseMail } from './src/message/mail.ts';
@@ -55,12 +68,6 @@ async function baselineRows() {
       loader: 'ts',
     },
     outfile: reader,
-    bundle: true,
-    platform: 'node',
-    format: 'esm',
-    mainFields: ['module', 'main'],
-    banner: { js: `import { createRequire as __r } from 'node:module'; const require = __r(import.meta.url);` },
-    logLevel: 'warning',
   });
   const { readLabelled, parseMail, parseForm } = await import(reader);
   const write = async (from, to) => {
