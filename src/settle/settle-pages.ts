@@ -124,7 +124,7 @@ function page({ base, desk, by }: Frame, title: string, content: Content): strin
 }
 
 function lastStrip({ base }: Frame, { confirmation, title, subject, learned, token }: Last): Markup {
-  return html`<form class="last" method="post" action="${base}/undo" role="status"><p>You put <em>${plainLine(subject, 80) || 'a message without a subject'}</em> to <strong>${title}</strong>.${
+  return html`<form class="last" method="post" action="${base}/undo"><p role="status">You put <em>${plainLine(subject, 80) || 'a message without a subject'}</em> to <strong>${title}</strong>.${
     learned !== null &&
     html` ${title} was thought ${percent(learned.before)} likely for it; with this one counted it would be <strong>${percent(learned.after)}</strong>.`
   }</p><input type="hidden" name="message" value="${confirmation.message}"><input type="hidden" name="token" value="${token}">

@@ -121,7 +121,7 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
     const link = server.linkFor('once');
     const say = async (url: string) => {
       await page.goto(url);
-      return page.locator('main').innerText();
+      return page.locator('main').textContent();
     };
     const refused = page.waitForEvent('console'); // the browser itself notes the 403
     expect(await say(`${link}x`)).toContain('not one of ours');
@@ -132,7 +132,7 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
     await page.keyboard.press('Enter');
     await page.waitForURL(/\/message\?m=/);
     await again.keyboard.press('Enter');
-    await again.waitForFunction('document.body.innerText.includes("used before")');
+    await again.waitForFunction('document.body.textContent.includes("used before")');
     desk.setNow(Date.UTC(2026, 4, 8));
     expect(await say(link)).toContain('too old');
     desk.setNow(Date.UTC(2026, 4, 6));
