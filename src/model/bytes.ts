@@ -96,7 +96,8 @@ export class ByteReader {
   }
 
   float64(): number {
-    return new DataView(this.raw(8).slice().buffer).getFloat64(0, true);
+    const { buffer, byteOffset } = this.raw(8);
+    return new DataView(buffer, byteOffset, 8).getFloat64(0, true);
   }
 
   text(): string {
