@@ -3,6 +3,7 @@ import { addCompact } from './commands/compact.ts';
 import { addConfirm } from './commands/confirm.ts';
 import { addCost } from './commands/cost.ts';
 import { addDemo } from './commands/demo.ts';
+import { addDesk } from './commands/desk.ts';
 import { addErase } from './commands/erase.ts';
 import { addExplain } from './commands/explain.ts';
 import { addInit } from './commands/init.ts';
@@ -35,7 +36,7 @@ export async function runProgram(args: readonly string[], terminal: Terminal): P
     .configureOutput({ writeOut: terminal.out, writeErr: terminal.err });
   for (const add of [addDemo, addInit, addRun, addConfirm, addExplain, addReplay, addCompact, addReport])
     add(program, terminal, end);
-  for (const add of [addRecount, addErase, addUndo, addQueue, addRestore, addCost, addIntake])
+  for (const add of [addRecount, addErase, addUndo, addQueue, addRestore, addCost, addIntake, addDesk])
     add(program, terminal, end);
   try {
     await program.parseAsync([...args], { from: 'user' });

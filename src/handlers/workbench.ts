@@ -31,11 +31,13 @@ export interface Workbench extends OpenDesk {
 }
 
 /** Opens the desk with the model as last committed, kept between calls: one conditional read when nothing changed.
- *  A model that is damaged does not stop routing: the last good one of this process serves on, and without one guards
- *  still act and everything else is held. Failures of the store reject: they may pass. */
+ *  A model that is damaged, or counts otherwise than the desk's file now says, does not stop routing: what this process last
+ *  routed with serves on, and without it guards still act and everything else is held. Failures of the store reject: they
+ *  may pass. */
 export function createWorkbenchOpener(deps: HandlerDeps): () => Promise<Workbench> {
   const openDesk = createDeskOpener(deps);
   let cached: { readonly schema: string; readonly model: LoadedModel } | null = null;
+  let usable: Workbench | null = null;
   return async () => {
     const { desk, extractor } = await openDesk();
     const { schema } = extractor;
@@ -43,13 +45,18 @@ export function createWorkbenchOpener(deps: HandlerDeps): () => Promise<Workbenc
     try {
       const model = await loadModel(deps.world, desk, schema, last);
       cached = { schema: schema.id, model };
-      if (model.fault !== null) deps.log({ level: 'error', event: 'model-unusable', ...model.fault });
-      return { desk: model.desk, extractor, model, segments: model.parts.manifest.segments.length };
+      const segments = model.parts.manifest.segments.length;
+      const bench: Workbench = { desk: model.desk, extractor, model, segments };
+      if (model.fault === null) {
+        usable = model.isEmpty ? null : bench;
+        return bench;
+      }
+      deps.log({ level: 'error', event: 'model-unusable', ...model.fault });
+      return usable ?? bench;
     } catch (error) {
       if (!(error instanceof TallypostError) || error.code.startsWith('store-')) throw error;
       deps.log({ level: 'error', event: 'model-unusable', ...faultMembers(error) });
-      if (last !== null) return { desk: last.desk, extractor, model: last };
-      return { desk, extractor, model: nothingLearned(desk, extractor, error) };
+      return usable ?? { desk, extractor, model: nothingLearned(desk, extractor, error) };
     }
   };
 }

@@ -26,6 +26,7 @@ const commands = [
   'restore',
   'cost',
   'intake',
+  'desk',
 ];
 
 describe('the command line', () => {

@@ -315,6 +315,23 @@ describe('a model that cannot be used', () => {
     });
   });
 
+  it('a desk that counts otherwise than the model: what this process last routed with serves on', async () => {
+    const station = await openStation();
+    await teach(station);
+    await station.feed(station.route, await station.putMail('m1', 'Wrong bill', 'My bill is too high.'));
+    await station.putDesk({ ...exampleDesk, forms: ['contact', 'leak', 'move'] });
+    station.pass(60_000);
+    const key = await station.putMail('m2', 'Wrong bill', 'My bill is too high.');
+    expect(await station.feed(station.route, key)).toEqual(done);
+    const [before, after] = [await station.metadata('inbound/m1'), await station.metadata(key)];
+    expect(after['tallypost-posterior']).toBe(before['tallypost-posterior']);
+    expect(after['tallypost-schema']).toBe(before['tallypost-schema']);
+    expect(station.log.find(({ event }) => event === 'model-unusable')).toMatchObject({
+      level: 'error',
+      code: 'schema-mismatch',
+    });
+  });
+
   it('a compaction over a damaged base says so and leaves everything as it was', async () => {
     const station = await openStation();
     await teach(station);
