@@ -14,8 +14,10 @@ export interface DecideInput {
   readonly draw: number;
 }
 
-/** Share of a message's tokens that the table must hold before the posterior is believed. */
-export const knownShareMin = 0.1;
+/** Share of a message's tokens that the table must hold before the posterior is believed. Measured on short forms and on
+ *  long posts, held-out messages of the same desk: below this lie 0.1 % after 50 confirmations, none of 1,000 after 300;
+ *  sentences in eight other languages lie at 0 to 0.24 of a desk that writes of one thing in one language. */
+export const knownShareMin = 0.25;
 /** A message of fewer tokens than this says too little for a share of them to mean anything. */
 const tokensMin = 8;
 /** Defects after which there is nothing to route by. */
