@@ -96,6 +96,24 @@ describe('desk', () => {
     });
   });
 
+  it('counts again under the file that stands, when what was counted is of another key or version', async () => {
+    await learn(6);
+    const opened = await openStore(store);
+    await opened.delete(`${keys.inbound}m0.eml`);
+    await opened.put(keys.tokenKey, Buffer.from('00112233445566778899aabbccddeeff\n'));
+    const { code, json } = await change(old);
+    expect(code).toBe(0);
+    // Words hashed under another key cannot be carried over.
+    expect(json()).toMatchObject({
+      countsOtherwise: true,
+      recounted: { messages: 5, raw: 5, translated: 0, leftOut: 1 },
+    });
+    expect((await runCli('recount', '--store', store, '--json')).json()).toMatchObject({
+      isRight: true,
+      messages: 5,
+    });
+  });
+
   it('changes nothing with --dry-run, nor for a file that cannot be used', async () => {
     await learn(3);
     const before = (await (await openStore(store)).get(keys.manifest)) as { object: { etag: string } };

@@ -6,6 +6,7 @@ import { createExtractor, type Extractor } from '../../features/extractor.ts';
 import type { Features } from '../../features/schema.ts';
 import { translateFeatures } from '../../features/translate.ts';
 import { readMessage } from '../../handlers/read-message.ts';
+import { readManifest } from '../../ledger/commit.ts';
 import { isTombstone } from '../../ledger/history.ts';
 import { historyKey, readHistory } from '../../ledger/history-store.ts';
 import { type RecountResult, recount } from '../../ledger/recount.ts';
@@ -39,12 +40,15 @@ async function changeDesk(file: string, flags: StoreFlags): Promise<Answer> {
   });
   const desk = readDesk(bytes, file);
   const extractor = createExtractor(desk, session.deps.tokenKey);
+  // What is counted now may also be of another version of this program.
+  const { manifest } = await readManifest(session.world);
+  const counted = manifest.schema === '' ? session.extractor.schema.id : manifest.schema;
   const before = new Set(session.desk.queues.map(({ id }) => id));
   const after = new Set(desk.queues.map(({ id }) => id));
   const change = {
     opened: [...after].filter((id) => !before.has(id)),
     closed: [...before].filter((id) => !after.has(id)),
-    countsOtherwise: extractor.schema.id !== session.extractor.schema.id,
+    countsOtherwise: extractor.schema.id !== counted,
   };
   if (flags.dryRun === true)
     return { json: { kind: 'dry-run', ...change }, text: describe(change, 'would be') };
