@@ -27,8 +27,6 @@ const nothingRead: ReadonlySet<string> = new Set([
   'source-failed',
   'parser-failed',
 ]);
-/** The intake took the submission for a program's. */
-const suspectDefects: ReadonlySet<string> = new Set(['form-suspect']);
 const loopDefects: ReadonlySet<string> = new Set(['loop-suspected']);
 const suspectDefects: ReadonlySet<string> = new Set(['form-suspect']);
 /** Defects that explain why there is no text. */

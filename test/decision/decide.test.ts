@@ -161,11 +161,6 @@ describe('whatever the words say', () => {
       { defects: [{ code: 'form-suspect', place: 'suspicion' }] },
       'suspect',
     ],
-    [
-      'a form that a program seems to have sent is held',
-      { defects: [{ code: 'form-suspect', place: 'suspicion' }] },
-      'suspect',
-    ],
     ['an unreadable form is held', { defects: [{ code: 'form-unreadable', place: 'form' }] }, 'unreadable'],
     [
       'an empty object is held',
