@@ -15,7 +15,7 @@ const size = isFull
   ? { messages: 1500, corrections: 500, repeats: 300 }
   : { messages: 150, corrections: 50, repeats: 30 };
 const processes = isFull ? 8 : 4;
-const killEveryMs = isFull ? 2000 : 600;
+const killEveryMs = isFull ? 3000 : 600;
 
 const server = endpoint;
 const root = mkdtempSync(join(tmpdir(), 'tallypost-race-'));
@@ -25,14 +25,14 @@ beforeAll(async () => {
 });
 afterAll(() => rmSync(root, { recursive: true, force: true }), 120_000);
 
-async function race(place: Place): Promise<void> {
+async function race(place: Place, batch: number): Promise<void> {
   const deliveries = makeDeliveries(seed, size);
   const startedMs = Date.now();
   const report = await runRace({
     worker,
     place,
     processes,
-    batch: 5,
+    batch,
     killEveryMs,
     compactEveryMs: killEveryMs * 1.3,
     deliveries,
@@ -49,14 +49,14 @@ async function race(place: Place): Promise<void> {
 
 describe(`${processes} processes fold ${size.messages + size.corrections} confirmations and one is killed every ${killEveryMs} ms (seed ${seed})`, () => {
   it('on a directory: each stands once, under its newest queue', async () => {
-    await race({ kind: 'directory', path: join(root, 'store') });
-  }, 600_000);
+    await race({ kind: 'directory', path: join(root, 'store') }, 5);
+  }, 1_200_000);
 
   if (server !== undefined && isFull)
     it('on an S3-protocol server: each stands once, under its newest queue', async () => {
       const bucket = await makeBucket(createShimmedClient(server));
-      await race({ kind: 's3', endpoint: server, bucket });
-    }, 600_000);
+      await race({ kind: 's3', endpoint: server, bucket }, 20);
+    }, 1_200_000);
   else
     process.stdout.write(
       'left out: the race on a real S3-protocol server (needs TALLYPOST_S3_ENDPOINT and TALLYPOST_RACE=full)\n',
