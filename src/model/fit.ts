@@ -72,15 +72,17 @@ export interface Fit {
 const concentrations = { tokens: [3, 30, 300, 3000], messages: [0.3, 3, 30, 300] } as const;
 
 /** Exponents between those fitted on short forms and on long mail:
- *  [tokens for, tokens against, messages for, messages against, messages absent]. */
+ *  [tokens for, tokens against, messages for, messages against]. */
 const regionDefaults: Readonly<Record<string, readonly number[]>> = {
-  subject: [0.6, 0.15, 0.4, 0.1, 0],
-  word: [0.6, 0.7, 0.35, 0.4, 0],
-  pair: [0.3, 0.15, 0.15, 0.15, 0],
-  gram: [0.6, 0.5, 0.25, 0.3, 0],
+  subject: [0.6, 0.15, 0.4, 0.1],
+  word: [0.6, 0.7, 0.35, 0.4],
+  pair: [0.3, 0.15, 0.15, 0.15],
+  gram: [0.6, 0.5, 0.25, 0.3],
 };
 
-/** What is used until there is enough to fit: for every region both readings, each by its parts. */
+/** What is used until there is enough to fit: for every region both readings, what speaks for a queue apart from what speaks
+ *  against it. Absent tokens are left out: with them log loss falls by 0.003 on short forms and by nothing on long mail, and
+ *  every table would have to be summed over on load. */
 export function defaultFit(schema: Schema): Fit {
   const groups = [...new Set(schema.slots.map((slot) => slot.group))];
   return {
@@ -89,15 +91,14 @@ export function defaultFit(schema: Schema): Fit {
       { kind: 'prior', exponent: 0.5, byQueue: {} },
       ...groups.map((group): SlotsBlock => ({ kind: 'slots', group, exponent: 0.5, byQueue: {} })),
       ...schema.regions.flatMap(({ id }) => {
-        const [tokensFor, tokensAgainst, messagesFor, messagesAgainst, absent] = regionDefaults[id] ?? [
-          0.5, 0.4, 0.3, 0.25, 0,
+        const [tokensFor, tokensAgainst, messagesFor, messagesAgainst] = regionDefaults[id] ?? [
+          0.5, 0.4, 0.3, 0.25,
         ];
         return [
           tokens(id, 'tokens', 'for', tokensFor),
           tokens(id, 'tokens', 'against', tokensAgainst),
           tokens(id, 'messages', 'for', messagesFor),
           tokens(id, 'messages', 'against', messagesAgainst),
-          tokens(id, 'messages', 'absent', absent),
         ];
       }),
     ],

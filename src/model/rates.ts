@@ -14,6 +14,8 @@ export interface Exposure {
   readonly shrink: readonly Float64Array[];
   /** log (s_j + E_k); [concentrations][queues]. */
   readonly logWhole: readonly Float64Array[];
+  /** Work space; [concentrations + 1]. */
+  readonly weights: Float64Array;
   /** By D: log evidence of no hit in any queue; [concentrations + 1], the pooled model last. */
   readonly unseen: Map<number, Float64Array>;
 }
@@ -26,6 +28,7 @@ export function exposureOf(reading: Reading, draws: Float64Array, vocabulary: nu
     vocabulary,
     shrink: reading.concentrations.map((s) => draws.map((e) => s / (s + e))),
     logWhole: reading.concentrations.map((s) => draws.map((e) => Math.log(s + e))),
+    weights: new Float64Array(reading.concentrations.length + 1),
     unseen: new Map(),
   };
 }
@@ -46,12 +49,13 @@ export function pooledRate({ reading, drawsSum, vocabulary }: Exposure, seen: nu
 
 /** Posterior weights of the models of one token's rates, given its counts: for each concentration s_j that the rate depends
  *  on the queue, with rates drawn from Beta(s_j·m, s_j·(1-m)); last, that one rate serves all. Equal before the counts.
- *  Shape: [concentrations + 1], sums to 1. Closed form (method of Bayesian model averaging; Dash and Cooper,
+ *  Shape: [concentrations + 1], sums to 1; the array is the exposure's, good until the next call. Closed form (method of Bayesian model averaging; Dash and Cooper,
  *  JMLR 5, 2004):  w_j ∝ Π_k B(d_k hits of E_k | s_j m, s_j (1-m)). */
 export function weighModels(exposure: Exposure, hits: Hits): Float64Array {
   const { concentrations, pooledRate: pooled } = exposure.reading;
   const m = pooledRate(exposure, hits.seen);
-  const out = unseenEvidence(exposure, hits.seen, m).slice();
+  const out = exposure.weights;
+  out.set(unseenEvidence(exposure, hits.seen, m));
   const last = concentrations.length;
   let top = -Infinity;
   for (let j = 0; j < last; j++) {

@@ -12,9 +12,13 @@ export function logBetaBinomial(k: number, n: number, a: number, b: number): num
  *  Π_{i<k} (a + i)/(b + n - 1 - i): no gamma function for the small counts that nearly all cells hold. */
 export function logHits(k: number, n: number, a: number, b: number): number {
   if (k <= 32 && Number.isInteger(k)) {
-    let odds = 1;
-    for (let i = 0; i < k; i++) odds *= (a + i) / (b + n - 1 - i);
-    return Math.log(odds);
+    let hits = 1;
+    let misses = 1;
+    for (let i = 0; i < k; i++) {
+      hits *= a + i;
+      misses *= b + n - 1 - i;
+    }
+    return Math.log(hits / misses);
   }
   return gammaln(a + k) - gammaln(a) - logGammaDrop(b + n, k);
 }

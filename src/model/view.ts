@@ -14,6 +14,7 @@ export interface View {
   readonly remembered: Map<number, TokenRatios> | null;
   /** Work space. */
   readonly hits: Hits;
+  readonly present: Float64Array;
 }
 
 /** What a token multiplies the odds by, before exponents: p_k/m when present, (1 - p_k)/(1 - m) when absent (null where that
@@ -38,6 +39,7 @@ export function createView(
     absent: countsAbsent ? absentSum(region, left) : null,
     remembered: new Map(),
     hits: createHits(left.draws.length),
+    present: new Float64Array(left.draws.length),
   };
 }
 
@@ -52,28 +54,36 @@ export function viewLeaving(region: ScorerRegion, exposure: Exposure, rows: Int3
     if (hits.length === 0) only++;
   }
   const left = exposureWithout(exposure, own.queue, own.weight * rows.length, only);
-  return { exposure: left, own, absent: null, remembered: null, hits };
+  return {
+    exposure: left,
+    own,
+    absent: null,
+    remembered: null,
+    hits,
+    present: new Float64Array(left.draws.length),
+  };
 }
 
-/** The ratios of one row. Remembered, since a few thousand tokens make up most of all mail. */
+/** The ratios of one row. Remembered, since a few thousand tokens make up most of all mail; otherwise good until the next
+ *  call. */
 export function tokenRatios(region: ScorerRegion, view: View, row: number): TokenRatios {
   const known = view.remembered?.get(row);
   if (known) return known;
   const { exposure, own, hits } = view;
   const queues = exposure.draws.length;
+  const isRemembered = view.remembered !== null && view.remembered.size * queues < bounds.rememberedRatiosMax;
   let absent: Float64Array | null = null;
   if (view.absent !== null) {
     // As summed in view.absent: with the message's own count, which the sum over all tokens could not know to leave out.
     readHits(region.counts, region.queueOf, row, null, hits);
-    absent = !isHeld(region, hits) ? new Float64Array(queues).fill(1) : absentFactors(exposure, hits);
+    absent = isHeld(region, hits) ? absentFactors(exposure, hits) : new Float64Array(queues).fill(1);
   }
   readHits(region.counts, region.queueOf, row, own, hits);
-  const present = new Float64Array(queues).fill(1);
+  const present = isRemembered ? new Float64Array(queues) : view.present;
   if (isHeld(region, hits)) rateRatios(exposure, hits, present);
+  else present.fill(1);
   const ratios = { present, absent };
-  if (view.remembered !== null && view.remembered.size * queues < bounds.rememberedRatiosMax) {
-    view.remembered.set(row, ratios);
-  }
+  if (isRemembered) view.remembered?.set(row, ratios);
   return ratios;
 }
 
