@@ -1,14 +1,15 @@
+import { percent } from './percent.ts';
 import type { Waiting } from './waiting.ts';
 
 /** Why a message waits, in words. */
 export function whyWords(waiting: Waiting, titleOf: (queue: string) => string): string {
   const queue = waiting.queue === null ? '' : titleOf(waiting.queue);
-  const percent = `${Math.round(waiting.posterior * 100)} %`;
+  const likely = percent(waiting.posterior);
   switch (waiting.why) {
     case 'unsure':
       return queue === ''
         ? 'No queue was likely enough.'
-        : `Not sure enough: ${queue} was likeliest, at ${percent}.`;
+        : `Not sure enough: ${queue} was likeliest, at ${likely}.`;
     case 'unlike-anything-seen':
       return 'Hardly any of its words were seen before.';
     case 'nothing-learned':
@@ -22,6 +23,6 @@ export function whyWords(waiting: Waiting, titleOf: (queue: string) => string): 
     case 'automatic':
       return 'A machine sent it, and it might go in circles.';
     case 'look':
-      return `Drawn at random for a look. It went to ${queue}, at ${percent}.`;
+      return `Drawn at random for a look. It went to ${queue}, at ${likely}.`;
   }
 }

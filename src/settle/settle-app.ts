@@ -1,7 +1,6 @@
 import { bounds } from '../bounds.ts';
 import { TallypostError } from '../errors.ts';
 import { strictPolicy } from '../html/policy.ts';
-import { plainLine } from '../html/visible-text.ts';
 import type { World } from '../ledger/world.ts';
 import type { Message } from '../message/message.ts';
 import { keys } from '../store/keys.ts';
@@ -15,6 +14,7 @@ import {
   listPage,
   messageHref,
   messagePage,
+  messageTitle,
   problemPage,
 } from './settle-pages.ts';
 import { settleScript } from './settle-script.ts';
@@ -183,10 +183,10 @@ async function showList(visit: Visit): Promise<SettleReply> {
   const shown = await Promise.all(
     all.slice(0, bounds.settleListedMax).map(async (each) => {
       const message = await deps.readMessage(keys.inbound + each.message);
-      const subject = plainLine(message?.subject || message?.ownText || '', 90);
+      const subject = messageTitle(message, 90);
       return {
         ...each,
-        subject: subject || 'No subject',
+        subject,
         whyWords: whyWords(each, (queue) => titleIn(bench.desk, queue)),
       };
     }),
@@ -244,7 +244,7 @@ async function lastOf({ deps, bench, by, nowMs }: Visit): Promise<Last | null> {
   return {
     confirmation,
     title: titleIn(bench.desk, confirmation.queue),
-    subject: message?.subject ?? '',
+    subject: messageTitle(message, 80),
     learned: message && whatItTeaches(bench, message, confirmation.queue, Date.parse(confirmation.at)),
     token: signTicket(deps.ticketKey, {
       purpose: 'act',

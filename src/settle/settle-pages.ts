@@ -7,6 +7,7 @@ import type { Confirmation } from '../ledger/world.ts';
 import type { Message } from '../message/message.ts';
 import type { Learned, Likelihood, Likely } from './likelihood.ts';
 import { createMarker, wordWeights } from './marked-text.ts';
+import { percent } from './percent.ts';
 import { settleScript } from './settle-script.ts';
 import { settleStyle } from './settle-style.ts';
 import type { Waiting } from './waiting.ts';
@@ -69,14 +70,14 @@ export function messagePage(frame: Frame, view: MessageView): string {
   const { waiting, message, likelihood, total, last, nowMs } = view;
   const balance = likelihood.balances[0];
   const mark = createMarker(wordWeights(balance));
-  const subject = plainLine(message.subject, 200);
+  const subject = messageTitle(message, 200);
   return page(
     frame,
-    subject || 'A message without a subject',
+    subject,
     html`${last && lastStrip(frame, last)}
 <div class="bench"><article aria-labelledby="subject">
 <p class="quiet">${total === 1 ? 'The only one that waits' : `One of ${total.toLocaleString('en-GB')} that wait`}, for ${waited(waiting.atMs, nowMs)}. <strong>${view.whyWords}</strong></p>
-<h1 id="subject">${subject === '' ? html`<span class="quiet">No subject</span>` : mark(subject)}</h1>
+<h1 id="subject">${mark(subject)}</h1>
 ${facts(message)}
 ${text(message, mark)}
 </article>
@@ -124,7 +125,7 @@ function page({ base, desk, by }: Frame, title: string, content: Content): strin
 }
 
 function lastStrip({ base }: Frame, { confirmation, title, subject, learned, token }: Last): Markup {
-  return html`<form class="last" method="post" action="${base}/undo"><p role="status">You put <em>${plainLine(subject, 80) || 'a message without a subject'}</em> to <strong>${title}</strong>.${
+  return html`<form class="last" method="post" action="${base}/undo"><p role="status">You put <em>${subject}</em> to <strong>${title}</strong>.${
     learned !== null &&
     html` ${title} was thought ${percent(learned.before)} likely for it; with this one counted it would be <strong>${percent(learned.after)}</strong>.`
   }</p><input type="hidden" name="message" value="${confirmation.message}"><input type="hidden" name="token" value="${token}">
@@ -189,8 +190,9 @@ function balanceTable(balance: Balance, titleOf: (queue: string) => string, isFi
   );
   const leaning = balance.decibans >= 0 ? one : two;
   return html`<h2>What speaks for which</h2>
-<p class="legend">${isFirst && html`In the text, <mark class="one w2">this line</mark> speaks for ${one}, <mark class="two w2">this one</mark> for ${two}. `}All together: ${oddsInWords(balance.decibans)}${Math.abs(balance.decibans) >= 0.6 && ` for ${leaning}`}. Ten points are odds of 10 to 1.</p>
-<table class="balance"><thead><tr class="sum"><th scope="col">Evidence</th><th scope="col" class="pic"><span class="quiet">← ${two} · ${one} →</span></th><th scope="col">Points</th></tr></thead>
+<p class="legend">${isFirst && html`In the text, <mark class="one w2">this line</mark> speaks for ${one}, <mark class="two w2">this one</mark> for ${two}. `}All together: ${oddsInWords(balance.decibans)}${Math.abs(balance.decibans) >= 0.6 && ` for ${leaning}`}. </p>
+<table class="balance"><caption>Bars to the right speak for ${one}, to the left for ${two}. Ten points are odds of 10 to 1.</caption>
+<thead class="unseen"><tr><th scope="col">Evidence</th><th scope="col">For ${two} or ${one}</th><th scope="col">Points</th></tr></thead>
 <tbody>${balance.groups.map((group) => row(group.title, group.decibans, most, true))}</tbody>
 <tbody><tr class="sum"><th scope="colgroup" colspan="3">The strongest single ones</th></tr>${items.map((item) => row(labelOf(item), item.decibans, most, false))}</tbody></table>`;
 }
@@ -205,6 +207,17 @@ function row(label: string, decibans: number, most: number, isSum: boolean): Mar
   return html`<tr class="${isSum ? 'group' : 'item'}"><th scope="row">${label}</th><td class="pic"><svg aria-hidden="true"><rect class="${decibans >= 0 ? 'f-one' : 'f-two'}" x="${x.toFixed(1)}%" width="${Math.max(0.5, width).toFixed(1)}%" y="2" height="9"></rect><line class="axis" x1="50%" x2="50%" y1="0" y2="100%"></line></svg></td><td class="n">${signedDecibans(decibans)}</td></tr>`;
 }
 
+/** What stands for a message in one line. */
+export function messageTitle(message: Message | null, charsMax: number): string {
+  if (message === null) return 'a message that is gone';
+  const subject = plainLine(message.subject, charsMax);
+  if (subject !== '') return subject;
+  const start = plainLine(message.ownText, charsMax);
+  if (message.form !== null)
+    return plainLine(`Form “${message.form.id}”${start === '' ? '' : `: ${start}`}`, charsMax);
+  return start === '' ? 'No subject, no text' : start;
+}
+
 export function messageHref({ base }: Frame, message: string): string {
   return `${base}/message?m=${encodeURIComponent(message)}`;
 }
@@ -214,10 +227,4 @@ function waited(atMs: number, nowMs: number): string {
   if (hours < 1) return 'under an hour';
   if (hours < 48) return `${hours} ${hours === 1 ? 'hour' : 'hours'}`;
   return `${Math.floor(hours / 24)} days`;
-}
-
-function percent(share: number): string {
-  const hundred = share * 100;
-  if (hundred > 99 && hundred < 100) return 'over 99 %';
-  return hundred > 0 && hundred < 1 ? 'under 1 %' : `${Math.round(hundred)} %`;
 }

@@ -66,6 +66,8 @@ table.balance { border-collapse: collapse; width: 100%; font-size: .92rem; font-
 .balance svg { display: block; width: 100%; height: .8rem; overflow: visible; }
 .balance .f-one { fill: var(--one); } .balance .f-two { fill: none; stroke: var(--two); stroke-width: 1.5; stroke-dasharray: 4 2; }
 .balance .axis { stroke: var(--quiet); }
+caption { text-align: left; color: var(--quiet); padding-bottom: .35rem; }
+.unseen { position: absolute; clip-path: inset(50%); width: 1px; height: 1px; overflow: hidden; }
 .legend { font-size: .92rem; }
 details { margin: .75rem 0; } summary { cursor: pointer; padding: .35rem 0; }
 .door { max-width: 30rem; }

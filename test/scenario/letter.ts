@@ -35,7 +35,8 @@ export function writeLetter(
   chance: Chance,
 ): Letter {
   const { shared } = book;
-  const given = { ...person, town: person.town };
+  // The sender's mail address is not where they live.
+  const { address: _, ...given } = person;
   const say = (template: string) => capitalised(writeSentence(template, book.lexicon, given, chance));
   const isShort = chance.isTrue(difficulty.shortShare);
   const hasOwnSubject = isShort
