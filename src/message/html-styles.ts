@@ -12,8 +12,9 @@ export interface OwnStyle {
 export type Attributes = ReadonlyMap<string, string>;
 
 const noStyle: OwnStyle = { declarations: new Map(), isHiding: false, isPreformatted: false };
-/** Attributes that bear on style, in the order of the key. */
-const styleAttributes = ['style', 'class', 'id', 'color', 'text', 'bgcolor', 'background'] as const;
+/** Attributes that bear on style, in the order of the key; without and with a style sheet. */
+const styleAttributes = ['style', 'color', 'text', 'bgcolor', 'background'] as const;
+const sheetAttributes = [...styleAttributes, 'class', 'id'] as const;
 
 /** The styles of one document; worked out once for all elements that carry the same, as most do. */
 export class HtmlStyles {
@@ -41,9 +42,10 @@ export class HtmlStyles {
 
   of(tag: string, attributes: Attributes): OwnStyle {
     const isLink = tag === 'a';
-    if (attributes.size === 0 && this.#sheet.isEmpty && !isLink) return noStyle;
-    const values = styleAttributes.map((name) => attributes.get(name) ?? '');
-    const key = [this.#sheet.isEmpty && !isLink ? '' : tag, ...values].join('\n');
+    const hasSheet = !this.#sheet.isEmpty;
+    if (attributes.size === 0 && !hasSheet && !isLink) return noStyle;
+    let key = hasSheet || isLink ? tag : '';
+    for (const name of hasSheet ? sheetAttributes : styleAttributes) key += `\n${attributes.get(name) ?? ''}`;
     const known = this.#known.get(key);
     if (known !== undefined) return known;
     const declarations = this.#declare(tag, attributes);

@@ -35,6 +35,8 @@ interface Frame {
   readonly own: Own;
   readonly look: Look;
   readonly isHidden: boolean;
+  /** Hidden, or of a look that cannot be seen. */
+  readonly isUnseen: boolean;
   /** Inside scripts, titles and the like: no attempt to hide something from the reader. */
   readonly isUnshown: boolean;
   readonly isQuoted: boolean;
@@ -50,6 +52,7 @@ const outermost: Frame = {
   },
   look: plainLook,
   isHidden: false,
+  isUnseen: false,
   isUnshown: false,
   isQuoted: false,
   isPreformatted: false,
@@ -157,7 +160,7 @@ class HtmlScanner implements TokenizerCallbacks {
 
   #write(text: string): void {
     const frame = this.#top;
-    if (frame.isHidden || isUnseen(frame.look)) {
+    if (frame.isUnseen) {
       if (frame.own.name === 'style') this.styles.extendSheet(text);
       else if (!frame.isUnshown) this.hiddenChars += text.replace(/\s|\p{DI}/gu, '').length;
       return;
@@ -199,11 +202,14 @@ class HtmlScanner implements TokenizerCallbacks {
       return;
     }
     const parent = this.#top;
+    const look = lookOf(parent.look, own.style.declarations);
     const isUnshown = parent.isUnshown || unshownElements.has(own.name);
+    const isHidden = parent.isHidden || isUnshown || own.isHiding;
     this.#stack.push({
       own,
-      look: lookOf(parent.look, own.style.declarations),
-      isHidden: parent.isHidden || isUnshown || own.isHiding,
+      look,
+      isHidden,
+      isUnseen: isHidden || isUnseen(look),
       isUnshown,
       isQuoted: parent.isQuoted || own.isQuoting,
       isPreformatted: parent.isPreformatted || own.name === 'pre' || own.style.isPreformatted,

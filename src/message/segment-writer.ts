@@ -26,10 +26,14 @@ export class SegmentWriter {
       this.#emit(text);
       return;
     }
-    const folded = text.replace(/[ \t\r\n\f]+/g, ' ');
-    if (folded.startsWith(' ')) this.#hasSpace = true;
-    if (folded.trim() !== '') this.#emit(folded.replace(/^ | $/g, ''));
-    if (folded.endsWith(' ') || folded.trim() === '') this.#hasSpace ||= folded !== '';
+    const core = text.trim();
+    if (core === '') {
+      this.#hasSpace ||= text !== '';
+      return;
+    }
+    if (isSpace(text.charCodeAt(0))) this.#hasSpace = true;
+    this.#emit(core.replace(/[ \t\r\n\f]+/g, ' '));
+    if (isSpace(text.charCodeAt(text.length - 1))) this.#hasSpace = true;
   }
 
   /** At least this many line breaks before the next text; `<br>` adds one to those that stand. */
@@ -64,4 +68,9 @@ export class SegmentWriter {
     if (this.#out.length > 0) this.#segments.push({ text: this.#out.join(''), isQuoted: this.#isQuoted });
     this.#out = [];
   }
+}
+
+/** What String.trim takes away, as far as HTML text holds it at its ends. */
+function isSpace(unit: number): boolean {
+  return unit <= 0x20 || unit === 0xa0 || (unit > 0x7f && String.fromCharCode(unit).trim() === '');
 }

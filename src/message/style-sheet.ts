@@ -49,6 +49,7 @@ export class StyleSheet {
 
   #add(selectors: string, body: string): void {
     const declarations = readDeclarations(body);
+    if (declarations.size === 0) return;
     for (const selector of selectors.split(',')) {
       const name = selector.trim();
       if (!/^(?:[a-z][a-z0-9]*)?(?:[.#][\w-]+)?$/i.test(name) || name === '') continue;

@@ -21,18 +21,28 @@ export const plainLook: Look = {
 
 export type Declarations = Map<string, string>;
 
-/** Splits `name: value; …`; names lower-cased, values lower-cased and trimmed. Linear. */
+/** Properties that can make text unseen, and `white-space`; all others are passed over. */
+const readProperties = new Set(
+  'display content-visibility visibility opacity overflow overflow-x overflow-y height max-height width max-width position left top right bottom clip clip-path transform margin-left margin-top text-indent color -webkit-text-fill-color background background-color background-image font font-size white-space'.split(
+    ' ',
+  ),
+);
+
+/** Splits `name: value; …` and keeps the properties of interest; values lower-cased and trimmed. Linear. */
 export function readDeclarations(style: string, into: Declarations = new Map()): Declarations {
   for (const item of style.split(';')) {
     const colon = item.indexOf(':');
     if (colon < 0) continue;
     const name = item.slice(0, colon).trim().toLowerCase();
-    const value = item
-      .slice(colon + 1)
-      .toLowerCase()
-      .replace('!important', '')
-      .trim();
-    if (name !== '') into.set(name, value);
+    if (!readProperties.has(name)) continue;
+    into.set(
+      name,
+      item
+        .slice(colon + 1)
+        .toLowerCase()
+        .replace('!important', '')
+        .trim(),
+    );
   }
   return into;
 }
