@@ -14,6 +14,7 @@ import { addReplay } from './commands/replay.ts';
 import { addReport } from './commands/report.ts';
 import { addRestore } from './commands/restore.ts';
 import { addRun } from './commands/run.ts';
+import { addSettle } from './commands/settle.ts';
 import { addUndo } from './commands/undo.ts';
 import { exitCodes, type Terminal, writeError } from './terminal.ts';
 import { version } from './version.ts';
@@ -34,7 +35,17 @@ export async function runProgram(args: readonly string[], terminal: Terminal): P
     .enablePositionalOptions()
     .exitOverride()
     .configureOutput({ writeOut: terminal.out, writeErr: terminal.err });
-  for (const add of [addDemo, addInit, addRun, addConfirm, addExplain, addReplay, addCompact, addReport])
+  for (const add of [
+    addDemo,
+    addInit,
+    addRun,
+    addConfirm,
+    addExplain,
+    addReplay,
+    addCompact,
+    addReport,
+    addSettle,
+  ])
     add(program, terminal, end);
   for (const add of [addRecount, addErase, addUndo, addQueue, addRestore, addCost, addIntake, addDesk])
     add(program, terminal, end);
