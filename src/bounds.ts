@@ -217,6 +217,8 @@ export const bounds = {
   localPauseMs: 2_000,
   /** Drops taken up by one compaction; the rest is left to the next. */
   leftDropsMax: 20_000,
+  /** Histories that the compact function recounts: sixteen reads at a time of some 20 ms leave half of its 15 minutes. */
+  functionRecountMax: 400_000,
 
   // Report (src/report)
   /** Newest messages looked at one by one: a month of a busy desk, two small reads each, a minute at most. */

@@ -1,3 +1,5 @@
+import { bounds } from '../bounds.ts';
+
 /** What a desk does in a month, as far as it costs. */
 export interface Load {
   readonly messages: number;
@@ -44,8 +46,9 @@ export interface Machine {
   /** A night's compaction, and for every million histories that it lists. */
   readonly compactSeconds: number;
   readonly compactSecondsPerMillion: number;
-  /** Histories that the weekly recount reads in a second, and its seconds at most. */
+  /** Histories that the weekly recount reads in a second; of more than the most it reads none. */
   readonly recountPerSecond: number;
+  readonly recountMax: number;
   readonly functionSecondsMax: number;
   readonly historyKb: number;
   /** Base and table of one night; as many nights of them are kept as a confirmation may be late, and the days after. */
@@ -84,6 +87,7 @@ export const machineOfTemplate: Machine = {
   compactSeconds: 30,
   compactSecondsPerMillion: 100,
   recountPerSecond: 800,
+  recountMax: bounds.functionRecountMax,
   functionSecondsMax: 900,
   historyKb: 12,
   modelMb: 60,

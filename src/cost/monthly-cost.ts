@@ -42,9 +42,7 @@ export function monthlyCost(load: Load, machine: Machine, prices: Prices): reado
   const histories = confirmed * load.historyMonths;
   // Listing pages, 1,000 keys each, are billed as writes.
   const nightly = { reads: 2000 + folds / nights, writes: 10 + histories / 1000 };
-  // Beyond the time of a function nobody recounts there.
-  const isRecounted = histories / machine.recountPerSecond <= machine.functionSecondsMax;
-  const recounted = isRecounted ? histories : 0;
+  const recounted = histories <= machine.recountMax ? histories : 0;
   const counted: readonly (readonly [number, { readonly reads: number; readonly writes: number }])[] = [
     [mails, { reads: 0, writes: 1 }],
     [messages, requests.message],

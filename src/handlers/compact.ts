@@ -13,7 +13,7 @@ export interface CompactResult {
   readonly compaction: CompactionResult;
   /** Drops that had lain for over an hour: how many are done with now, and how many remain. */
   readonly leftDrops: { readonly done: number; readonly remaining: number };
-  /** Null when the event did not ask for it. */
+  /** Null when the event did not ask for it, or when there are too many histories for a function's time. */
   readonly recount: (Pick<RecountResult, 'messages' | 'fault'> & { readonly differences: number }) | null;
 }
 
@@ -53,13 +53,27 @@ function isRecountAsked(event: unknown): boolean {
 async function recountNow(
   deps: HandlerDeps,
   { desk, extractor }: OpenDesk,
-): Promise<NonNullable<CompactResult['recount']>> {
+): Promise<CompactResult['recount']> {
+  if (!(await isRecountable(deps))) {
+    deps.log({ level: 'warn', event: 'recount-skipped', historiesMax: bounds.functionRecountMax });
+    return null;
+  }
   const { messages, fault, differences } = await recount(deps.world, desk, extractor.schema);
   const recounted = { messages, fault, differences: differences.length };
   deps.measure?.(measureRecount(recounted));
   if (fault !== null || differences.length > 0)
     deps.log({ level: 'error', event: 'recount-differs', ...recounted });
   return recounted;
+}
+
+/** A listing costs a thousandth of the recount. */
+async function isRecountable({ world }: HandlerDeps): Promise<boolean> {
+  let histories = 0;
+  for await (const _ of world.store.list(keys.histories)) {
+    histories += 1;
+    if (histories > bounds.functionRecountMax) return false;
+  }
+  return true;
 }
 
 /** An event is lost at times, and dead letters are looked at late: what lies for an hour has missed its own. */

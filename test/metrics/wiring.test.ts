@@ -1,4 +1,5 @@
 import { describe, expect, it } from 'vitest';
+import { bounds } from '../../src/bounds.ts';
 import { createCompactHandler } from '../../src/handlers/compact.ts';
 import { createConfirmHandler } from '../../src/handlers/confirm.ts';
 import type { HandlerDeps } from '../../src/handlers/handler-deps.ts';
@@ -102,6 +103,23 @@ describe('the handlers measure', () => {
     expect(made).not.toHaveProperty('RecountDifferences');
     expect((await compact({ recount: true })).recount).toEqual({ messages: 12, fault: null, differences: 0 });
     expect(take()).toMatchObject([{ Compactions: 1, RecountDifferences: 0 }]);
+  });
+
+  it('no recount of more histories than a function has time for, and the log says so', async () => {
+    const { station, compact, take } = await openMeasured(() => {
+      const store = createMemoryStore();
+      const pages = async function* () {
+        const one = { key: `${keys.histories}x.json`, etag: 'e', bytes: 1, modifiedAtMs: 0 };
+        for (let i = 0; i <= bounds.functionRecountMax; i++) yield one;
+      };
+      return {
+        ...store,
+        list: (prefix, options) => (prefix === keys.histories ? pages() : store.list(prefix, options)),
+      };
+    });
+    expect((await compact({ recount: true })).recount).toBeNull();
+    expect(take()[0]).not.toHaveProperty('RecountDifferences');
+    expect(station.log).toContainEqual({ level: 'warn', event: 'recount-skipped', historiesMax: 400_000 });
   });
 
   it('a difference that the recount finds, loudly', async () => {
