@@ -39,13 +39,16 @@ function isChosen(form: Form | null, field: ClosedField): boolean {
   return field.values.includes(choice);
 }
 
+/** Phrases by their words: a text costs its own length times the longest phrase, however many begin alike. */
+interface Branch {
+  /** First guard with a phrase that ends here; Infinity when none does. */
+  guard: number;
+  readonly next: Map<string, Branch>;
+}
+
 interface Phrases {
-  /** First word to the phrases that begin with it. */
-  readonly byFirstWord: ReadonlyMap<
-    string,
-    readonly { readonly words: readonly string[]; readonly guard: number }[]
-  >;
-  /** Finds any of these first words; null when they are too many for one expression. A text without any of them, and most
+  readonly root: Branch;
+  /** Finds any phrase's first word; null when these are too many for one expression. A text without any of them, and most
    *  are, need not be cut into words. */
   readonly firstWords: RegExp | null;
   /** Phrases of scripts without spaces: where their words are cut depends on the text around, so they are looked for
@@ -59,23 +62,31 @@ const prepared = new WeakMap<Desk, Phrases>();
 function phrasesOf(desk: Desk): Phrases {
   const known = prepared.get(desk);
   if (known !== undefined) return known;
-  const byFirstWord = new Map<string, { words: string[]; guard: number }[]>();
+  const root: Branch = { guard: Number.POSITIVE_INFINITY, next: new Map() };
   const asTheyStand: { folded: string; guard: number }[] = [];
   desk.guards.forEach(({ phrases }, guard) => {
     for (const phrase of phrases) {
       const folded = foldText(phrase);
-      if (isUnspaced(folded)) {
-        asTheyStand.push({ folded: folded.trim(), guard });
-        continue;
-      }
-      const words = wordsOf(folded);
-      const first = words[0]!;
-      byFirstWord.set(first, [...(byFirstWord.get(first) ?? []), { words, guard }]);
+      if (isUnspaced(folded)) asTheyStand.push({ folded: folded.trim(), guard });
+      else addPhrase(root, wordsOf(folded), guard);
     }
   });
-  const phrases = { byFirstWord, firstWords: expressionOf([...byFirstWord.keys()]), asTheyStand };
+  const phrases = { root, firstWords: expressionOf([...root.next.keys()]), asTheyStand };
   prepared.set(desk, phrases);
   return phrases;
+}
+
+function addPhrase(root: Branch, words: readonly string[], guard: number): void {
+  let branch = root;
+  for (const word of words) {
+    let next = branch.next.get(word);
+    if (next === undefined) {
+      next = { guard: Number.POSITIVE_INFINITY, next: new Map() };
+      branch.next.set(word, next);
+    }
+    branch = next;
+  }
+  branch.guard = Math.min(branch.guard, guard);
 }
 
 /** Words hold letters, marks and digits only: nothing in them means anything to an expression. */
@@ -85,22 +96,27 @@ function expressionOf(words: readonly string[]): RegExp | null {
 }
 
 /** Index of the first guard whose phrase is in one of the texts; Infinity when there is none. */
-function phraseGuard(texts: readonly string[], { byFirstWord, firstWords, asTheyStand }: Phrases): number {
+function phraseGuard(texts: readonly string[], { root, firstWords, asTheyStand }: Phrases): number {
   let first = Number.POSITIVE_INFINITY;
-  if (byFirstWord.size === 0 && asTheyStand.length === 0) return first;
+  if (root.next.size === 0 && asTheyStand.length === 0) return first;
   for (const text of texts) {
     const folded = foldText(text);
     for (const phrase of asTheyStand) {
       if (phrase.guard < first && folded.includes(phrase.folded)) first = phrase.guard;
     }
-    if (firstWords !== null && !firstWords.test(folded)) continue;
+    if (root.next.size === 0 || (firstWords !== null && !firstWords.test(folded))) continue;
     const words = wordsOf(folded);
-    words.forEach((word, at) => {
-      for (const phrase of byFirstWord.get(word) ?? []) {
-        if (phrase.guard < first && phrase.words.every((each, i) => each === words[at + i]))
-          first = phrase.guard;
-      }
-    });
+    for (let at = 0; at < words.length; at++) first = Math.min(first, guardAt(root, words, at));
+  }
+  return first;
+}
+
+function guardAt(root: Branch, words: readonly string[], at: number): number {
+  let first = Number.POSITIVE_INFINITY;
+  let branch = root.next.get(words[at]!);
+  for (let i = at + 1; branch !== undefined; i++) {
+    first = Math.min(first, branch.guard);
+    branch = i < words.length ? branch.next.get(words[i]!) : undefined;
   }
   return first;
 }

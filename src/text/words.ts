@@ -2,6 +2,9 @@ import { bounds } from '../bounds.ts';
 
 const notAscii = /[^\0-\x7f]/;
 const ignorable = /\p{Default_Ignorable_Code_Point}+/gu;
+/** Normalising sorts the marks behind a letter, which takes the square of their number (64 K of them: 2 s); no writing
+ *  needs more than 30 (Unicode Standard Annex 15, section 13, Stream-Safe Text Format). */
+const tooManyMarks = /(\p{M}{30})\p{M}+/gu;
 const wordRun = /[\p{L}\p{M}\p{N}]+/gu;
 /** Scripts written without spaces; script extensions, so that the long-vowel mark of kana counts as kana. */
 const unspaced =
@@ -18,7 +21,7 @@ const segmenter = new Intl.Segmenter('und', { granularity: 'word' });
 export function foldText(text: string): string {
   const bounded = text.length > bounds.featureCharsMax ? text.slice(0, bounds.featureCharsMax) : text;
   if (!notAscii.test(bounded)) return bounded.toLowerCase();
-  const unified = bounded.normalize('NFKC').replace(ignorable, '').toLowerCase();
+  const unified = bounded.replace(tooManyMarks, '$1').normalize('NFKC').replace(ignorable, '').toLowerCase();
   const folded = unified.replaceAll('ß', 'ss').replaceAll('ς', 'σ');
   // NFKC can make one letter eighteen (U+FDFA).
   return folded.length > bounds.featureCharsMax ? folded.slice(0, bounds.featureCharsMax) : folded;
@@ -83,6 +86,10 @@ function pushUnspaced(run: string, words: string[]): void {
 
 /** The segmenter's time grows faster than its input (200,000 characters: 100 s on Node 20), so it is fed slices. */
 function pushSegments(run: string, words: string[]): void {
+  if (run.length === 1) {
+    words.push(run);
+    return;
+  }
   for (let from = 0; from < run.length; ) {
     const to = wholeEnd(run, Math.min(run.length, from + bounds.segmentCharsMax));
     for (const part of segmenter.segment(run.slice(from, to))) words.push(cut(part.segment));

@@ -41,6 +41,21 @@ describe('a phrase', () => {
     expect(met(mailOf(changes), danger)).toBeNull();
   });
 
+  it('is found among hundreds that begin alike, the first guard’s first', () => {
+    const long = guardOf('long', { phrases: Array.from({ length: 500 }, (_, i) => `burst pipe ${i}`) });
+    const short = guardOf('short', { phrases: ['burst'] });
+    expect(met(mailOf({ ownText: 'a burst pipe 499 again' }), long, short)).toBe('long');
+    expect(met(mailOf({ ownText: 'a burst pipe 500 again' }), long, short)).toBe('short');
+    expect(met(mailOf({ ownText: 'a burst pipe 499 again' }), short, long)).toBe('short');
+    expect(met(mailOf({ ownText: 'pipe 499' }), long, short)).toBeNull();
+  });
+
+  it('of more first words than one expression takes is found all the same', () => {
+    const many = guardOf('many', { phrases: Array.from({ length: 200 }, (_, i) => `word${i} now`) });
+    expect(met(mailOf({ ownText: 'please word173 NOW!' }), many)).toBe('many');
+    expect(met(mailOf({ ownText: 'please word173 later' }), many)).toBeNull();
+  });
+
   it('is looked for in every field of a form, each by itself', () => {
     expect(met(formOf('contact', { name: 'A', details: 'a leak' }), danger)).toBe('danger');
     expect(met(formOf('contact', { a: 'sewage in', b: 'the house' }), danger)).toBeNull();

@@ -57,6 +57,13 @@ describe('words', () => {
     expect(words(`${'a'.repeat(39)}\u{10428}`)).toEqual(['a'.repeat(39)]);
   });
 
+  it('keeps 30 marks behind a letter, so that 64 K of them are not sorted', () => {
+    // U+0F71 and U+0F72 have different combining classes, 129 and 130: unsorted as given.
+    expect(foldText(`a${'\u0f72\u0f71'.repeat(30_000)}b`)).toBe(
+      `a${'\u0f71'.repeat(15)}${'\u0f72'.repeat(15)}b`,
+    );
+  });
+
   it('segments 60,000 Han characters in slices, in bounded time', () => {
     expect(words('水'.repeat(60_000)).join('')).toBe('水'.repeat(60_000));
   });
