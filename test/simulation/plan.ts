@@ -42,7 +42,7 @@ export function drawPlan(random: () => number): Plan {
   // Equal confirmations are one confirmation.
   const drops = [...new Map(drawn.map((d) => [JSON.stringify(d.confirmation), d])).values()];
   // Some runs are about one kind of trouble alone.
-  const theme = oneOf(['mixed', 'mixed', 'mixed', 'mixed', 'outages', 'pauses']);
+  const theme = oneOf(['mixed', 'mixed', 'mixed', 'mixed', 'outages', 'pauses', 'lost answers']);
   const batched = theme === 'outages' ? 0.5 : oneOf([0.1, 0.4]);
   const jobs = drops.map(
     (drop): Job => ({
@@ -54,7 +54,8 @@ export function drawPlan(random: () => number): Plan {
     if (random() >= p) return;
     for (let i = pick(times); i >= 0; i--) jobs.push(job());
   };
-  sometimes(theme === 'pauses' ? 1 : 0.8, theme === 'pauses' ? 6 : 3, () => ({ kind: 'compact' }));
+  const compactions = theme === 'pauses' || theme === 'lost answers' ? 8 : 3;
+  sometimes(0.8, compactions, () => ({ kind: 'compact' }));
   sometimes(0.5, 3, () => ({ kind: 'route' }));
   sometimes(0.3, 2, () => ({ kind: 'recount' }));
   sometimes(0.25, 2, () => ({ kind: 'erase', message: oneOf(messages) }));
@@ -84,6 +85,7 @@ export function drawPlan(random: () => number): Plan {
 
 function ratesOf(theme: string, random: () => number, level: number): FaultRates {
   if (theme === 'outages') return { ...noFaults, outage: 0.15 };
+  if (theme === 'lost answers') return { ...noFaults, failAfter: 0.12, spuriouslyLost: 0.12 };
   if (theme === 'pauses') return { ...noFaults, stall: 0.1 };
   const rate = () => (random() < 0.5 ? level * random() : 0);
   return {

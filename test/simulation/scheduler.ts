@@ -65,7 +65,7 @@ export class Scheduler {
   failure: unknown = null;
   readonly #parked: Parked[] = [];
   #spawned = 0;
-  #outage = { label: '', left: 0 };
+  #outage = { label: '', left: 0, lateShare: 0 };
   #running = 0;
 
   constructor(random: () => number, startMs: number) {
@@ -165,10 +165,14 @@ export class Scheduler {
   #drawFate(label: string, isWrite: boolean, isConditional: boolean): keyof FaultRates | 'fine' {
     const { rates } = this;
     if (isWrite && this.random() < rates.outage)
-      this.#outage = { label, left: 12 + Math.floor(this.random() * 30) };
+      this.#outage = {
+        label,
+        left: 12 + Math.floor(this.random() * 30),
+        lateShare: this.random() < 0.5 ? 0.2 : 1,
+      };
     if (isWrite && this.#outage.left > 0 && this.#outage.label === label) {
       this.#outage.left -= 1;
-      return this.random() < 0.3 ? 'late' : 'failBefore';
+      return this.random() < this.#outage.lateShare ? 'late' : 'failBefore';
     }
     let x = this.random();
     for (const fate of ['crash', 'failBefore', 'failAfter', 'late', 'duplicate', 'spuriouslyLost'] as const) {
@@ -189,7 +193,7 @@ export class Scheduler {
   /** A lost answer is noticed after a time-out, and what was held up on the way arrives whenever it will. */
   #later(process: Process | null, run: () => void): void {
     const isSoon = this.random() < 0.5;
-    this.#parked.push({ process, run, fromStep: isSoon ? 0 : this.steps + Math.floor(this.random() * 150) });
+    this.#parked.push({ process, run, fromStep: isSoon ? 0 : this.steps + Math.floor(this.random() * 300) });
   }
 
   #choose(): number {

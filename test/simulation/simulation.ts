@@ -3,7 +3,7 @@ import { desk, seeded, startMs } from '../ledger/fixture.ts';
 import { work } from './actors.ts';
 import { Checker } from './checker.ts';
 import { checkEnd } from './end.ts';
-import { Oracle } from './oracle.ts';
+import { Oracle, type Undo } from './oracle.ts';
 import { drawPlan, type Job, type Plan } from './plan.ts';
 import { type Process, Scheduler } from './scheduler.ts';
 import { Objects, storeOf } from './simulated-store.ts';
@@ -27,7 +27,10 @@ export class Simulation {
   readonly objects: Objects;
   readonly checker: Checker;
   readonly #random: () => number;
-  readonly #undoOf = new Map<string, { endedAt: number | null }>();
+  /** Order to the undo and those that may still be carrying it out. */
+  readonly #undoOf = new Map<string, { readonly undo: Undo; busy: Set<symbol> | null }>();
+  /** Processes that carry out orders. */
+  readonly #carriers = new Set<symbol>();
 
   constructor(seed: number) {
     this.seed = seed;
@@ -99,7 +102,19 @@ export class Simulation {
 
   #spawn<T>(name: string, operation: (world: World) => Promise<T>, onEnd: (value: T | null) => void): void {
     const skewMs = Math.floor((this.#random() * 2 - 1) * this.plan.skewMsMax);
-    this.scheduler.spawn(name, skewMs, (process) => operation(this.#worldOf(process)), onEnd);
+    const id = Symbol(name);
+    if (name === 'undo' || name === 'compact') this.#carriers.add(id);
+    this.scheduler.spawn(
+      name,
+      skewMs,
+      (process) => operation(this.#worldOf(process)),
+      (value: T | null) => {
+        this.#carriers.delete(id);
+        for (const order of this.#undoOf.values()) order.busy?.delete(id);
+        this.#endUndos();
+        onEnd(value);
+      },
+    );
   }
 
   #worldOf(process: Process): World {
@@ -119,13 +134,20 @@ export class Simulation {
     for (const message of order.messages ?? []) this.oracle.erasureOrdered.add(message);
     if (order.kind !== 'undo') return;
     const { by, sinceMs, untilMs } = order;
-    const undo = { by, sinceMs, untilMs, startedAt: this.oracle.tick(), endedAt: null };
-    this.#undoOf.set(key, undo);
+    const undo: Undo = { by, sinceMs, untilMs, startedAt: this.oracle.tick(), endedAt: null };
+    this.#undoOf.set(key, { undo, busy: null });
     this.oracle.undos.push(undo);
   }
 
   #onDelete(key: string): void {
-    const undo = this.#undoOf.get(key);
-    if (undo) undo.endedAt = this.oracle.tick();
+    const order = this.#undoOf.get(key);
+    if (order) order.busy = new Set(this.#carriers);
+    this.#endUndos();
+  }
+
+  /** An undo has ended when its order is gone, and nobody is left who read the order before. */
+  #endUndos(): void {
+    for (const { undo, busy } of this.#undoOf.values())
+      if (busy?.size === 0) undo.endedAt ??= this.oracle.tick();
   }
 }
