@@ -1,5 +1,4 @@
 import { randomBytes } from 'node:crypto';
-import type { Desk } from '../../src/desk/desk.ts';
 import type { BatchHandler } from '../../src/handlers/batch-handler.ts';
 import { createCompactHandler } from '../../src/handlers/compact.ts';
 import { createConfirmHandler } from '../../src/handlers/confirm.ts';
@@ -34,11 +33,6 @@ export interface Station {
   metadata(key: string): Promise<Record<string, string>>;
   keys(prefix: string): Promise<string[]>;
   json(key: string): Promise<unknown>;
-}
-
-/** The desk's file of `exampleDesk`. */
-export function deskFileOf(desk: Desk): unknown {
-  return desk;
 }
 
 export const startMs = Date.UTC(2026, 2, 2, 9, 0);
