@@ -12,11 +12,13 @@ const replacement = '\ufffd';
  *  `hintCharset` is tried for 8-bit bytes that nothing declares: the charset of the subject's encoded words. */
 export function decodeBody(part: Part, defects: Defects, hintCharset: string): string {
   const bytes = decodeTransfer(part, Buffer.concat(part.pieces), defects);
-  if (isBinary(bytes, part.charset)) {
-    defects.add('text-unreadable', part.number);
-    return '';
+  let charset = declaredCharset(part, bytes);
+  if (isBinary(bytes, charset)) {
+    charset = guessWide(bytes);
+    defects.add(charset === '' ? 'text-unreadable' : 'charset-undeclared', part.number);
+    if (charset === '') return '';
   }
-  const text = decodeText(bytes, declaredCharset(part, bytes), part.number, defects, hintCharset);
+  const text = decodeText(bytes, charset, part.number, defects, hintCharset);
   const lines = text.includes('\r') ? text.replace(/\r\n?/g, '\n') : text;
   if (part.contentType !== 'text/plain' || (part.params.format ?? '').trim().toLowerCase() !== 'flowed') {
     return lines;
@@ -110,6 +112,16 @@ function isBinary(bytes: Buffer, charset: string): boolean {
       controls++;
   }
   return controls * 10 > bytes.length;
+}
+
+/** UTF-16 without a label: every other byte of Latin text is zero. */
+function guessWide(bytes: Buffer): string {
+  const sample = bytes.subarray(0, 400);
+  const zeros = [0, 0];
+  for (let i = 0; i < sample.length; i++) if (sample[i] === 0) zeros[i & 1]!++;
+  const half = sample.length / 2;
+  if (zeros[1]! > 0.6 * half && zeros[0]! < 0.05 * half) return 'utf-16le';
+  return zeros[0]! > 0.6 * half && zeros[1]! < 0.05 * half ? 'utf-16be' : '';
 }
 
 const knownCharsets = new Map<string, boolean>();

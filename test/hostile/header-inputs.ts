@@ -197,14 +197,14 @@ export const headerInputs: readonly HostileInput[] = [
         ',\r\n ',
       );
       return withHeader(
-        `From: anna@berg.example\r\nTo: help@fenmarkwater.example, ${list}\r\nSubject: Question`,
+        `From: anna@berg.example\r\nTo: contact@fenmarkwater.example, ${list}\r\nSubject: Question`,
       );
     },
     defects: ['header-cut', 'recipients-cut'],
     keeps: plea,
     expectedDecision: 'by-words',
     check: ({ recipients }) =>
-      recipients.length === 100 && recipients[0]!.address === 'help@fenmarkwater.example'
+      recipients.length === 100 && recipients[0]!.address === 'contact@fenmarkwater.example'
         ? null
         : 'recipients wrong',
   },
@@ -293,7 +293,7 @@ export const headerInputs: readonly HostileInput[] = [
   {
     name: 'a display name that looks like another address',
     channel: 'mail',
-    build: () => withHeader('From: "help@fenmarkwater.example" <anna@berg.example>\r\nSubject: Question'),
+    build: () => withHeader('From: "contact@fenmarkwater.example" <anna@berg.example>\r\nSubject: Question'),
     defects: [],
     isExact: true,
     keeps: plea,

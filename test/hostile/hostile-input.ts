@@ -29,7 +29,7 @@ export const plea = 'The meter in Mill Lane shows a wrong reading, please check 
 /** What an attacker wants to be counted. */
 export const padding = 'sewer flooding burst urgent emergency';
 
-export const address = 'From: Anna Berg <anna@berg.example>\r\nTo: help@fenmarkwater.example\r\n';
+export const address = 'From: Anna Berg <anna@berg.example>\r\nTo: contact@fenmarkwater.example\r\n';
 
 /** Mail of header lines and a body; strings hold one character a byte. */
 export function mail(header: string, body: string): Buffer {

@@ -120,7 +120,7 @@ export const kindInputs: readonly HostileInput[] = [
         [
           textPart('Your message could not be delivered.'),
           'Content-Type: message/delivery-status\r\n\r\nReporting-MTA: dns; mx.example\r\n\r\nFinal-Recipient: rfc822; a@b.example\r\nAction: failed\r\nStatus: 5.1.1',
-          `Content-Type: message/rfc822\r\n\r\nFrom: help@fenmarkwater.example\r\nSubject: ${padding}\r\n\r\n${padding}`,
+          `Content-Type: message/rfc822\r\n\r\nFrom: contact@fenmarkwater.example\r\nSubject: ${padding}\r\n\r\n${padding}`,
         ],
         'frontier',
         'Return-Path: <>\r\nAuto-Submitted: auto-replied\r\n',
@@ -164,7 +164,7 @@ export const kindInputs: readonly HostileInput[] = [
     channel: 'mail',
     build: () =>
       mail(
-        'From: help@fenmarkwater.example\r\nTo: help@fenmarkwater.example\r\nSubject: Re: Re: Out of office\r\nAuto-Submitted: auto-replied\r\nIn-Reply-To: <1@fenmarkwater.example>\r\n',
+        'From: contact@fenmarkwater.example\r\nTo: contact@fenmarkwater.example\r\nSubject: Re: Re: Out of office\r\nAuto-Submitted: auto-replied\r\nIn-Reply-To: <1@fenmarkwater.example>\r\n',
         'I am away until Monday.',
       ),
     defects: [],

@@ -113,7 +113,9 @@ export const textInputs: readonly HostileInput[] = [
   ),
   text('250 KB of accents on one letter', `${plea} a${'\u0301'.repeat(120_000)}`, ['invisible-characters']),
   text('control characters and escapes', `${plea} \x07\x1b[31m\x9b alarm`, ['control-characters']),
-  text('NUL between the letters', [...plea].join('\0'), [], ''),
+  text('a NUL behind every letter', [...plea].map((letter) => `${letter}\0`).join(''), [
+    'charset-undeclared',
+  ]),
   text('30,000 emoji', `${plea} ${'\u{1f4a7}\ufe0f'.repeat(30_000)}`, []),
   text('80,000 characters of Chinese without a space', `${plea} ${'水表读数错误'.repeat(14_000)}`, [
     'text-cut',
