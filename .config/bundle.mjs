@@ -1,12 +1,16 @@
 // Bundles the command line and the Lambda functions: one self-contained ES module each.
 //   node .config/bundle.mjs               everything, into dist/
 //   node .config/bundle.mjs --functions   only the functions, with a table of their sizes
+//   ... --into=FOLDER                     instead of dist/
 import { existsSync, mkdirSync, readdirSync, rmSync } from 'node:fs';
-import { join } from 'node:path';
+import { join, relative, resolve } from 'node:path';
 import { pathToFileURL } from 'node:url';
 import { build } from 'esbuild';
 
 const root = new URL('..', import.meta.url).pathname;
+const into = resolve(
+  process.argv.find((word) => word.startsWith('--into='))?.slice('--into='.length) ?? join(root, 'dist'),
+);
 
 /** Lambda functions by name: dist/functions/<name>/index.mjs, the folder that the template names. */
 export const functions = ['route', 'confirm', 'compact', 'intake', 'backfill'];
@@ -39,12 +43,12 @@ export const optionsOf = (from, outfile) => ({
 });
 
 async function bundleFunction(name) {
-  const folder = join(root, 'dist/functions', name);
+  const folder = join(into, 'functions', name);
   mkdirSync(folder, { recursive: true });
   for (const left of readdirSync(folder))
     if (left !== 'index.mjs') rmSync(join(folder, left), { recursive: true });
   const { metafile } = await build({
-    ...optionsOf(`src/handlers/lambda/${name}.ts`, `dist/functions/${name}/index.mjs`),
+    ...optionsOf(`src/handlers/lambda/${name}.ts`, join(folder, 'index.mjs')),
     minify: true,
     metafile: true,
   });
@@ -65,7 +69,7 @@ function packagesOf(inputs) {
 
 async function bundleTool(out, from) {
   if (!existsSync(root + from)) return;
-  const options = optionsOf(from, `dist/${out}.js`);
+  const options = optionsOf(from, join(into, `${out}.js`));
   const shebang = out.startsWith('cli/') ? '#!/usr/bin/env node\n' : '';
   await build({ ...options, banner: { js: shebang + require } });
 }
@@ -80,7 +84,7 @@ if (import.meta.url === pathToFileURL(process.argv[1]).href) {
     for (const { name, bytes, packages } of sizes) {
       const most = packages.slice(0, 5).map(([what, b]) => `${what} ${Math.round(b / 1000)}`);
       console.log(
-        `dist/functions/${name.padEnd(9)} ${String(Math.round(bytes / 1000)).padStart(5)} KB   ${most.join(', ')}`,
+        `${join(relative(root, into), 'functions', name).padEnd(24)} ${String(Math.round(bytes / 1000)).padStart(5)} KB   ${most.join(', ')}`,
       );
     }
     console.log('Next: sam deploy --guided');

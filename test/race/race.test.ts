@@ -34,7 +34,7 @@ async function race(place: Place, batch: number): Promise<void> {
     processes,
     batch,
     killEveryMs,
-    compactEveryMs: killEveryMs * 1.3,
+    compactEveryBatches: isFull ? 25 : 15,
     deliveries,
   });
   const seconds = ((Date.now() - startedMs) / 1000).toFixed(1);

@@ -13,7 +13,8 @@ export interface RaceOptions {
   readonly processes: number;
   readonly batch: number;
   readonly killEveryMs: number;
-  readonly compactEveryMs: number;
+  /** A compaction is ordered after so many batches, besides one that may still run. */
+  readonly compactEveryBatches: number;
   readonly deliveries: Deliveries;
 }
 
@@ -45,7 +46,7 @@ export async function runRace(options: RaceOptions): Promise<RaceReport> {
   let batches = 0;
   let redelivered = 0;
   let compactions = 0;
-  let isCompactionDue = false;
+  let batchesAtCompaction = 0;
   /** Claims given back that are not to be delivered yet. */
   let hidden = 0;
   let isOver = false;
@@ -65,8 +66,9 @@ export async function runRace(options: RaceOptions): Promise<RaceReport> {
     function handOut(child: ChildProcess): void {
       if (isOver) return;
       let order: Order | null = null;
-      if (isCompactionDue) {
-        isCompactionDue = false;
+      const compacting = [...busy.values()].filter((claims) => claims.length === 0).length;
+      if (batches - batchesAtCompaction >= options.compactEveryBatches && compacting < 2) {
+        batchesAtCompaction = batches;
         order = { kind: 'compact' };
       } else if (waiting.length > 0) order = { kind: 'fold', claims: waiting.splice(0, options.batch) };
       if (order !== null) {
@@ -117,7 +119,7 @@ export async function runRace(options: RaceOptions): Promise<RaceReport> {
     function end(settle: () => void): void {
       isOver = true;
       clearInterval(killing);
-      clearInterval(compacting);
+      clearInterval(telling);
       for (const child of all) child.kill('SIGKILL');
       settle();
     }
@@ -132,9 +134,11 @@ export async function runRace(options: RaceOptions): Promise<RaceReport> {
       kills += 1;
       batchesAtKill = batches;
     }, options.killEveryMs);
-    const compacting = setInterval(() => {
-      isCompactionDue = true;
-    }, options.compactEveryMs);
+    const telling = setInterval(() => {
+      process.stdout.write(
+        `  ${waiting.length + hidden} deliveries wait, ${batches} batches, ${kills} kills\n`,
+      );
+    }, 15_000);
     for (let i = 0; i < options.processes; i++) start();
   });
 }
