@@ -31,21 +31,6 @@ describe('SipHash-2-4', () => {
     expect(fingerprint(bytesText(count))).toBe(expected);
   });
 
-  it('agrees with the package of that name for any key and text', () => {
-    const key = fc.uint8Array({ minLength: 16, maxLength: 16 });
-    const text = fc.oneof(fc.string({ maxLength: 300 }), fc.string({ unit: 'grapheme', maxLength: 60 }));
-    fc.assert(
-      fc.property(key, text, (key, text) => {
-        const words = [0, 4, 8, 12].map((at) => new DataView(key.buffer, key.byteOffset).getUint32(at, true));
-        const expected = reference.hash(words, new TextEncoder().encode(text));
-        const sipHash = createSipHash(key);
-        expect(sipHash.textToken(text)).toBe(low40(expected));
-        expect(sipHash.fingerprint(text).slice(6)).toBe(low40(expected).toString(16).padStart(10, '0'));
-      }),
-      { seed: 20265, numRuns: 2000 },
-    );
-  });
-
   it('keeps the low 40 bits as an exact integer', () => {
     expect(textToken(bytesText(15))).toBe(0x6149be45e5);
   });
