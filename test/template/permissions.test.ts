@@ -249,8 +249,8 @@ describe.each(functions)('the role of %s', (role) => {
   });
 
   it('brings no managed policy, and the function no policy of the transform', () => {
-    expect(resources[`${role}Role`]?.Properties.ManagedPolicyArns).toBeUndefined();
-    expect(resources[`${role}Function`]?.Properties.Policies).toBeUndefined();
-    expect(resources[`${role}Function`]?.Properties.Role).toEqual({ 'Fn::GetAtt': [`${role}Role`, 'Arn'] });
+    expect(resources[`${role}Role`].Properties.ManagedPolicyArns).toBeUndefined();
+    expect(resources[`${role}Function`].Properties.Policies).toBeUndefined();
+    expect(resources[`${role}Function`].Properties.Role).toEqual({ 'Fn::GetAtt': [`${role}Role`, 'Arn'] });
   });
 });

@@ -55,7 +55,7 @@ const written = (resource: Node): string =>
 
 /** What a role's own policies allow. */
 export function statementsOf(role: string): Statement[] {
-  return (resources[role]?.Properties.Policies ?? []).flatMap(({ PolicyDocument }: Node) =>
+  return resources[role].Properties.Policies.flatMap(({ PolicyDocument }: Node) =>
     PolicyDocument.Statement.map((statement: Node) => {
       if (statement.Effect !== 'Allow') throw new Error(`${role}: a statement that is not Allow`);
       return {
