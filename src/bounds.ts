@@ -5,8 +5,10 @@ export const bounds = {
   /** Entries folded in one pass: two columns each keep (token, column) below 2^40 * 2^13 = 2^53, exact in a double. */
   foldEntriesMax: 4096,
   /** Messages whose leave-one-out scores exponents are fitted to: shared ones are known from two thousand, those of 77 queues
-   *  gained 0.3 points between four thousand and eight; beyond, compaction would only take longer. */
-  fitMessagesMax: 8000,
+   *  gained 0.5 points of accuracy between four thousand and ten; beyond, compaction would only take longer. */
+  fitMessagesMax: 12_000,
+  /** Scores held for a fit, 4 bytes each: 96 MB of a function's memory. */
+  fitScoresMax: 24_000_000,
   /** Size of a served table: at 8 queues 1.4 MB, which a cold function reads, checks and compiles in some 30 ms. */
   tableBytesPerQueueMax: 175_000,
   /** A desk of few queues may hold as much as one of this many. */

@@ -25,7 +25,7 @@ const shrinkage: Shrinkage = { shared: 10, queue: 20, bias: 10 };
 
 /** Exponents that minimise the log loss of leave-one-out scores, first shared by all queues and shrunk towards the last fit,
  *  then by queue, shrunk towards the shared ones. Every message of the sample must stand in the counts; at most
- *  `fitMessagesMax` are used, evenly spread over the sample's order. Deterministic.
+ *  `fitMessagesMax` are used (fewer of many queues, see `fitScoresMax`), evenly spread over the sample's order. Deterministic.
  *  Cost: O(messages · queues · (tokens + blocks²)). */
 export function fitTable(
   counts: Counts,
@@ -37,7 +37,8 @@ export function fitTable(
   const hold = chooseHold(counts, projected, previousFit, referenceEpoch);
   const table = serve(counts, { ...previousFit, hold: holdAll }, options);
   const queues = table.counts.columns.map((c) => c.queue);
-  const own = spread(sample, bounds.fitMessagesMax)
+  const messagesMax = Math.floor(bounds.fitScoresMax / (queues.length * previousFit.blocks.length));
+  const own = spread(sample, Math.min(bounds.fitMessagesMax, messagesMax))
     .map(({ features, queue, epoch }) => ({
       features,
       queue: queues.indexOf(queue),
@@ -77,20 +78,34 @@ function leaveOneOut(
   own: readonly { readonly features: Features; readonly queue: number; readonly weight: number }[],
 ): { readonly active: readonly number[]; readonly scores: LabelledScores } {
   const queues = scorer.queues.length;
-  const all = own.map((message) => Float32Array.from(blockScores(scorer, message.features, message)));
-  const active = [...scorer.fit.blocks.keys()].filter((b) =>
-    all.some((x) => x.subarray(b * queues, (b + 1) * queues).some((score) => score !== 0)),
-  );
-  const blocks = active.length;
+  const blocks = scorer.fit.blocks.length;
   const x = new Float32Array(own.length * queues * blocks);
-  all.forEach((score, i) => {
-    for (let k = 0; k < queues; k++) {
-      for (let b = 0; b < blocks; b++) x[(i * queues + k) * blocks + b] = score[active[b] * queues + k];
+  const isActive = new Array<boolean>(blocks).fill(false);
+  own.forEach((message, i) => {
+    const scores = blockScores(scorer, message.features, message);
+    for (let b = 0; b < blocks; b++) {
+      for (let k = 0; k < queues; k++) {
+        x[(i * queues + k) * blocks + b] = scores[b * queues + k];
+        if (scores[b * queues + k] !== 0) isActive[b] = true;
+      }
     }
   });
+  const active = [...isActive.keys()].filter((b) => isActive[b]);
+  // Moved forward in place: no score is overwritten before it is read.
+  const rows = own.length * queues;
+  for (let row = 0; row < rows; row++)
+    active.forEach((b, at) => {
+      x[row * active.length + at] = x[row * blocks + b];
+    });
   return {
     active,
-    scores: { messages: own.length, queues, blocks, x, truth: Uint32Array.from(own, (m) => m.queue) },
+    scores: {
+      messages: own.length,
+      queues,
+      blocks: active.length,
+      x,
+      truth: Uint32Array.from(own, (m) => m.queue),
+    },
   };
 }
 

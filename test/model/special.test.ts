@@ -1,7 +1,7 @@
 import gammaln from '@stdlib/math-base-special-gammaln';
 import fc from 'fast-check';
 import { describe, expect, test } from 'vitest';
-import { logBetaBinomial, logGammaDrop, logHits } from '../../src/model/special.ts';
+import { logBetaBinomial, logGamma, logGammaDrop, logHits } from '../../src/model/special.ts';
 
 describe('evidence of hits', () => {
   test('by hand', () => {
@@ -48,6 +48,18 @@ describe('evidence of hits', () => {
       }),
     );
   });
+});
+
+test('log gamma agrees with the library', () => {
+  fc.assert(
+    fc.property(fc.double({ min: 1e-6, max: 1e6, noNaN: true }), (z) => {
+      expect(Math.abs(logGamma(z) - gammaln(z))).toBeLessThan(1e-13 * Math.max(1, Math.abs(gammaln(z))));
+    }),
+    { numRuns: 1000 },
+  );
+  // Γ(5) = 4! = 24; Γ(1/2) = √π.
+  expect(logGamma(5)).toBeCloseTo(Math.log(24), 13);
+  expect(logGamma(0.5)).toBeCloseTo(0.5 * Math.log(Math.PI), 13);
 });
 
 describe('difference of two log gammas', () => {
