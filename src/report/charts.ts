@@ -54,13 +54,18 @@ export function routingCurve(routing: Routing, label: string): Markup {
     label,
     html`${rows}${columns}<line class="axis" x1="0" x2="100%" y1="100%" y2="100%"></line>
 <svg width="100%" height="100%" viewBox="0 0 100 100" preserveAspectRatio="none" overflow="visible"><path class="curve" d="${path}"></path></svg>
-${cheapest && html`<svg x="${pc(x(cheapest.share))}" y="${pc(y(cheapest.right))}" overflow="visible"><path class="diamond" d="${symbol(symbolDiamond, 110)() ?? ''}"></path></svg>`}
+${isDiamondShown(routing) && cheapest && html`<svg x="${pc(x(cheapest.share))}" y="${pc(y(cheapest.right))}" overflow="visible"><path class="diamond" d="${symbol(symbolDiamond, 110)() ?? ''}"></path></svg>`}
 ${
   todayAt &&
   html`<circle class="dot" cx="${pc(todayAt.x)}" cy="${pc(todayAt.y)}" r="8"></circle>
-<text x="${pc(todayAt.x)}" y="${pc(todayAt.y)}" dy="-14" text-anchor="${todayAt.x > 80 ? 'end' : 'middle'}">today</text>`
+<text x="${pc(todayAt.x)}" y="${pc(todayAt.y)}" dx="-12" dy="18" text-anchor="end">today</text>`
 }`,
   );
+}
+
+/** Beside the point of today's rule it could not be told apart. */
+export function isDiamondShown({ cheapest, today }: Routing): boolean {
+  return cheapest !== null && Math.abs(cheapest.share - today.share) > 0.03;
 }
 
 const kinds = ['routed', 'guarded', 'held'] as const;

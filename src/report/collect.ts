@@ -139,7 +139,7 @@ async function collectDrift(
       words: await recoverWords(
         readMessage,
         extractor,
-        risen.slice(0, 12),
+        risen.slice(0, 8),
         lately.map(({ message }) => message),
       ),
     });

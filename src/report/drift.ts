@@ -19,7 +19,7 @@ export interface DriftEvidence {
 /** Share of tokens expected to change before anything is seen: few do. */
 const changedShare = 0.01;
 /** A token seen in fewer messages cannot tell. */
-const messagesMin = 3;
+const messagesMin = 4;
 
 /** Closed-form evidence that a queue's words changed. For each token the evidence of two rates (before, since) stands against
  *  that of one, all under Beta(½, ½); a token counts as changed with probability 0.01 before the data, so that thousands of

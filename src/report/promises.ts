@@ -5,6 +5,9 @@ import type { PromiseBand, Promises } from './report-data.ts';
 /** Fewer confirmations than this and a band is joined with the next: an interval from fewer says nothing. */
 const bandMessagesMin = 30;
 
+/** From here on bands are one: over 99 % nobody acts differently, and their edges (99.48 %, 99.75 %) only puzzle. */
+const surelyBand = 10;
+
 /** The reliability record by bands of the stated probability, neighbouring bands joined until each holds enough.
  *  `record`: [bands * 4], see Counts. Counts below zero (a correction whose base was aged) count as none. */
 export function readPromises(record: Float64Array): Promises {
@@ -23,7 +26,7 @@ export function readPromises(record: Float64Array): Promises {
     audit.hits += auditHit;
     audit.misses += auditMiss;
     const isLast = b === recordBands - 1;
-    if (hits + misses < bandMessagesMin && !isLast) continue;
+    if ((hits + misses < bandMessagesMin || b >= surelyBand) && !isLast) continue;
     if (hits + misses > 0) bands.push(bandOf(from, edges[b + 1] as number, hits, misses));
     from = edges[b + 1] as number;
     hits = 0;

@@ -5,6 +5,7 @@ import * as answers from './answers.ts';
 import {
   bar,
   heldLine,
+  isDiamondShown,
   keySwatch,
   patterns,
   promiseRow,
@@ -103,7 +104,7 @@ function routing(data: ReportData): Markup {
     curve.length === 0
       ? html`<p class="quiet">Nothing to show yet.</p>`
       : html`<figure>${routingCurve(data.routing, label)}<figcaption>Across: share routed by itself. Up: share of those that was right.
-${today.right.share !== null && 'The point is today’s rule. '}${cheapest && html`The diamond is the single limit (${percent(cheapest.probability)}) that would have cost least.`}</figcaption></figure>
+${today.right.share !== null && 'The point is today’s rule. '}${cheapest && (isDiamondShown(data.routing) ? html`The diamond is the single limit (${percent(cheapest.probability)}) that would have cost least.` : html`The single limit that would have cost least (${percent(cheapest.probability)}) lies beside it.`)}</figcaption></figure>
 <h3>Staff time for a thousand messages</h3><ul class="bars">${(bars || []).map(
           ([name, value, kind]) =>
             html`<li><span class="number">${minutes(value)}</span>${name}<svg aria-hidden="true">${bar(value / (most || 1), kind)}</svg></li>`,
@@ -163,7 +164,7 @@ function drift(data: ReportData): Markup {
     html`<p class="answer">${answers.driftAnswer(data)}</p>`,
     data.drift.length === 0
       ? html`<p class="quiet">Nothing to show.</p>`
-      : html`<ul class="bars">${data.drift.map(
+      : html`<ul class="bars">${data.drift.slice(0, 20).map(
           (
             each,
           ) => html`<li><span class="number">${strength(each.decibans)}</span>${answers.titleOf(data, each.queue)}
@@ -213,6 +214,7 @@ function newQueues(data: ReportData): Markup {
           (group, i) => html`<h3>Group ${i + 1}: ${plural(group.messages.length, 'message')}</h3>
 <p>${group.words.length > 0 ? html`Typical words: <span class="words">${group.words.map((word) => plainLine(word, 40)).join(', ')}</span>.` : 'None of these messages is left to read.'}
 A queue of their own is ${surely(group.decibans)} the better account of them.</p>
+<p class="quiet">To open one and confirm these messages for it: <code>tallypost queue open ID --title TITLE --proposal ${i + 1}</code></p>
 <details><summary>The messages</summary><ul>${group.messages.map((message) => html`<li><code>${plainLine(message, 80)}</code></li>`)}</ul></details>`,
         ),
   );

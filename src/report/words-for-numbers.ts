@@ -3,6 +3,7 @@
 /** 0.932 as `93 in 100`; near the ends with one place more, so that 99.6 does not read as all. */
 export function inHundred(share: number): string {
   const hundred = share * 100;
+  if (hundred > 99.95 && hundred < 100) return 'over 99.9 in 100';
   const isNearEnd = hundred > 0 && hundred < 100 && (hundred > 99 || hundred < 1);
   return `${isNearEnd ? hundred.toFixed(1) : Math.round(hundred)} in 100`;
 }

@@ -1,5 +1,6 @@
 import { type Command, InvalidArgumentError } from 'commander';
 import { changeQueue, type QueueChange, type QueueResult } from '../../ledger/queues.ts';
+import { openProposed } from '../../report/open-proposed.ts';
 import { plural } from '../layout.ts';
 import { openSession, type StoreFlags, withDryRun, withStore } from '../store-session.ts';
 import { type Answer, answer, exitCodes, type Terminal } from '../terminal.ts';
@@ -11,6 +12,8 @@ interface TitleFlags extends StoreFlags {
 interface OpenFlags extends StoreFlags {
   readonly title: string;
   readonly wrongMinutes?: number;
+  readonly proposal?: number;
+  readonly by: string;
 }
 
 export function addQueue(program: Command, terminal: Terminal, end: (code: number) => void): void {
@@ -47,14 +50,47 @@ export function addQueue(program: Command, terminal: Terminal, end: (code: numbe
     .argument('<queue>')
     .requiredOption('--title <text>', 'what people read')
     .option('--wrong-minutes <minutes>', 'staff minutes lost by a wrong route to it', readMinutes)
-    .action((id: string, flags: OpenFlags) =>
-      act(flags, {
+    .option(
+      '--proposal <group>',
+      'confirm for it the messages of a group that the latest report proposes',
+      readGroup,
+    )
+    .option('--by <name>', 'who confirms them', 'report proposal')
+    .action(async (id: string, flags: OpenFlags) => {
+      const { proposal } = flags;
+      if (proposal !== undefined)
+        return end(await answer(terminal, flags.json === true, () => openWith(id, proposal, flags)));
+      return act(flags, {
         kind: 'open',
         queue: id,
         title: flags.title,
         ...(flags.wrongMinutes === undefined ? {} : { wrongRouteMinutes: flags.wrongMinutes }),
-      }),
-    );
+      });
+    });
+}
+
+function readGroup(text: string): number {
+  const group = Number(text);
+  if (!Number.isInteger(group) || group < 1) throw new InvalidArgumentError('Expected a number from 1.');
+  return group;
+}
+
+async function openWith(queue: string, group: number, flags: OpenFlags): Promise<Answer> {
+  const { world, desk, extractor } = await openSession(flags.store);
+  const dryRun = flags.dryRun === true;
+  const proposal = { group, queue, title: flags.title, by: flags.by, dryRun };
+  const result = await openProposed(world, desk, extractor.schema, proposal);
+  const isDone = result.opened.kind !== 'lost-race' && result.opened.deskFile !== 'unfinished';
+  const confirmed = `${plural(result.confirmed.length, 'message')} ${dryRun ? 'would be' : 'are'} confirmed for it${dryRun ? '' : '; the next tallypost run folds them'}`;
+  const left =
+    result.left.length === 0
+      ? ''
+      : `\n${plural(result.left.length, 'message')} of the group left as they are: confirmed meanwhile, or gone`;
+  return {
+    json: result,
+    text: `${describe(result.opened)}\n${confirmed}${left}`,
+    exitCode: isDone ? exitCodes.done : exitCodes.failed,
+  };
 }
 
 function readMinutes(text: string): number {
