@@ -17,6 +17,10 @@ export const bounds = {
   newTokenEpochs: 8,
   /** Dropped tokens seen this often are listed in the table, lest a later entry take one for new; rarer ones are as good as new. */
   droppedSeenMin: 5,
+  /** Messages of a queue before and since that drift is looked for in: fewer show it only when it is plain to everybody. */
+  driftMessagesMin: 10,
+  /** Tokens named for each finding of drift: enough to tell what happened. */
+  driftTokensMax: 10,
   /** Ratios that a scorer remembers for each reading: 8 MB; the tokens that make up most of all mail. */
   rememberedRatiosMax: 1_000_000,
 
@@ -116,8 +120,9 @@ export const bounds = {
   directoryAttemptsMax: 1000,
   /** Directory store: temporary files of crashed processes are swept after this; no write takes nearly as long. */
   temporaryAgeMsMax: 60 * 60 * 1000,
-  /** Directory store: what stands for a deleted object is swept after this; no process stalls so long between two calls. */
-  tombstoneAgeMsMax: 24 * 60 * 60 * 1000,
+  /** Directory store: what stands for a deleted object is swept after this; no process stalls so long between two calls, and
+   *  listings of a busy folder do not have to pass over a day's deletions. */
+  tombstoneAgeMsMax: 10 * 60 * 1000,
 
   // The desk's file (src/desk). A desk that needs more of any is better served by two desks.
   /** All lists below filled with short items fit; read at every cold start. */
