@@ -68,7 +68,7 @@ const roundsAtHours = [12, 24] as const;
  *  pass in a minute. */
 const hasCompaction = (day: number) => day < 7 || day % 7 === 6;
 /** Exponents move little between two nights: the demo fits them again only when there is this much more to learn from. */
-const fitGrowth = 2;
+const fitGrowth = 1.5;
 
 /** Plays a scenario on an empty store through the very functions that run in the cloud, fed with the events that they get
  *  there. The same seed plays the same demo. */

@@ -201,8 +201,9 @@ function scoreRest(run: Run, learned: readonly Remembered[]) {
 
 /** Folded messages wait for the next router to load the model: at most this share of what was learned. */
 const waitingShareMax = 0.01;
-/** A compaction whenever the learned messages grew by this factor. */
-const compactionGrowth = 1.5;
+/** A compaction whenever the learned messages grew by this factor: exponents move while there is little, and later fitting takes
+ *  its time. */
+const compactionGrowth = (messages: number) => (messages < 1000 ? 1.25 : 1.5);
 const firstCompactionMessages = 40;
 
 /** Predicts each message, then folds it. */
@@ -218,7 +219,7 @@ function progress(run: Run, learned: readonly Remembered[]) {
     if (learner.messages >= nextCompaction) {
       learner.compact();
       compactions += 1;
-      nextCompaction = Math.ceil(learner.messages * compactionGrowth);
+      nextCompaction = Math.ceil(learner.messages * compactionGrowth(learner.messages));
       scorer = learner.refresh();
     } else if (learner.waiting > learner.messages * waitingShareMax) scorer = learner.refresh();
     run.spent.learnMs += performance.now() - startedMs;
@@ -235,7 +236,7 @@ function progress(run: Run, learned: readonly Remembered[]) {
     mode: 'predict each message, then fold it',
     note:
       `${order}; the model is loaded again once more than ${waitingShareMax * 100} % of what was learned waits, ` +
-      `and compacted whenever it grew by half from ${firstCompactionMessages} messages on (${compactions} times)`,
+      `and compacted from ${firstCompactionMessages} messages on whenever it grew by a quarter, from 1,000 on by half (${compactions} times)`,
   };
 }
 
