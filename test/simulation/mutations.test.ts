@@ -109,24 +109,25 @@ vi.mock('../../src/ledger/fold.ts', async (original) => {
   };
 });
 
-const mistakes = [
-  'commits without looking whether its segment was voided',
-  'tries again without looking for its own write',
-  'looks for its own write beside the base only',
-  'commits what was worked out before a restore',
-  'takes over without voiding',
-  'subtracts what never landed',
-  'does not know a repeated delivery',
-  'lets the last delivered stand, not the newest',
-  'forgets what was absorbed',
-  'goes on without knowing whether a history was written',
-  'does not raise the version',
-  'overwrites segments that landed during a compaction',
-  'deletes without raising the floor',
-  'forgets what is void at once',
-  'keeps superseded objects after an erasure',
-  'acknowledges before landing',
-];
+/** Each with a seed that found it once, tried first to save time; then all others. */
+const mistakes: Record<string, number> = {
+  'commits without looking whether its segment was voided': 3,
+  'tries again without looking for its own write': 2,
+  'looks for its own write beside the base only': 775,
+  'commits what was worked out before a restore': 16,
+  'takes over without voiding': 1,
+  'subtracts what never landed': 3,
+  'does not know a repeated delivery': 14,
+  'lets the last delivered stand, not the newest': 1,
+  'forgets what was absorbed': 1,
+  'goes on without knowing whether a history was written': 565,
+  'does not raise the version': 1,
+  'overwrites segments that landed during a compaction': 10,
+  'deletes without raising the floor': 957,
+  'forgets what is void at once': 28,
+  'keeps superseded objects after an erasure': 10,
+  'acknowledges before landing': 6,
+};
 
 /** Mistakes in the store's conditional writes, made at the store. */
 const storeMistakes: Record<string, (simulation: Simulation) => void> = {
@@ -144,7 +145,8 @@ function ignoreConditions({ objects }: Simulation, prefix: string): void {
 async function findSeed(name: string): Promise<{ seed: number; error: unknown } | null> {
   mistake.name = name;
   try {
-    for (let seed = 1; seed <= 2000; seed++) {
+    const seeds = [mistakes[name] ?? 1, ...Array.from({ length: 2000 }, (_, i) => i + 1)];
+    for (const seed of seeds) {
       const simulation = new Simulation(seed);
       storeMistakes[name]?.(simulation);
       try {
@@ -160,7 +162,7 @@ async function findSeed(name: string): Promise<{ seed: number; error: unknown } 
 }
 
 describe('a protocol that', () => {
-  it.each([...mistakes, ...Object.keys(storeMistakes)])(
+  it.each([...Object.keys(mistakes), ...Object.keys(storeMistakes)])(
     '%s is found out within 2,000 seeds',
     async (name) => {
       const found = await findSeed(name);

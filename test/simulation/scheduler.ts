@@ -16,7 +16,7 @@ export interface FaultRates {
   readonly spuriouslyLost: number;
   /** The process is not chosen for the next hundreds of steps. */
   readonly stall: number;
-  /** The next dozens of writes of one object fail, some of them to happen later. */
+  /** For a while all writes of one object fail, or happen much later. */
   readonly outage: number;
 }
 
@@ -65,7 +65,7 @@ export class Scheduler {
   failure: unknown = null;
   readonly #parked: Parked[] = [];
   #spawned = 0;
-  #outage = { label: '', left: 0, lateShare: 0 };
+  #outage = { label: '', untilStep: 0, lateShare: 0 };
   #running = 0;
 
   constructor(random: () => number, startMs: number) {
@@ -153,7 +153,7 @@ export class Scheduler {
   /** From now on nothing goes wrong any more. */
   calm(): void {
     this.rates = noFaults;
-    this.#outage.left = 0;
+    this.#outage.untilStep = 0;
   }
 
   kill(process: Process): void {
@@ -162,18 +162,18 @@ export class Scheduler {
     this.#onCrash.get(process)?.();
   }
 
+  get #isOut(): boolean {
+    return this.steps < this.#outage.untilStep;
+  }
+
   #drawFate(label: string, isWrite: boolean, isConditional: boolean): keyof FaultRates | 'fine' {
     const { rates } = this;
-    if (isWrite && this.random() < rates.outage)
-      this.#outage = {
-        label,
-        left: 12 + Math.floor(this.random() * 30),
-        lateShare: this.random() < 0.5 ? 0.2 : 1,
-      };
-    if (isWrite && this.#outage.left > 0 && this.#outage.label === label) {
-      this.#outage.left -= 1;
-      return this.random() < this.#outage.lateShare ? 'late' : 'failBefore';
+    if (isWrite && this.#outage.untilStep <= this.steps && this.random() < rates.outage) {
+      const untilStep = this.steps + 100 + Math.floor(this.random() * 300);
+      this.#outage = { label, untilStep, lateShare: [0, 0.1, 1][Math.floor(this.random() * 3)] };
     }
+    const isOut = this.#isOut && this.#outage.label === label;
+    if (isWrite && isOut) return this.random() < this.#outage.lateShare ? 'late' : 'failBefore';
     let x = this.random();
     for (const fate of ['crash', 'failBefore', 'failAfter', 'late', 'duplicate', 'spuriouslyLost'] as const) {
       if (!isWrite && fate !== 'crash' && fate !== 'failBefore') continue;
@@ -192,8 +192,13 @@ export class Scheduler {
 
   /** A lost answer is noticed after a time-out, and what was held up on the way arrives whenever it will. */
   #later(process: Process | null, run: () => void): void {
-    const isSoon = this.random() < 0.5;
-    this.#parked.push({ process, run, fromStep: isSoon ? 0 : this.steps + Math.floor(this.random() * 300) });
+    const isSlow = this.#isOut && this.#outage.lateShare === 1;
+    const isSoon = !isSlow && this.random() < 0.5;
+    this.#parked.push({
+      process,
+      run,
+      fromStep: isSoon ? 0 : this.steps + Math.floor((isSlow ? 200 : 0) + this.random() * 300),
+    });
   }
 
   #choose(): number {
