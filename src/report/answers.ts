@@ -41,8 +41,8 @@ export function promisesAnswer({ promises }: ReportData): string {
 }
 
 export function saidOf({ from, to }: PromiseBand): string {
-  if (from === 0) return `under ${edge(to)} %`;
-  return to === 1 ? `over ${edge(from)} %` : `${edge(from)} to ${edge(to)} %`;
+  if (from === 0) return `under ${edge(to)}\u00a0%`;
+  return to === 1 ? `over ${edge(from)}\u00a0%` : `${edge(from)} to ${edge(to)}\u00a0%`;
 }
 
 function edge(probability: number): string {

@@ -10,7 +10,8 @@ export function inHundred(share: number): string {
 
 export function percent(share: number): string {
   const hundred = share * 100;
-  return `${hundred > 99 && hundred < 100 ? hundred.toFixed(1) : Math.round(hundred)} %`;
+  // A no-break space, so that the sign never begins a line.
+  return `${hundred > 99 && hundred < 100 ? hundred.toFixed(1) : Math.round(hundred)}\u00a0%`;
 }
 
 export function count(value: number): string {

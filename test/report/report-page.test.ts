@@ -120,13 +120,13 @@ describe('its sentences', () => {
   it('answer how far to trust it, with chance allowed for', () => {
     // 1726/1778 = 97.1 %; Wilson 95 %: 0.9618 to 0.9776.
     expect(answers.trustAnswer(sampleReport)).toBe(
-      'Of 1,778 messages that it routed by itself and that people confirmed since, 97 in 100 were right (between 96 % and 98 %, allowing for chance).',
+      'Of 1,778 messages that it routed by itself and that people confirmed since, 97 in 100 were right (between 96\u00a0% and 98\u00a0%, allowing for chance).',
     );
   });
 
   it('name the broken promise and say that the others were kept', () => {
     expect(answers.promisesAnswer(sampleReport)).toBe(
-      'It was too sure of itself where it said 82 to 91 %: fewer came true than it said. Elsewhere its probabilities came true.',
+      'It was too sure of itself where it said 82 to 91\u00a0%: fewer came true than it said. Elsewhere its probabilities came true.',
     );
   });
 
@@ -154,7 +154,7 @@ describe('its sentences', () => {
     [inHundred(0.996), '99.6 in 100'],
     [inHundred(1), '100 in 100'],
     [inHundred(0.004), '0.4 in 100'],
-    [percent(0.934), '93 %'],
+    [percent(0.934), '93\u00a0%'],
     [minutes(830), '14 hours'],
     [minutes(0.4), 'under a minute'],
     [listed(['a', 'b', 'c']), 'a, b and c'],

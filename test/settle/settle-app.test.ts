@@ -239,7 +239,7 @@ describe('the page for held messages', () => {
     expect(done.headers.location).toBe(`/message?m=${encodeURIComponent(second!.message)}`);
     const next = await open(second!.message);
     const [, before, after] =
-      /was thought (?:under |over )?(\d+) % likely for it; with this one counted it would be <strong>(?:over )?(\d+) %/.exec(
+      /was thought (?:under |over )?(\d+)\s% likely for it; with this one counted it would be <strong>(?:over )?(\d+)\s%/.exec(
         next.body,
       ) ?? [];
     expect(Number(after)).toBeGreaterThan(Number(before));
