@@ -131,3 +131,19 @@ export async function keysOf(store: Store, prefix = ''): Promise<string[]> {
   for await (const { key } of store.list(prefix)) found.push(key);
   return found;
 }
+
+/** Counts the calls of a store by name. */
+export function countingStore(inner: Store): { store: Store; calls: Record<string, number> } {
+  const calls: Record<string, number> = {};
+  const store = new Proxy(inner, {
+    get(target, name: keyof Store) {
+      const member = target[name];
+      if (typeof member !== 'function') return member;
+      return (...args: unknown[]) => {
+        calls[name] = (calls[name] ?? 0) + 1;
+        return (member as (...a: unknown[]) => unknown).apply(target, args);
+      };
+    },
+  });
+  return { store, calls };
+}

@@ -3,8 +3,17 @@ import { compact } from '../../src/ledger/compaction.ts';
 import { foldClaims } from '../../src/ledger/fold.ts';
 import { recount } from '../../src/ledger/recount.ts';
 import { createMemoryStore } from '../../src/store/memory.ts';
-import type { Store } from '../../src/store/store.ts';
-import { claim, countsNow, desk, fold, schema, standings, startWeek, testWorld } from './fixture.ts';
+import {
+  claim,
+  countingStore,
+  countsNow,
+  desk,
+  fold,
+  schema,
+  standings,
+  startWeek,
+  testWorld,
+} from './fixture.ts';
 
 const kinds = (outcomes: readonly { kind: string }[]) => outcomes.map((o) => o.kind);
 
@@ -137,18 +146,3 @@ describe('a fold', () => {
     expect((await recount(world, desk, schema)).differences).toEqual([]);
   });
 });
-
-function countingStore(inner: Store): { store: Store; calls: Record<string, number> } {
-  const calls: Record<string, number> = {};
-  const store = new Proxy(inner, {
-    get(target, name: keyof Store) {
-      const member = target[name];
-      if (typeof member !== 'function') return member;
-      return (...args: unknown[]) => {
-        calls[name] = (calls[name] ?? 0) + 1;
-        return (member as (...a: unknown[]) => unknown).apply(target, args);
-      };
-    },
-  });
-  return { store, calls };
-}

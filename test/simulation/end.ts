@@ -1,11 +1,10 @@
 import { bounds } from '../../src/bounds.ts';
 import { compact } from '../../src/ledger/compaction.ts';
-import { decodeCounts, encodeCounts } from '../../src/model/codec-counts.ts';
-import { decodeEntries } from '../../src/model/codec-entries.ts';
-import { decodeTable } from '../../src/model/codec-table.ts';
+import { encodeCounts } from '../../src/model/codec-counts.ts';
 import type { Entry } from '../../src/model/counts.ts';
 import { emptyCounts, foldEntries } from '../../src/model/fold.ts';
 import { desk, featuresOf, schema, tokenOf } from '../ledger/fixture.ts';
+import { tokensIn } from '../ledger/tokens-in.ts';
 import { compareRecount, fitModel, foldDrops, route, said } from './actors.ts';
 import { fail } from './checker.ts';
 import type { Simulation } from './simulation.ts';
@@ -76,17 +75,6 @@ function checkErased({ objects }: Simulation, message: string): void {
     const holds = tokensIn(key, body).includes(token);
     if (holds) fail(`${key} holds a token of the erased ${message}`);
   }
-}
-
-function tokensIn(key: string, body: Uint8Array): number[] {
-  if (key.startsWith('model/bases/')) return [...decodeCounts(body, schema, key).regions[0].tokens];
-  if (key.startsWith('model/tables/')) {
-    const table = decodeTable(body, schema, key);
-    return [...table.counts.regions[0].tokens, ...table.pruned.flatMap((p) => [...p])];
-  }
-  if (key.startsWith('model/segments/'))
-    return decodeEntries(body, schema, key).flatMap(({ features }) => [...features.regions[0]]);
-  return [];
 }
 
 /** After the horizon nothing is left but what the manifest names. */
