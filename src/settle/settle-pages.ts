@@ -70,7 +70,8 @@ export function messagePage(frame: Frame, view: MessageView): string {
   const { waiting, message, likelihood, total, last, nowMs } = view;
   const balance = likelihood.balances[0];
   const mark = createMarker(wordWeights(balance));
-  const subject = messageTitle(message, 200);
+  const isForm = message.form !== null && message.subject === '';
+  const subject = isForm ? `Form “${plainLine(message.form.id, 100)}”` : messageTitle(message, 200);
   return page(
     frame,
     subject,
@@ -78,7 +79,7 @@ export function messagePage(frame: Frame, view: MessageView): string {
 <div class="bench"><article aria-labelledby="subject">
 <p class="quiet">${total === 1 ? 'The only one that waits' : `One of ${total.toLocaleString('en-GB')} that wait`}, for ${waited(waiting.atMs, nowMs)}. <strong>${view.whyWords}</strong></p>
 <h1 id="subject">${mark(subject)}</h1>
-${facts(message)}
+${facts(message, mark)}
 ${text(message, mark)}
 </article>
 <div><form method="post" action="${frame.base}/settle" aria-labelledby="where"><h2 id="where">Where does it belong?</h2>
@@ -132,38 +133,53 @@ function lastStrip({ base }: Frame, { confirmation, title, subject, learned, tok
 <button data-key="u">Take it back <kbd>u</kbd></button></form>`;
 }
 
-function facts(message: Message): Markup {
-  const rows: [string, string][] = [];
-  if (message.from !== null) rows.push(['From', message.from.address]);
-  if (message.form !== null) rows.push(['Form', message.form.id]);
-  else if (message.recipients.length > 0)
+/** A form's short answers stand with the facts; only what was written at length gets a sheet of its own. */
+const shortCharsMax = 80;
+
+function isShort(value: string): boolean {
+  return value.length <= shortCharsMax && !value.includes('\n');
+}
+
+function facts(message: Message, mark: (text: string) => Content): Markup {
+  const rows: [string, Content][] = [];
+  const { form, from, recipients, sentAtMs, attachments } = message;
+  if (from !== null) rows.push(['From', plainLine(from.address, 300)]);
+  if (form === null && recipients.length > 0)
     rows.push([
       'To',
-      message.recipients
-        .slice(0, 3)
-        .map(({ address }) => address)
-        .join(', '),
+      plainLine(
+        recipients
+          .slice(0, 3)
+          .map(({ address }) => address)
+          .join(', '),
+        300,
+      ),
     ]);
-  if (message.sentAtMs !== null)
-    rows.push(['Sent', `${new Date(message.sentAtMs).toISOString().slice(0, 16).replace('T', ' ')} UTC`]);
-  if (message.attachments.length > 0)
+  if (sentAtMs !== null)
+    rows.push(['Sent', `${new Date(sentAtMs).toISOString().slice(0, 16).replace('T', ' ')} UTC`]);
+  if (attachments.length > 0)
     rows.push([
       'Attached',
-      message.attachments
+      attachments
         .slice(0, 10)
         .map(({ kind, bytes }) => `${kind}, ${Math.ceil(bytes / 1024)} KB`)
         .join('; '),
     ]);
-  return html`<dl class="facts">${rows.map(([name, value]) => html`<dt>${name}</dt><dd>${plainLine(value, 300)}</dd>`)}</dl>`;
+  for (const [name, value] of Object.entries(form?.fields ?? {})) {
+    if (isShort(value)) rows.push([plainLine(name, 40), mark(value)]);
+  }
+  return html`<dl class="facts">${rows.map(([name, value]) => html`<dt>${name}</dt><dd dir="auto">${value}</dd>`)}</dl>`;
 }
 
 /** The writer's own words in front, everything else folded away below. */
 function text(message: Message, mark: (text: string) => Content): Content {
   if (message.form !== null) {
-    return Object.entries(message.form.fields).map(
-      ([name, value]) =>
-        html`<h2>${plainLine(name, 100)}</h2><div class="sheet" dir="auto">${mark(value)}</div>`,
-    );
+    return Object.entries(message.form.fields)
+      .filter(([, value]) => !isShort(value))
+      .map(
+        ([name, value]) =>
+          html`<h2>${plainLine(name, 100)}</h2><div class="sheet" dir="auto">${mark(value)}</div>`,
+      );
   }
   const hasMore = message.text.trim() !== message.ownText.trim();
   return html`<div class="sheet" dir="auto">${message.ownText.trim() === '' ? html`<span class="quiet">No text.</span>` : mark(message.ownText.trim())}</div>

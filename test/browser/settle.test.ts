@@ -87,7 +87,7 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
       await expectAccessible(page);
       await expectNoSideways(page);
       await page.keyboard.press('u');
-      await page.waitForFunction('!document.querySelector(".last")');
+      await page.waitForSelector('.last', { state: 'detached' });
       await page.keyboard.press('l');
       await page.waitForSelector('.waiting');
       await keepScreenshot(page, `settle-list-${name}`);
@@ -112,7 +112,7 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
     await page.keyboard.press('Enter');
     await page.waitForSelector('.last');
     await page.click('.last button');
-    await page.waitForFunction('!document.querySelector(".last")');
+    await page.waitForSelector('.last', { state: 'detached' });
     expect(await heldOf(desk.store, 'no keys')).toBeNull();
     await page.click('#keys');
   }, 60_000);
@@ -132,7 +132,7 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
     await page.keyboard.press('Enter');
     await page.waitForURL(/\/message\?m=/);
     await again.keyboard.press('Enter');
-    await again.waitForFunction('document.body.textContent.includes("used before")');
+    await again.getByText('used before').waitFor();
     desk.setNow(Date.UTC(2026, 4, 8));
     expect(await say(link)).toContain('too old');
     desk.setNow(Date.UTC(2026, 4, 6));

@@ -1,4 +1,5 @@
 import { beforeAll, describe, expect, it } from 'vitest';
+import { createReportHandler } from '../../src/handlers/report.ts';
 import { recount } from '../../src/ledger/recount.ts';
 import { collectReport } from '../../src/report/collect.ts';
 import { openProposed } from '../../src/report/open-proposed.ts';
@@ -102,6 +103,19 @@ describe('the report of a store', () => {
     const page = reportPage(written.data);
     for (const text of visits) expect(page).not.toContain(text);
     expect(page).not.toContain('@school.example');
+  });
+
+  it('is written by the function that a schedule starts, which logs where and nothing of any message', async () => {
+    const from = desk.logged.length;
+    const result = await createReportHandler(desk.deps)({ 'detail-type': 'Scheduled Event' });
+    expect(result.page).toBe('reports/2026-05-06.html');
+    expect(desk.logged.slice(from)).toEqual([{ level: 'info', event: 'report', tookMs: 0, ...result }]);
+    const broken = createReportHandler({
+      ...desk.deps,
+      loadDesk: () => Promise.reject(new Error('no desk')),
+    });
+    await expect(broken({})).rejects.toThrow('no desk');
+    expect(desk.logged.at(-1)).toMatchObject({ level: 'error', event: 'report-failed' });
   });
 
   it('opens the proposed queue and confirms its messages, once, as a helpdesk would', async () => {

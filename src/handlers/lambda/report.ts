@@ -1,0 +1,4 @@
+import { createReportHandler } from '../report.ts';
+import { handlerFrom } from './environment.ts';
+
+export const handler = handlerFrom(createReportHandler);
