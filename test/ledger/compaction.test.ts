@@ -1,0 +1,138 @@
+import { describe, expect, it } from 'vitest';
+import { bounds } from '../../src/bounds.ts';
+import { compact } from '../../src/ledger/compaction.ts';
+import { recount } from '../../src/ledger/recount.ts';
+import { createMemoryStore } from '../../src/store/memory.ts';
+import type { Store } from '../../src/store/store.ts';
+import { claim, countsNow, desk, fold, keysOf, schema, standings, testWorld } from './fixture.ts';
+
+describe('a compaction', () => {
+  it('absorbs the segments without changing a cell', async () => {
+    const world = testWorld();
+    await fold(world, claim('m1', 'billing'), claim('m2', 'leaks'));
+    await fold(world, claim('m1', 'leaks', 1));
+    const before = await countsNow(world);
+    expect(await compact(world, desk, schema)).toMatchObject({
+      kind: 'compacted',
+      version: 3,
+      messages: 2,
+      segments: 2,
+    });
+    expect(await countsNow(world)).toEqual(before);
+    expect(await compact(world, desk, schema)).toMatchObject({ kind: 'nothing-new', version: 3 });
+  });
+
+  it('leaves a segment that lands meanwhile where it is', async () => {
+    const inner = createMemoryStore();
+    const world = testWorld(1, inner);
+    await fold(world, claim('m1', 'billing'));
+    let isFirst = true;
+    const store: Store = {
+      ...inner,
+      async put(key, body, options) {
+        if (key.startsWith('model/bases/') && isFirst) {
+          isFirst = false;
+          await fold(testWorld(2, inner), claim('m2', 'leaks'));
+        }
+        return inner.put(key, body, options);
+      },
+    };
+    expect(await compact({ ...world, store }, desk, schema)).toMatchObject({
+      kind: 'compacted',
+      segments: 1,
+    });
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'billing', m2: 'leaks' });
+    expect((await recount(world, desk, schema)).differences).toEqual([]);
+  });
+
+  it('gives way when another one was quicker, and takes its own objects away', async () => {
+    const inner = createMemoryStore();
+    const world = testWorld(1, inner);
+    await fold(world, claim('m1', 'billing'));
+    let isFirst = true;
+    const store: Store = {
+      ...inner,
+      async put(key, body, options) {
+        if (key.startsWith('model/absorbed/') && isFirst) {
+          isFirst = false;
+          await compact(testWorld(2, inner), desk, schema);
+        }
+        return inner.put(key, body, options);
+      },
+    };
+    expect(await compact({ ...world, store }, desk, schema)).toMatchObject({ kind: 'lost-race' });
+    expect((await keysOf(inner, 'model/bases/')).length).toBe(1);
+    expect(await standings(world, ['m1'])).toEqual({ m1: 'billing' });
+  });
+
+  it('deletes what it superseded only behind the horizon, and what nothing ever named', async () => {
+    const world = testWorld();
+    await fold(world, claim('m1', 'billing'));
+    await world.store.put('model/segments/0mm8eww00-000000000000', Buffer.from('of a process that died'));
+    await compact(world, desk, schema);
+    await fold(world, claim('m2', 'billing'));
+    await compact(world, desk, schema);
+    expect((await keysOf(world.store, 'model/segments/')).length).toBe(3);
+    expect((await keysOf(world.store, 'model/bases/')).length).toBe(2);
+    world.clock.ms += bounds.horizonMs - 3600_000;
+    expect(await compact(world, desk, schema)).toMatchObject({ deletedObjects: 0 });
+    world.clock.ms += 2 * 3600_000;
+    // Three segments, the first base with its table and list, two archived versions.
+    expect(await compact(world, desk, schema)).toMatchObject({ deletedObjects: 8 });
+    expect(await keysOf(world.store, 'model/segments/')).toEqual([]);
+    expect((await keysOf(world.store, 'model/bases/')).length).toBe(1);
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'billing', m2: 'billing' });
+    expect(await fold(world, claim('m1', 'leaks', 9))).toEqual([{ kind: 'folded' }]);
+    expect((await recount(world, desk, schema)).differences).toEqual([]);
+  });
+
+  it('gives the same base for the same confirmations in any order and any batches', async () => {
+    const claims = [
+      claim('m1', 'billing', 0),
+      claim('m2', 'leaks', 1),
+      claim('m1', 'meters', 2),
+      claim('m3', 'moving', 3),
+      claim('m2', 'billing', 0),
+    ];
+    const bases: string[] = [];
+    for (const order of [
+      [0, 1, 2, 3, 4],
+      [4, 3, 2, 1, 0],
+      [2, 4, 0, 3, 1],
+    ]) {
+      const world = testWorld(order[0] + 1);
+      await fold(world, ...order.slice(0, 2).map((i) => claims[i]));
+      if (order[0] === 4) await compact(world, desk, schema);
+      for (const i of order.slice(2)) await fold(world, claims[i]);
+      await compact(world, desk, schema);
+      const got = await world.store.get((await keysOf(world.store, 'model/bases/')).at(-1) as string);
+      bases.push(got.kind === 'found' ? Buffer.from(got.object.body).toString('hex') : '');
+    }
+    expect(bases[0].length).toBeGreaterThan(100);
+    expect(bases[1]).toBe(bases[0]);
+    expect(bases[2]).toBe(bases[0]);
+  });
+
+  it('changes nothing in a dry run, and measures', async () => {
+    const world = testWorld();
+    await fold(world, claim('m1', 'billing'));
+    const before = await keysOf(world.store);
+    expect(await compact(world, desk, schema, { dryRun: true })).toMatchObject({
+      kind: 'dry-run',
+      messages: 1,
+      columns: 1,
+      cells: 2,
+    });
+    expect(await keysOf(world.store)).toEqual(before);
+  });
+
+  it('stops at a base that is damaged, and names it', async () => {
+    const world = testWorld();
+    await fold(world, claim('m1', 'billing'));
+    await compact(world, desk, schema);
+    await fold(world, claim('m2', 'billing'));
+    const [base] = await keysOf(world.store, 'model/bases/');
+    await world.store.put(base, Buffer.from('damaged'));
+    await expect(compact(world, desk, schema)).rejects.toMatchObject({ name: 'TallypostError', place: base });
+  });
+});

@@ -1,0 +1,127 @@
+import { describe, expect, it } from 'vitest';
+import type { Schema } from '../../src/features/schema.ts';
+import { compact } from '../../src/ledger/compaction.ts';
+import { foldClaims } from '../../src/ledger/fold.ts';
+import { loadModel } from '../../src/ledger/load-model.ts';
+import { recount } from '../../src/ledger/recount.ts';
+import { claim, desk, featuresOf, fold, keysOf, schema, standings, testWorld } from './fixture.ts';
+
+type TestWorld = ReturnType<typeof testWorld>;
+const messages = ['m1', 'm2', 'm3'];
+
+async function counted(): Promise<TestWorld> {
+  const world = testWorld();
+  await fold(world, claim('m1', 'billing'), claim('m2', 'leaks'));
+  await compact(world, desk, schema);
+  await fold(world, claim('m3', 'leaks', 1), claim('m1', 'leaks', 2));
+  return world;
+}
+
+/** Swaps two segments or bases behind the ledger's back. */
+async function overwrite(world: TestWorld, key: string, from: string): Promise<void> {
+  const got = await world.store.get(from);
+  if (got.kind !== 'found') throw new Error(`${from} is missing`);
+  await world.store.put(key, got.object.body);
+}
+
+describe('a recount', () => {
+  it('agrees with base and segments, cell by cell', async () => {
+    expect(await recount(await counted(), desk, schema)).toEqual({
+      version: 3,
+      messages: 3,
+      differences: [],
+      fault: null,
+      unread: 0,
+      repair: 'none',
+    });
+  });
+
+  it('names the cells that differ, and with repair makes them right', async () => {
+    const world = await counted();
+    // A base that lost m2: one made where only m1 was confirmed.
+    const other = testWorld(2);
+    await fold(other, claim('m1', 'billing'));
+    await compact(other, desk, schema);
+    const [foreign] = await keysOf(other.store, 'model/bases/');
+    const [base] = await keysOf(world.store, 'model/bases/');
+    const got = await other.store.get(foreign);
+    if (got.kind === 'found') await world.store.put(base, got.object.body);
+    const { differences } = await recount(world, desk, schema);
+    // m2's message, two slots, two tokens, and the exposure.
+    expect(differences.length).toBeGreaterThanOrEqual(5);
+    expect(differences[0]).toMatchObject({ left: 2, right: 3 });
+    expect(await recount(world, desk, schema, { repair: true })).toMatchObject({ repair: 'repaired' });
+    expect((await recount(world, desk, schema)).differences).toEqual([]);
+    expect(await standings(world, messages)).toEqual({ m1: 'leaks', m2: 'leaks', m3: 'leaks' });
+    expect(await recount(world, desk, schema, { repair: true })).toMatchObject({ repair: 'not-needed' });
+  });
+
+  it('replaces a base that cannot be read', async () => {
+    const world = await counted();
+    const [base] = await keysOf(world.store, 'model/bases/');
+    await world.store.put(base, Buffer.from('damaged'));
+    expect((await recount(world, desk, schema)).fault).toMatchObject({ place: base });
+    expect(await recount(world, desk, schema, { repair: true })).toMatchObject({ repair: 'repaired' });
+    expect(await recount(world, desk, schema)).toMatchObject({ differences: [], fault: null });
+    await compact(world, desk, schema);
+    expect(await standings(world, messages)).toEqual({ m1: 'leaks', m2: 'leaks', m3: 'leaks' });
+  });
+
+  it('finds a segment that was replaced by another', async () => {
+    const world = testWorld();
+    await fold(world, claim('m1', 'billing'));
+    await fold(world, claim('m2', 'leaks'));
+    const [first, second] = await keysOf(world.store, 'model/segments/');
+    await overwrite(world, second, first);
+    expect((await recount(world, desk, schema)).differences).not.toEqual([]);
+  });
+});
+
+describe('after a change of schema', () => {
+  const wider: Schema = {
+    ...schema,
+    id: '00000000000000b2',
+    slots: [...schema.slots, { id: 'new', group: 'facts', values: ['missing', 'other', 'yes'] }],
+  };
+  const reread = async (message: string) =>
+    message === 'm3'
+      ? null
+      : { ...featuresOf(message), schema: wider.id, slots: [...featuresOf(message).slots, 2] };
+
+  it('a recount reads the messages again and turns the model to the new schema', async () => {
+    const world = await counted();
+    expect(await recount(world, desk, wider, { repair: true, reread })).toMatchObject({
+      repair: 'repaired',
+      unread: 1,
+      messages: 2,
+    });
+    const model = await loadModel(world, desk, wider, null);
+    expect(model.fault).toBeNull();
+    expect([...model.scorer.messages]).toEqual([0, 2, 0, 0]);
+    expect(await recount(world, desk, wider)).toMatchObject({ differences: [], fault: null });
+  });
+
+  it('corrections and late confirmations go on, also of a message whose raw form was gone', async () => {
+    const world = await counted();
+    await recount(world, desk, wider, { repair: true, reread });
+    const newClaim = (message: string, queue: string, minute: number) => {
+      const features = { ...featuresOf(message), schema: wider.id, slots: [...featuresOf(message).slots, 2] };
+      return { ...claim(message, queue, minute), features };
+    };
+    const outcomes = await foldClaims(world, desk, wider, [
+      newClaim('m1', 'meters', 20),
+      newClaim('m3', 'billing', 20),
+    ]);
+    expect(outcomes).toEqual([{ kind: 'folded' }, { kind: 'folded' }]);
+    expect([...(await loadModel(world, desk, wider, null)).scorer.messages]).toEqual([1, 1, 1, 0]);
+    await compact(world, desk, wider);
+    expect(await recount(world, desk, wider)).toMatchObject({ differences: [], messages: 3 });
+  });
+
+  it('everything but that recount refuses to mix the two', async () => {
+    const world = await counted();
+    await expect(compact(world, desk, wider)).rejects.toMatchObject({ code: 'schema-mismatch' });
+    expect((await loadModel(world, desk, wider, null)).fault).toMatchObject({ code: 'schema-mismatch' });
+    expect(await recount(world, desk, schema)).toMatchObject({ differences: [] });
+  });
+});
