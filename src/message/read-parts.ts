@@ -5,6 +5,7 @@ import { Splitter } from '@zone-eu/mailsplit';
 import { bounds } from '../bounds.ts';
 import type { DefectCode, Defects } from './defects.ts';
 import { type Field, HeaderGate, strayLines } from './header-gate.ts';
+import { LineEnds } from './line-ends.ts';
 import { isMultipart, openPart, type Part } from './part.ts';
 import { type Budget, keepBody, openBudget } from './part-budget.ts';
 
@@ -95,8 +96,7 @@ class MailReader {
   #root: Part | null = null;
   #splitter: Transform | null = null;
   #stoppedBy: DefectCode | null = null;
-  #lineEnds: 'unknown' | 'lf' | 'cr' = 'unknown';
-  #isFirst = true;
+  readonly #lineEnds = new LineEnds();
 
   constructor(defects: Defects) {
     this.#defects = defects;
@@ -115,7 +115,10 @@ class MailReader {
 
   /** Gives a promise only when the splitter needs the event loop; null when the piece was taken at once. */
   take(received: Buffer): Promise<void> | null {
-    const piece = this.#normalise(received);
+    return this.#takeLines(this.#lineEnds.take(received));
+  }
+
+  #takeLines(piece: Buffer): Promise<void> | null {
     if (this.#gate.isDone) return this.#takeBody(piece);
     const body = this.#gate.feed(piece);
     if (body === null) return null;
@@ -124,6 +127,8 @@ class MailReader {
   }
 
   async finish(): Promise<ReadMail> {
+    if (!this.isStopped) await this.#takeLines(this.#lineEnds.end());
+    if (this.#lineEnds.isBareCr) this.#defects.add('line-ends-bare-cr', 'message');
     if (!this.#gate.isDone) {
       const body = this.#gate.end();
       this.#openRoot();
@@ -138,19 +143,6 @@ class MailReader {
       if (part.children.length === 0) this.#defects.add('text-cut', part.number);
     }
     return { fields: this.#gate.fields, root: this.#root!, stoppedBy: this.#stoppedBy };
-  }
-
-  /** Drops a byte order mark; turns the bare CR of mail without any LF into LF, which all that follows splits on. */
-  #normalise(received: Buffer): Buffer {
-    let piece = received;
-    if (this.#isFirst) {
-      this.#isFirst = false;
-      if (piece[0] === 0xef && piece[1] === 0xbb && piece[2] === 0xbf) piece = piece.subarray(3);
-      this.#lineEnds = piece.indexOf(0x0a) < 0 && piece.indexOf(0x0d) >= 0 && piece.length > 1 ? 'cr' : 'lf';
-      if (this.#lineEnds === 'cr') this.#defects.add('line-ends-bare-cr', 'message');
-    }
-    if (this.#lineEnds !== 'cr') return piece;
-    return Buffer.from(piece.toString('latin1').replace(/\r\n?/g, '\n'), 'latin1');
   }
 
   #openRoot(): void {

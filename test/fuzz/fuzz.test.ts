@@ -41,6 +41,7 @@ async function parsed(raw: Uint8Array | AsyncIterable<Uint8Array>): Promise<Mess
   }
 }
 
+const damage = fc.array(mutation, { maxLength: 3 });
 const lineEnd = fc.constantFrom('\r\n' as const, '\n' as const);
 
 /** Which texts are not found whole, every word of them. */
@@ -89,10 +90,17 @@ describe(`generated mail (seed ${seed})`, () => {
     'however the bytes come in, the message is the same',
     () =>
       fc.assert(
-        fc.asyncProperty(tree, lineEnd, fc.integer({ min: 1, max: 400 }), async (root, eol, size) => {
-          const { raw } = writeMail(root, eol);
-          expect(await parsed(inPieces(raw, size))).toEqual(await parsed(raw));
-        }),
+        fc.asyncProperty(
+          tree,
+          lineEnd,
+          fc.integer({ min: 1, max: 400 }),
+          damage,
+          async (root, eol, size, changes) => {
+            let { raw } = writeMail(root, eol);
+            for (const change of changes) raw = mutate(raw, change);
+            expect(await parsed(inPieces(raw, size))).toEqual(await parsed(raw));
+          },
+        ),
         runs(0.05),
       ),
     timeoutMs,

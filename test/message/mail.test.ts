@@ -73,6 +73,27 @@ describe('parseMail', () => {
     expect(await parseMail(inPieces(letter, size))).toEqual(await parseMail(letter));
   });
 
+  const lineEnds: [what: string, source: string, codes: string[]][] = [
+    ['CRLF', 'From: a@b.example\r\nSubject: Question\r\n\r\nOne.\r\nTwo.\r\n', []],
+    ['LF', 'From: a@b.example\nSubject: Question\n\nOne.\nTwo.\n', []],
+    ['CR', 'From: a@b.example\rSubject: Question\r\rOne.\rTwo.\r', ['line-ends-bare-cr']],
+    ['CR CR LF', 'From: a@b.example\r\r\nSubject: Question\r\r\n\r\r\nOne.\r\nTwo.\r\n', []],
+    ['CRLF, then CR', 'From: a@b.example\r\nSubject: Question\r\n\r\nOne.\rTwo.', []],
+    ['CRLF after a byte order mark', '\ufeffFrom: a@b.example\r\nSubject: Question\r\n\r\nOne.\r\nTwo.', []],
+  ];
+  test.each(lineEnds)('lines that end in %s, however they are cut', async (_what, source, codes) => {
+    const raw = Buffer.from(source);
+    for (const size of [1, 2, 3, 18, 19, 20, 1000]) {
+      const message = await parseMail(inPieces(raw, size));
+      expect([message.from?.address, message.subject, message.text]).toEqual([
+        'a@b.example',
+        'Question',
+        'One.\nTwo.',
+      ]);
+      expect(codesOf(message)).toEqual(codes);
+    }
+  });
+
   test('keeps nothing of one message for the next', async () => {
     const alone = await parseMail(plainMail('The water is brown.'));
     const [first, second] = await Promise.all([
