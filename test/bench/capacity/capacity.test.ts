@@ -1,7 +1,7 @@
 import { describe, expect, it } from 'vitest';
 import { encodeCounts } from '../../../src/model/codec-counts.ts';
 import { emptyCounts, foldEntries, mergeCounts } from '../../../src/model/fold.ts';
-import { createGenerated, entryOf, ordinary } from '../timing/generated.ts';
+import { createGenerated, entryOf, ordinary } from '../speed/generated.ts';
 import { type Costs, demandOf, deskMax, messagesMax, shardsOf, type Traffic } from './capacity.ts';
 
 /** 2,592,000 messages in the 2,592,000 seconds of 30 days: one a second, four at the peak, of which two are confirmed. */

@@ -17,7 +17,7 @@ export const costs: Costs = {
   // Assumed: two requests of 30 ms; half of the turns are lost to each other.
   commitSeconds: 0.06,
   commitShare: 0.5,
-  // Measured by test/bench/timing at 10^4 and 10^3 confirmations of 300 tokens: 8.35 s against 2.48 s of processor time,
+  // Measured by test/bench/speed at 10^4 and 10^3 confirmations of 300 tokens: 8.35 s against 2.48 s of processor time,
   // 368 MB against 200 MB. (8.35 - 2.48) / 9000 = 0.00065 s; (368 - 200) / 9000 = 0.0187 MB.
   compactSeconds: { fixed: 1.8, perConfirmation: 0.00065 },
   compactMb: { fixed: 181, perConfirmation: 0.0187 },

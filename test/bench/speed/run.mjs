@@ -1,5 +1,5 @@
 // Speed, side by side in one run: medians and ratios.
-//   node test/bench/timing/run.mjs [--sections route,scoring,queues,compaction] [--rounds N] [--confirmations N]
+//   node test/bench/speed/run.mjs [--sections route,scoring,queues,compaction] [--rounds N] [--confirmations N]
 // Without flags it takes about two minutes. --confirmations (default 10000) is the largest compaction: 1000, 10000 … and it.
 import { execFileSync } from 'node:child_process';
 import { mkdtempSync, rmSync } from 'node:fs';
@@ -16,9 +16,9 @@ const { values } = parseArgs({
   },
 });
 const rounds = Number(values.rounds);
-const folder = mkdtempSync(join(tmpdir(), 'tallypost-timing-'));
+const folder = mkdtempSync(join(tmpdir(), 'tallypost-speed-'));
 try {
-  const entries = ['sections', 'measure', 'compaction'].map((name) => `test/bench/timing/${name}.ts`);
+  const entries = ['sections', 'measure', 'compaction'].map((name) => `test/bench/speed/${name}.ts`);
   await bundleEntries(entries, folder);
   const { routeSection, scoringSection, queuesSection } = await import(join(folder, 'sections.mjs'));
   const measured = { route: routeSection, scoring: scoringSection, queues: queuesSection };
