@@ -178,6 +178,10 @@ export const bounds = {
   modelBytesMax: 512 * 1024 * 1024,
   /** Messages drawn from the histories for fitting: enough for stable exponents, a bounded night's work. */
   fitSampleMax: 2_000,
+  /** Contradicted confirmations and changed queues listed in a compaction's result: more than anyone looks at in a day. */
+  findingsListedMax: 40,
+  /** Drift compares the newest weeks with those before: two, so that one quiet week is not all there is. */
+  driftRecentEpochs: 2,
   /** Histories counted at a time by a recount. */
   recountChunkMax: 500,
 

@@ -1,13 +1,15 @@
 import { bounds } from '../bounds.ts';
 import type { Desk } from '../desk/desk.ts';
 import type { Schema } from '../features/schema.ts';
-import { fitTable } from '../model/fit-table.ts';
+import type { Counts } from '../model/counts.ts';
+import { findDrift } from '../model/drift.ts';
+import { fitFindings } from '../model/fit-table.ts';
 import { readManifest } from './commit.ts';
 import { deleteUnnamed } from './deletion.ts';
 import { finishOrders } from './finish-orders.ts';
-import { checkSchema, isPurgeDue, type Manifest } from './manifest.ts';
+import { checkSchema, isPurgeDue } from './manifest.ts';
 import { readCounts, withFresh } from './objects.ts';
-import { type FitModel, newBaseId, rebuild } from './rebuild.ts';
+import { type ContradictedMessage, type FitModel, type MadeTable, newBaseId, rebuild } from './rebuild.ts';
 import type { World } from './world.ts';
 
 export interface CompactionOptions {
@@ -15,6 +17,16 @@ export interface CompactionOptions {
   readonly force?: boolean;
   readonly dryRun?: boolean;
   readonly fitModel?: FitModel;
+}
+
+/** Evidence that a queue's wording of the last weeks differs from before. */
+export interface ChangedQueue {
+  readonly queue: string;
+  readonly region: string;
+  readonly earlierMessages: number;
+  readonly recentMessages: number;
+  /** Nats; above 5 is very strong. */
+  readonly logFactor: number;
 }
 
 /** JSON-able. */
@@ -32,6 +44,12 @@ export interface CompactionResult {
   readonly baseBytes: number;
   readonly tableBytes: number;
   readonly fit: { readonly messages: number; readonly logLoss: number | null } | null;
+  /** Distinct tokens counted, and those held by the table that routers load. */
+  readonly tokens: { readonly counted: number; readonly held: number };
+  /** Confirmations that everything else contradicts, least likely first. */
+  readonly contradictions: readonly ContradictedMessage[];
+  /** Queues whose wording changed lately, strongest evidence first. */
+  readonly drift: readonly ChangedQueue[];
   /** Erasures and undos of crashed processes that were brought to their end. */
   readonly orders: number;
   readonly deletedObjects: number;
@@ -64,22 +82,17 @@ async function compactOnce(
   const { manifest } = await readManifest(world);
   checkSchema(manifest, schema);
   const id = newBaseId(world, manifest);
+  const { version } = manifest;
   const segments = manifest.segments.length;
   const isDue = segments > 0 || isPurgeDue(manifest) || (options.force === true && manifest.base !== null);
-  if (!isDue) return nothingNew(manifest);
+  if (!isDue) return { kind: 'nothing-new', version, ...nothing };
   const counts = await readCounts(world, schema, manifest);
-  const measured = {
-    version: manifest.version,
-    messages: counts.messages.reduce((sum, c) => sum + c, 0),
-    columns: counts.columns.length,
-    cells: counts.regions.reduce((sum, r) => sum + r.column.length, 0),
-    segments,
-  };
-  if (options.dryRun) return { kind: 'dry-run', ...measured, baseBytes: 0, tableBytes: 0, fit: null };
+  const measured = { ...nothing, version, segments, ...measure(counts) };
+  if (options.dryRun) return { kind: 'dry-run', ...measured };
   const rebuilt = await rebuild(world, desk, schema, manifest, counts, {
     id,
     renames: manifest.renames,
-    fitModel: options.fitModel ?? fitTable,
+    fitModel: options.fitModel ?? fitFindings,
   });
   return {
     kind: rebuilt.isCommitted ? 'compacted' : 'lost-race',
@@ -87,11 +100,45 @@ async function compactOnce(
     version: rebuilt.version,
     baseBytes: rebuilt.baseBytes,
     tableBytes: rebuilt.tableBytes,
-    fit: { messages: rebuilt.table.fit.messages, logLoss: rebuilt.table.fit.logLoss },
+    ...findingsOf(rebuilt.made),
   };
 }
 
-function nothingNew({ version }: Manifest): Made {
-  const nothing = { messages: 0, columns: 0, cells: 0, segments: 0, baseBytes: 0, tableBytes: 0, fit: null };
-  return { kind: 'nothing-new', version, ...nothing };
+const nothing = {
+  messages: 0,
+  columns: 0,
+  cells: 0,
+  segments: 0,
+  baseBytes: 0,
+  tableBytes: 0,
+  fit: null,
+  tokens: { counted: 0, held: 0 },
+  contradictions: [],
+  drift: [],
+};
+
+function measure(counts: Counts): Pick<Made, 'messages' | 'columns' | 'cells'> {
+  return {
+    messages: counts.messages.reduce((sum, c) => sum + c, 0),
+    columns: counts.columns.length,
+    cells: counts.regions.reduce((sum, r) => sum + r.column.length, 0),
+  };
+}
+
+function findingsOf({
+  table,
+  byQueue,
+  contradictions,
+}: MadeTable): Pick<Made, 'fit' | 'tokens' | 'contradictions' | 'drift'> {
+  const { messages, logLoss } = table.fit;
+  const drift = findDrift(byQueue, bounds.driftRecentEpochs).filter((d) => d.logFactor > 0);
+  return {
+    fit: { messages, logLoss },
+    tokens: {
+      counted: table.vocabulary.reduce((sum, tokens) => sum + tokens, 0),
+      held: table.counts.regions.reduce((sum, r) => sum + r.tokens.length, 0),
+    },
+    contradictions: contradictions.slice(0, bounds.findingsListedMax),
+    drift: drift.slice(0, bounds.findingsListedMax).map(({ tokens: _, ...changed }): ChangedQueue => changed),
+  };
 }

@@ -84,6 +84,33 @@ export function encodeManifest(manifest: Manifest): Uint8Array {
   return new TextEncoder().encode(`${JSON.stringify(manifest)}\n`);
 }
 
+const isNameOrNull = (v: unknown) => v === null || isId(v);
+const isVersion = (v: unknown) => Number.isSafeInteger(v) && (v as number) >= 0;
+const isListOf = (v: unknown, is: (item: never) => boolean) =>
+  Array.isArray(v) && v.every((i) => is(i as never));
+const memberChecks: Record<keyof Manifest, (v: unknown) => boolean> = {
+  format: (v) => v === 1,
+  version: isVersion,
+  atMs: isVersion,
+  schema: (v) => typeof v === 'string',
+  base: isNameOrNull,
+  table: isNameOrNull,
+  absorbed: isNameOrNull,
+  segments: (v) => isListOf(v, (s: SegmentRef) => isId(s?.id) && isVersion(s.version)),
+  voided: (v) => isListOf(v, isId),
+  floor: (v) => typeof v === 'string',
+  rolledBack: (v) => isListOf(v, isId),
+  restores: (v) => isListOf(v, (r: Restore) => isId(r?.id) && isVersion(r.version) && isVersion(r.to)),
+  renames: (v) =>
+    v !== null &&
+    typeof v === 'object' &&
+    Object.values(v).every((q) => typeof (q as Renamed)?.to === 'string'),
+  shapedAtVersion: isVersion,
+  erasedAtVersion: isVersion,
+  purgedAtVersion: isVersion,
+  oldestVersion: isVersion,
+};
+
 /** Throws TallypostError `object-damaged` for anything that this program cannot have written. */
 export function decodeManifest(bytes: Uint8Array, place: string): Manifest {
   let value: Record<string, unknown>;
@@ -95,33 +122,7 @@ export function decodeManifest(bytes: Uint8Array, place: string): Manifest {
       cause,
     );
   }
-  const isNameOrNull = (v: unknown) => v === null || isId(v);
-  const isVersion = (v: unknown) => Number.isSafeInteger(v) && (v as number) >= 0;
-  const isListOf = (v: unknown, is: (item: never) => boolean) =>
-    Array.isArray(v) && v.every((i) => is(i as never));
-  const checks: Record<keyof Manifest, (v: unknown) => boolean> = {
-    format: (v) => v === 1,
-    version: isVersion,
-    atMs: isVersion,
-    schema: (v) => typeof v === 'string',
-    base: isNameOrNull,
-    table: isNameOrNull,
-    absorbed: isNameOrNull,
-    segments: (v) => isListOf(v, (s: SegmentRef) => isId(s?.id) && isVersion(s.version)),
-    voided: (v) => isListOf(v, isId),
-    floor: (v) => typeof v === 'string',
-    rolledBack: (v) => isListOf(v, isId),
-    restores: (v) => isListOf(v, (r: Restore) => isId(r?.id) && isVersion(r.version) && isVersion(r.to)),
-    renames: (v) =>
-      v !== null &&
-      typeof v === 'object' &&
-      Object.values(v).every((q) => typeof (q as Renamed)?.to === 'string'),
-    shapedAtVersion: isVersion,
-    erasedAtVersion: isVersion,
-    purgedAtVersion: isVersion,
-    oldestVersion: isVersion,
-  };
-  for (const [member, isRight] of Object.entries(checks)) {
+  for (const [member, isRight] of Object.entries(memberChecks)) {
     if (value === null || typeof value !== 'object' || !isRight(value[member]))
       throw new TallypostError({
         code: 'object-damaged',

@@ -5,7 +5,7 @@ import { encodeCounts } from '../model/codec-counts.ts';
 import { encodeTable } from '../model/codec-table.ts';
 import type { Counts } from '../model/counts.ts';
 import { defaultFit, type Fit } from '../model/fit.ts';
-import type { fitTable } from '../model/fit-table.ts';
+import type { FitFindings, fitFindings } from '../model/fit-table.ts';
 import { renameQueues } from '../model/fold.ts';
 import { type ServedTable, serve } from '../model/served-table.ts';
 import { keys } from '../store/keys.ts';
@@ -20,7 +20,25 @@ import { sampleHistories } from './sample.ts';
 import type { World } from './world.ts';
 
 /** Fits what routers load from the counts by queue, a sample of the messages in them, and the last fit. */
-export type FitModel = typeof fitTable;
+export type FitModel = (...args: Parameters<typeof fitFindings>) => Fit | FitFindings;
+
+/** A table, and what was found on the way. */
+export interface MadeTable {
+  readonly table: ServedTable;
+  /** By today's names of queues; exact, all epochs. */
+  readonly byQueue: Counts;
+  readonly contradictions: readonly ContradictedMessage[];
+}
+
+/** A confirmation that all other messages contradict: worth a second look. */
+export interface ContradictedMessage {
+  readonly message: string;
+  readonly queue: string;
+  /** Of that queue, told by all other messages. */
+  readonly probability: number;
+  readonly likelier: string;
+  readonly likelierProbability: number;
+}
 
 export interface RebuildOptions {
   /** From `newBaseId`, made as soon as the manifest was read. */
@@ -35,7 +53,7 @@ export interface RebuildOptions {
 export interface Rebuilt {
   readonly isCommitted: boolean;
   readonly version: number;
-  readonly table: ServedTable;
+  readonly made: MadeTable;
   readonly baseBytes: number;
   readonly tableBytes: number;
 }
@@ -53,8 +71,8 @@ export async function rebuild(
 ): Promise<Rebuilt> {
   const { id } = options;
   checkCounts(counts, keys.bases + id);
-  const table = await makeTable(world, desk, schema, from, counts, options);
-  const [base, served] = [encodeCounts(counts), encodeTable(table)];
+  const madeTable = await makeTable(world, desk, schema, from, counts, options);
+  const [base, served] = [encodeCounts(counts), encodeTable(madeTable.table)];
   const absorbed = new Set([
     ...(await readAbsorbed(world, from.absorbed)),
     ...from.segments.map((s) => s.id),
@@ -96,7 +114,7 @@ export async function rebuild(
       made.map(([key]) => key),
     );
   const version = committed.kind === 'known' ? committed.manifest.version : from.version;
-  return { isCommitted, version, table, baseBytes: base.length, tableBytes: served.length };
+  return { isCommitted, version, made: madeTable, baseBytes: base.length, tableBytes: served.length };
 }
 
 /** The table that routers load: today's names of queues, one column each. */
@@ -107,13 +125,24 @@ export async function makeTable(
   from: Manifest,
   counts: Counts,
   { renames, fitModel }: Pick<RebuildOptions, 'renames' | 'fitModel'>,
-): Promise<ServedTable> {
+): Promise<MadeTable> {
   const names = new Map(counts.columns.map(({ queue }) => [queue, currentName(renames, queue)]));
   const byQueue = renameQueues(counts, names);
+  const { halfLifeDays } = desk;
   const last = await lastFit(world, schema, from);
-  const sample = fitModel ? await sampleHistories(world, schema, from, renames) : [];
-  const fitted = fitModel ? fitModel(byQueue, sample, last, { halfLifeDays: desk.halfLifeDays }) : last;
-  return serve(byQueue, fitted, { halfLifeDays: desk.halfLifeDays });
+  if (fitModel === null)
+    return { table: serve(byQueue, last, { halfLifeDays }), byQueue, contradictions: [] };
+  const sample = await sampleHistories(world, schema, from, renames);
+  const fitted = fitModel(byQueue, sample, last, { halfLifeDays });
+  const { fit, contradictions } = 'fit' in fitted ? fitted : { fit: fitted, contradictions: [] };
+  return {
+    table: serve(byQueue, fit, { halfLifeDays }),
+    byQueue,
+    contradictions: contradictions.map(({ index, ...rest }) => {
+      const { message, queue } = sample[index];
+      return { message, queue, ...rest };
+    }),
+  };
 }
 
 async function lastFit(world: World, schema: Schema, from: Manifest): Promise<Fit> {

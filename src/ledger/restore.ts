@@ -123,7 +123,7 @@ async function tableFor(
   if (target.base === null || JSON.stringify(target.renames) === JSON.stringify(now.renames))
     return target.table;
   const counts = await readBase(world, schema, target.base);
-  const table = await makeTable(world, desk, schema, target, counts, {
+  const { table } = await makeTable(world, desk, schema, target, counts, {
     renames: now.renames,
     fitModel: null,
   });

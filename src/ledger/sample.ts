@@ -10,6 +10,10 @@ import { mapBounded } from './pace.ts';
 import { currentName } from './queue-names.ts';
 import type { World } from './world.ts';
 
+export interface SampledMessage extends FoldedMessage {
+  readonly message: string;
+}
+
 /** Messages that stand in the counts of `manifest`, at most `fitSampleMax`: those whose id hashes lowest under the manifest's
  *  version, so that the same state gives the same sample and each night draws another. One list, one read a message. */
 export async function sampleHistories(
@@ -17,7 +21,7 @@ export async function sampleHistories(
   schema: Schema,
   manifest: Manifest,
   renames: Renames,
-): Promise<FoldedMessage[]> {
+): Promise<SampledMessage[]> {
   const drawn: { message: string; lot: number }[] = [];
   for await (const message of listMessages(world)) {
     drawn.push({ message, lot: lotOf(`${manifest.version} ${message}`) });
@@ -25,13 +29,13 @@ export async function sampleHistories(
   }
   keepLowest(drawn);
   const hasAbsorbed = await createAbsorbedReader(world)(manifest);
-  const sample = await mapBounded(drawn, async ({ message }): Promise<FoldedMessage | null> => {
+  const sample = await mapBounded(drawn, async ({ message }): Promise<SampledMessage | null> => {
     const { stored } = await readHistory(world, message);
     if (stored === null || isTombstone(stored) || !Object.hasOwn(stored.features, schema.id)) return null;
     const column = columnAsOf(stored, manifest, hasAbsorbed);
     if (column === null) return null;
     const features = decodeFeatures(stored.features[schema.id], schema, historyKey(message));
-    return { features, queue: currentName(renames, column.queue), epoch: column.epoch };
+    return { message, features, queue: currentName(renames, column.queue), epoch: column.epoch };
   });
   return sample.filter((m) => m !== null);
 }

@@ -136,3 +136,43 @@ describe('a compaction', () => {
     await expect(compact(world, desk, schema)).rejects.toMatchObject({ name: 'TallypostError', place: base });
   });
 });
+
+describe('the result of a compaction', () => {
+  it('lists the confirmations that everything else contradicts, by message', async () => {
+    const world = testWorld();
+    const alike = (message: string, queue: string, token: number) => {
+      const one = claim(message, queue);
+      return {
+        ...one,
+        features: { ...one.features, slots: [2, 2], regions: [Float64Array.of(token, token + 1, token + 2)] },
+      };
+    };
+    const claims = Array.from({ length: 60 }, (_, i) =>
+      i % 2 ? alike(`b${i}`, 'billing', 50) : alike(`l${i}`, 'leaks', 90),
+    );
+    await fold(world, ...claims, alike('odd', 'leaks', 50));
+    const { contradictions, tokens, fit } = await compact(world, desk, schema);
+    expect(fit?.messages).toBe(61);
+    // Three tokens of each of the two kinds of message.
+    expect(tokens.counted).toBe(6);
+    expect(contradictions.map(({ message, queue, likelier }) => ({ message, queue, likelier }))).toEqual([
+      { message: 'odd', queue: 'leaks', likelier: 'billing' },
+    ]);
+    expect(contradictions[0].probability).toBeLessThan(0.01);
+  });
+
+  it('says which queue changed its wording lately', async () => {
+    const world = testWorld();
+    const worded = (message: string, week: number, token: number) => {
+      const one = claim(message, 'leaks', -week * 7 * 24 * 60);
+      return { ...one, features: { ...one.features, regions: [Float64Array.of(token, token + 1)] } };
+    };
+    await fold(world, ...Array.from({ length: 40 }, (_, i) => worded(`old${i}`, 10, 50)));
+    await fold(world, ...Array.from({ length: 40 }, (_, i) => worded(`new${i}`, 0, 90)));
+    const { drift } = await compact(world, desk, schema);
+    expect(drift).toMatchObject([
+      { queue: 'leaks', region: 'word', earlierMessages: 40, recentMessages: 40 },
+    ]);
+    expect(drift[0].logFactor).toBeGreaterThan(5);
+  });
+});
