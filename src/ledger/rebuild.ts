@@ -129,7 +129,7 @@ export async function makeTable(
   const names = new Map(counts.columns.map(({ queue }) => [queue, currentName(renames, queue)]));
   const byQueue = renameQueues(counts, names);
   const { halfLifeDays } = desk;
-  const last = await lastFit(world, schema, from);
+  const last = renamedFit(await lastFit(world, schema, from), renames);
   if (fitModel === null)
     return { table: serve(byQueue, last, { halfLifeDays }), byQueue, contradictions: [] };
   const sample = await sampleHistories(world, schema, from, renames);
@@ -148,6 +148,20 @@ export async function makeTable(
 async function lastFit(world: World, schema: Schema, from: Manifest): Promise<Fit> {
   if (from.schema !== schema.id) return defaultFit(schema);
   return (await readTable(world, schema, from.table)).fit;
+}
+
+/** What was fitted for single queues follows their names. */
+function renamedFit(fit: Fit, renames: Renames): Fit {
+  const renamed = (byQueue: Readonly<Record<string, number>>): Record<string, number> => {
+    const kept = Object.entries(byQueue).filter(([queue]) => currentName(renames, queue) === queue);
+    const moved = Object.entries(byQueue).map(([queue, x]): [string, number] => [
+      currentName(renames, queue),
+      x,
+    ]);
+    return Object.fromEntries([...moved, ...kept]);
+  };
+  const blocks = fit.blocks.map((block) => ({ ...block, byQueue: renamed(block.byQueue) }));
+  return { ...fit, blocks, bias: renamed(fit.bias) };
 }
 
 /** What was read is still what stands, with nothing but further segments beside it. */

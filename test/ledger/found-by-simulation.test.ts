@@ -1,0 +1,122 @@
+import { describe, expect, it } from 'vitest';
+import { bounds } from '../../src/bounds.ts';
+import { compact } from '../../src/ledger/compaction.ts';
+import { eraseMessages } from '../../src/ledger/erase.ts';
+import { recount } from '../../src/ledger/recount.ts';
+import { restoreVersion } from '../../src/ledger/restore.ts';
+import { createMemoryStore } from '../../src/store/memory.ts';
+import type { Store } from '../../src/store/store.ts';
+import { claim, desk, fold, keysOf, schema, standings, testWorld, tokenOf } from './fixture.ts';
+import { tokensIn } from './tokens-in.ts';
+
+/** Runs `act` once, just before the first put of a key that starts so. */
+function before(inner: Store, prefix: string, act: () => Promise<void>): Store {
+  let isFirst = true;
+  return {
+    ...inner,
+    async put(key, body, options) {
+      if (key.startsWith(prefix) && isFirst) {
+        isFirst = false;
+        await act();
+      }
+      return inner.put(key, body, options);
+    },
+  };
+}
+
+const dayMs = 24 * 3600_000;
+
+describe('what the simulation found once stays mended:', () => {
+  it('a compaction that slept through the horizon does not name a base that is deleted', async () => {
+    const inner = createMemoryStore();
+    const [world, other] = [testWorld(1, inner), testWorld(2, inner)];
+    await fold(world, claim('m1', 'billing'));
+    const store = before(inner, 'model/versions/', async () => {
+      other.clock.ms += bounds.horizonMs + 2 * dayMs;
+      await inner.put(
+        'model/segments/0mm8eww00-000000000000',
+        Buffer.from('an orphan, so that there is something to delete'),
+      );
+      await compact(other, desk, schema, { dryRun: true });
+      const { deleteUnnamed } = await import('../../src/ledger/deletion.ts');
+      await deleteUnnamed(other);
+    });
+    expect(await compact({ ...world, store }, desk, schema)).toMatchObject({ kind: 'lost-race' });
+    expect(await standings(world, ['m1'])).toEqual({ m1: 'billing' });
+    expect(await recount(world, desk, schema)).toMatchObject({ fault: null, differences: [] });
+  });
+
+  it('a restore lists a segment again though it is older than the floor', async () => {
+    const world = testWorld();
+    await fold(world, claim('m1', 'billing'));
+    world.clock.ms += 10 * dayMs;
+    await compact(world, desk, schema);
+    await fold(world, claim('m2', 'leaks', 60));
+    await world.store.put(
+      'model/segments/0mm8eww00-000000000000',
+      Buffer.from('an orphan, so that the floor rises'),
+    );
+    world.clock.ms += 6 * dayMs;
+    await compact(world, desk, schema);
+    expect(await restoreVersion(world, desk, schema, 1)).toMatchObject({ kind: 'restored' });
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'billing' });
+    await compact(world, desk, schema);
+    expect(await recount(world, desk, schema)).toMatchObject({ fault: null, differences: [] });
+  });
+
+  it('an erasure that another process brings to its end cannot be taken back by a restore', async () => {
+    const inner = createMemoryStore();
+    const world = testWorld(1, inner);
+    await fold(world, claim('m1', 'billing'));
+    const store = { ...inner, put: inner.put };
+    store.put = async (key, body, options) => {
+      if (key.startsWith('model/segments/')) throw new Error('the process dies here');
+      return inner.put(key, body, options);
+    };
+    expect(await eraseMessages({ ...world, store }, schema, ['m1'])).toMatchObject({ isDone: false });
+    world.clock.ms += 60_000;
+    expect(await fold(world, claim('m1', 'leaks', 5))).toMatchObject([
+      { kind: 'refused', fault: { code: 'message-erased' } },
+    ]);
+    expect(await standings(world, ['m1'])).toEqual({});
+    await expect(restoreVersion(world, desk, schema, 1)).rejects.toMatchObject({ code: 'version-unknown' });
+  });
+
+  it('a compaction within the very millisecond of an erasure leaves none of its segments', async () => {
+    const inner = createMemoryStore();
+    const still = { ...testWorld(1, inner), nowMs: () => Date.UTC(2026, 2, 2) };
+    await fold(still, claim('m1', 'billing'), claim('m2', 'leaks'));
+    await compact(still, desk, schema);
+    await eraseMessages(still, schema, ['m1']);
+    await compact(still, desk, schema);
+    for (const key of await keysOf(inner)) {
+      const got = await inner.get(key);
+      if (got.kind === 'found') expect(tokensIn(key, got.object.body)).not.toContain(tokenOf('m1'));
+    }
+    expect((await keysOf(inner, 'model/bases/')).length).toBe(1);
+  });
+
+  it('a recount whose base is deleted meanwhile starts again with the new one', async () => {
+    const inner = createMemoryStore();
+    const world = testWorld(1, inner);
+    await fold(world, claim('m1', 'billing'), claim('m2', 'leaks'));
+    await compact(world, desk, schema);
+    let isFirst = true;
+    const store: Store = {
+      ...inner,
+      async get(key, options) {
+        if (key.startsWith('model/bases/') && isFirst) {
+          isFirst = false;
+          await eraseMessages(world, schema, ['m1']);
+          await compact(world, desk, schema);
+        }
+        return inner.get(key, options);
+      },
+    };
+    expect(await recount({ ...world, store }, desk, schema)).toMatchObject({
+      fault: null,
+      differences: [],
+      messages: 1,
+    });
+  });
+});
