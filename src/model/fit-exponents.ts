@@ -71,8 +71,8 @@ export interface QueueFit {
   readonly exponents: Float64Array;
   /** [queues]. */
   readonly bias: Float64Array;
-  /** Mean log loss, without the shrinkage. */
-  readonly logLoss: number;
+  /** Log posteriors before normalisation; [messages * queues]. */
+  readonly logs: Float64Array;
 }
 
 /** Each queue's own exponents, shrunk to the shared ones, and its bias, shrunk to 0. Queue by queue in turn: with the others
@@ -89,7 +89,6 @@ export function fitQueues(
   const exponents = new Float64Array(queues * blocks);
   for (let k = 0; k < queues; k++) exponents.set(shared, k * blocks);
   const bias = new Float64Array(queues);
-  /** Log posteriors before normalisation; [messages * queues]. */
   const logs = new Float64Array(messages * queues);
   for (let at = 0; at < logs.length; at++) logs[at] = dot(x, at * blocks, shared);
   const lower = Float64Array.from([...used.map(() => 0), -Infinity]);
@@ -109,7 +108,7 @@ export function fitQueues(
         logs[i * queues + k] = bias[k] + dot(x, (i * queues + k) * blocks, own);
     }
   }
-  return { exponents, bias, logLoss: meanLoss(scores, logs) };
+  return { exponents, bias, logs };
 }
 
 /** One queue against all others as they stand. */
@@ -184,7 +183,8 @@ function queueLoss(
   return { value, gradient, hessian };
 }
 
-function meanLoss({ messages, queues, truth }: LabelledScores, logs: Float64Array): number {
+/** Mean log loss of log posteriors before normalisation, nats. */
+export function meanLoss({ messages, queues, truth }: LabelledScores, logs: Float64Array): number {
   const p = new Float64Array(queues);
   let sum = 0;
   for (let i = 0; i < messages; i++) {

@@ -2,8 +2,12 @@ import { bounds } from '../bounds.ts';
 import type { Features } from '../features/schema.ts';
 import type { Counts } from './counts.ts';
 import type { Block, Fit } from './fit.ts';
-import { fitQueues, fitShared, type LabelledScores, type Shrinkage } from './fit-exponents.ts';
+import { fitQueues, fitShared, type LabelledScores, meanLoss, type Shrinkage } from './fit-exponents.ts';
+import type { Own } from './hits.ts';
+import { normalise } from './posterior-of.ts';
+import { fitPriors } from './priors.ts';
 import { chooseHold, holdAll } from './prune.ts';
+import { learnReliability } from './reliability.ts';
 import { blockScores } from './score.ts';
 import { createScorer, type Scorer } from './scorer.ts';
 import { project, serve, weightOf } from './served-table.ts';
@@ -23,59 +27,134 @@ export interface FitOptions {
  *  serves most desks; more for single queues, of which there are many. Any value from a half to twice these fits as well. */
 const shrinkage: Shrinkage = { shared: 10, queue: 20, bias: 10 };
 
-/** Exponents that minimise the log loss of leave-one-out scores, first shared by all queues and shrunk towards the last fit,
- *  then by queue, shrunk towards the shared ones. Every message of the sample must stand in the counts; at most
- *  `fitMessagesMax` are used (fewer of many queues, see `fitScoresMax`), evenly spread over the sample's order. Deterministic.
- *  Cost: O(messages · queues · (tokens + blocks²)). */
+/** A confirmation that all other messages contradict. */
+export interface Contradiction {
+  /** Place in the sample. */
+  readonly index: number;
+  /** Leave-one-out posterior of the queue confirmed, and the likeliest queue with its. */
+  readonly probability: number;
+  readonly likelier: string;
+  readonly likelierProbability: number;
+}
+
+export interface FitFindings {
+  readonly fit: Fit;
+  /** Least likely first. */
+  readonly contradictions: readonly Contradiction[];
+}
+
+/** A confirmed queue less likely than this by all other messages is worth a second look. */
+const contradictedBelow = 0.01;
+
+/** All that is fitted from the counts, see `fitFindings`. */
 export function fitTable(
   counts: Counts,
   sample: readonly FoldedMessage[],
   previousFit: Fit,
   options: FitOptions = { halfLifeDays: null },
 ): Fit {
-  const { projected, referenceEpoch } = project(counts, options.halfLifeDays);
+  return fitFindings(counts, sample, previousFit, options).fit;
+}
+
+/** Pseudo-counts by the evidence; the correction of stated posteriors by the record; exponents that minimise the log loss of
+ *  leave-one-out scores, first shared by all queues and shrunk towards the last fit, then by queue, shrunk towards the shared
+ *  ones. Every message of the sample must stand in the counts; at most `fitMessagesMax` are used (fewer of many queues, see
+ *  `fitScoresMax`), evenly spread over the sample's order. Deterministic.
+ *  Cost: O(messages · queues · (tokens + blocks²)). */
+export function fitFindings(
+  counts: Counts,
+  sample: readonly FoldedMessage[],
+  previousFit: Fit,
+  { halfLifeDays }: FitOptions,
+): FitFindings {
+  const { projected, referenceEpoch } = project(counts, halfLifeDays);
   const hold = chooseHold(counts, projected, previousFit, referenceEpoch);
-  const table = serve(counts, { ...previousFit, hold: holdAll }, options);
-  const queues = table.counts.columns.map((c) => c.queue);
-  const messagesMax = Math.floor(bounds.fitScoresMax / (queues.length * previousFit.blocks.length));
-  const own = spread(sample, Math.min(bounds.fitMessagesMax, messagesMax))
-    .map(({ features, queue, epoch }) => ({
-      features,
-      queue: queues.indexOf(queue),
-      weight: weightOf(epoch, table.referenceEpoch, options.halfLifeDays),
-    }))
-    .filter((message) => message.queue >= 0 && message.weight > 0);
-  if (own.length === 0 || queues.length < 2) return { ...previousFit, hold };
-  const scorer = createScorer(table, [], queues, options.halfLifeDays, {
-    isForFit: true,
-    seenMin: hold.sparesNew ? 0 : hold.seenMin,
-  });
-  const { active, scores } = leaveOneOut(scorer, own);
-  const before = Float64Array.from(active, (b) => previousFit.blocks[b].exponent);
+  const reliability = learnReliability(counts.record, previousFit.reliability);
+  const basis: Fit = { ...previousFit, ...fitPriors(projected), hold, reliability };
+  const queues = projected.columns.map((c) => c.queue);
+  const own = chooseSample(sample, queues, basis.blocks.length, (epoch) =>
+    weightOf(epoch, referenceEpoch, halfLifeDays),
+  );
+  if (own.length === 0 || queues.length < 2) return { fit: basis, contradictions: [] };
+
+  const table = serve(counts, { ...basis, hold: holdAll }, { halfLifeDays });
+  const seenMin = hold.sparesNew ? 0 : hold.seenMin;
+  const { active, scores } = leaveOneOut(
+    createScorer(table, [], queues, halfLifeDays, { isForFit: true, seenMin }),
+    own,
+  );
+  const before = Float64Array.from(active, (b) => basis.blocks[b].exponent);
   const shared = fitShared(scores, before, shrinkage);
   const byQueue = fitQueues(scores, shared, shrinkage);
-  return {
-    ...previousFit,
-    blocks: previousFit.blocks.map((block, b): Block => {
-      const at = active.indexOf(b);
-      if (at < 0) return { ...block, byQueue: {} };
-      const own = queues.map(
-        (queue, k) => [queue, rounded(byQueue.exponents[k * active.length + at])] as const,
-      );
-      const exponent = rounded(shared[at]);
-      return { ...block, exponent, byQueue: Object.fromEntries(own.filter(([, w]) => w !== exponent)) };
-    }),
-    bias: Object.fromEntries(queues.map((queue, k) => [queue, rounded(byQueue.bias[k])])),
-    hold,
-    logLoss: byQueue.logLoss,
-    messages: own.length,
-  };
+  const blocks = basis.blocks.map((block, b): Block => {
+    const at = active.indexOf(b);
+    if (at < 0) return { ...block, byQueue: {} };
+    const exponent = rounded(shared[at]);
+    const differing = queues.map(
+      (queue, k) => [queue, rounded(byQueue.exponents[k * active.length + at])] as const,
+    );
+    return { ...block, exponent, byQueue: Object.fromEntries(differing.filter(([, w]) => w !== exponent)) };
+  });
+  const bias = Object.fromEntries(queues.map((queue, k) => [queue, rounded(byQueue.bias[k])]));
+  const fit: Fit = { ...basis, blocks, bias, logLoss: meanLoss(scores, byQueue.logs), messages: own.length };
+  // With nothing else in the queue, nothing else can say that a message does not belong there.
+  const isAlone = ({ queue, weight }: Own) => projected.messages[queue] - weight < 1;
+  return { fit, contradictions: contradict(scores, byQueue.logs, queues, own, isAlone) };
+}
+
+function contradict(
+  { queues: width, truth }: LabelledScores,
+  logs: Float64Array,
+  queues: readonly string[],
+  own: readonly OwnMessage[],
+  isAlone: (own: Own) => boolean,
+): Contradiction[] {
+  return own
+    .flatMap((message, i): Contradiction[] => {
+      const p = normalise(logs.subarray(i * width, (i + 1) * width)).map(Math.exp);
+      if (p[truth[i]] >= contradictedBelow || isAlone(message)) return [];
+      const top = p.indexOf(Math.max(...p));
+      return [
+        {
+          index: message.index,
+          probability: p[truth[i]],
+          likelier: queues[top],
+          likelierProbability: p[top],
+        },
+      ];
+    })
+    .sort((a, b) => a.probability - b.probability || a.index - b.index);
+}
+
+interface OwnMessage extends Own {
+  readonly index: number;
+  readonly features: Features;
+}
+
+/** The messages that are fitted to, with what each weighs in the counts. */
+function chooseSample(
+  sample: readonly FoldedMessage[],
+  queues: readonly string[],
+  blocks: number,
+  weightAt: (epoch: number) => number,
+): OwnMessage[] {
+  const max = Math.min(
+    bounds.fitMessagesMax,
+    Math.floor(bounds.fitScoresMax / (Math.max(1, queues.length) * blocks)),
+  );
+  const indices = spread([...sample.keys()], max);
+  return indices
+    .map((index): OwnMessage => {
+      const { features, queue, epoch } = sample[index];
+      return { index, features, queue: queues.indexOf(queue), weight: weightAt(epoch) };
+    })
+    .filter((message) => message.queue >= 0 && message.weight > 0);
 }
 
 /** Leave-one-out scores of the blocks that score anything at all (`active`). */
 function leaveOneOut(
   scorer: Scorer,
-  own: readonly { readonly features: Features; readonly queue: number; readonly weight: number }[],
+  own: readonly OwnMessage[],
 ): { readonly active: readonly number[]; readonly scores: LabelledScores } {
   const queues = scorer.queues.length;
   const blocks = scorer.fit.blocks.length;

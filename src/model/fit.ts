@@ -49,6 +49,14 @@ export interface Hold {
   readonly sparesNew: boolean;
 }
 
+/** How stated posteriors are corrected so that they come true. */
+export interface Reliability {
+  /** Corrected log odds of the largest posterior at the middle of each band of the record; null: nothing to correct. */
+  readonly logOdds: readonly number[] | null;
+  /** The record when this was learned, cell by cell: what was said since was said with this correction. Empty at first. */
+  readonly since: readonly number[];
+}
+
 /** Everything fitted from the counts: small, kept beside them in the served table. */
 export interface Fit {
   readonly version: 1;
@@ -61,6 +69,7 @@ export interface Fit {
   readonly beta: Readonly<Record<string, number>>;
   /** Chosen for the table's size; the exponents were fitted without the tokens that fail it. */
   readonly hold: Hold;
+  readonly reliability: Reliability;
   /** Mean leave-one-out log loss of the fitted sample, nats; null where nothing was fitted. */
   readonly logLoss: number | null;
   /** Messages in that sample. */
@@ -106,6 +115,7 @@ export function defaultFit(schema: Schema): Fit {
     alpha: 1,
     beta: Object.fromEntries(schema.slots.map((slot) => [slot.id, 1])),
     hold: { seenMin: 0, relevanceMin: 0, sparesNew: true },
+    reliability: { logOdds: null, since: [] },
     logLoss: null,
     messages: 0,
   };

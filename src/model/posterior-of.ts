@@ -1,7 +1,8 @@
 import type { Features } from '../features/schema.ts';
 import { tokenHex } from '../features/schema.ts';
-import { type Block, exponentOf } from './fit.ts';
+import { type Block, exponentOf, type Reliability } from './fit.ts';
 import type { EvidencePart, Posterior } from './posterior.ts';
+import { correctedLogOdds } from './reliability.ts';
 import {
   blockScores,
   emptySums,
@@ -22,7 +23,7 @@ export function posteriorOf(scorer: Scorer, features: Features): Posterior {
   return {
     queues: scorer.queues,
     logProb,
-    probability: logProb.map(Math.exp),
+    probability: correct(logProb, scorer.fit.reliability),
     ...countTokens(scorer, features),
   };
 }
@@ -42,6 +43,25 @@ export function normalise(logs: Float64Array): Float64Array {
   const top = logs.reduce((a, b) => Math.max(a, b), -Infinity);
   const whole = top + Math.log(logs.reduce((sum, x) => sum + Math.exp(x - top), 0));
   return logs.map((x) => x - whole);
+}
+
+/** The posterior made to come true: its largest entry is set to what statements like it came to, by raising the whole to a power,
+ *  so that it still sums to 1 and keeps its order; [queues]. */
+export function correct(logProb: Float64Array, reliability: Reliability): Float64Array {
+  const top = logProb.reduce((a, b) => Math.max(a, b), -Infinity);
+  const said = top - Math.log(-Math.expm1(top));
+  const target = 1 / (1 + Math.exp(-correctedLogOdds(reliability, said)));
+  if (reliability.logOdds === null || said === Infinity) return logProb.map(Math.exp);
+  const raised = (power: number) => normalise(logProb.map((x) => x * power)).map(Math.exp);
+  let low = 1e-3;
+  let high = 1e3;
+  // The largest entry rises with the power; 50 halvings of the range of its logarithm leave 1e-14 of it.
+  for (let i = 0; i < 50; i++) {
+    const power = Math.sqrt(low * high);
+    if (raised(power).reduce((a, b) => Math.max(a, b)) < target) low = power;
+    else high = power;
+  }
+  return raised(Math.sqrt(low * high));
 }
 
 /** The addends of the log posterior before normalisation: prior, slots, tokens by region, and per region the tokens that

@@ -133,11 +133,16 @@ function newestEpochs(counts: Counts, g: number, tokens: Float64Array): Float64A
   return newest;
 }
 
-/** About what the rows take when encoded: a hash's distance and, for each cell, its column and count. */
-function bytesOf(region: RegionCounts, isKept: (row: number) => boolean): number {
+/** About what the rows take when encoded (see codec-counts): 4 bytes a hash, as long as a region holds 4 thousand to 500
+ *  thousand; for each cell its column, and its count when that is not 1. */
+function bytesOf({ tokens, start, column, count }: RegionCounts, isKept: (row: number) => boolean): number {
   let bytes = 0;
-  for (let i = 0; i < region.tokens.length; i++)
-    if (isKept(i)) bytes += 4.3 + 1.4 * (region.start[i + 1] - region.start[i]);
+  for (let i = 0; i < tokens.length; i++) {
+    if (!isKept(i)) continue;
+    bytes += 4;
+    for (let p = start[i]; p < start[i + 1]; p++)
+      bytes += (column[p] < 32 ? 1 : 2) + (count[p] === 1 ? 0 : Number.isInteger(count[p]) ? 1 : 2);
+  }
   return bytes;
 }
 

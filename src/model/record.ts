@@ -8,8 +8,15 @@ const bandWidth = 0.75;
 
 /** The band of a stated posterior. 0 and 1 fall in the outermost bands. */
 export function bandOf(posterior: number): number {
-  const logOdds = Math.log(posterior) - Math.log1p(-posterior);
+  return bandOfLogOdds(Math.log(posterior) - Math.log1p(-posterior));
+}
+
+export function bandOfLogOdds(logOdds: number): number {
   return Math.min(recordBands - 1, Math.max(0, Math.floor((logOdds - firstEdge) / bandWidth)));
+}
+
+export function bandMiddleLogOdds(band: number): number {
+  return firstEdge + (band + 0.5) * bandWidth;
 }
 
 /** Probabilities at which bands meet: band b reaches from edges[b] to edges[b + 1]; [bands + 1]. */
