@@ -97,6 +97,7 @@ for _ in $(seq 300); do
   if curl -s -o /dev/null "http://127.0.0.1:$PORT/"; then break; fi
   sleep 0.2
 done
-radosgw-admin "${C[@]}" -n client.rgw user create --uid=test --display-name=test \
+# It takes the server's name, and would say that the server's admin socket is there already.
+radosgw-admin "${C[@]}" --admin-socket="$D/run/admin.asok" -n client.rgw user create --uid=test --display-name=test \
   --access-key=testkey --secret-key=testsecret >/dev/null
 echo "http://127.0.0.1:$PORT"
