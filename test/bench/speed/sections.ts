@@ -84,6 +84,22 @@ export async function routeSection(rounds: number): Promise<Row[]> {
         ),
     },
     {
+      what: 'parse, features',
+      pieces,
+      note: 'of texts just parsed',
+      run: async () => {
+        for (const { bytes } of mails) extractor.extract(await parseMail(bytes));
+      },
+    },
+    {
+      what: 'parse, features, score',
+      pieces,
+      note: '',
+      run: async () => {
+        for (const { bytes } of mails) posteriorOf(scorer, extractor.extract(await parseMail(bytes)));
+      },
+    },
+    {
       what: 'whole route',
       pieces,
       note: 'all of it and the metadata, no store',
