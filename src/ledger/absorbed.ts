@@ -19,7 +19,7 @@ export function createAbsorbedReader(world: World): (manifest: Manifest) => Prom
   };
 }
 
-/** Ids of all segments ever absorbed, ascending. Kept for good, 22 bytes each: what a history says of a segment can be
+/** Ids of all segments ever absorbed, ascending. Kept for good, 23 bytes each: what a history says of a segment can be
  *  decided at any time, whatever the clocks say. */
 export async function readAbsorbed(world: World, id: string | null): Promise<string[]> {
   if (id === null) return [];
