@@ -211,9 +211,12 @@ class Round {
   async #commit(readAtVersion: number): Promise<void> {
     const id = this.#segment;
     const planned = [...this.#planned];
-    const entries = planned.map(([work, { move }]): Entry => {
+    const entries = planned.flatMap(([work, { move }]): Entry[] => {
       const { encoded, said, minus, plus } = move as NonNullable<Plan['move']>;
-      return { features: decodeFeatures(encoded, this.#schema, historyKey(work.message)), said, minus, plus };
+      if (minus === null && plus === null) return [];
+      return [
+        { features: decodeFeatures(encoded, this.#schema, historyKey(work.message)), said, minus, plus },
+      ];
     });
     await putNew(this.#world, keys.segments + id, encodeEntries(this.#schema, entries));
     const erases = planned.some(([, { move }]) => move?.erases);

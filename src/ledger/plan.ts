@@ -80,6 +80,9 @@ export function plan(
   return { ...draft.finish(stored, segment), answers };
 }
 
+/** Who took a message out for good; no person's placement has no queue. */
+const erase = 'erase';
+
 /** Marks what belongs to the segment being made. */
 const unstamped = '';
 
@@ -158,7 +161,10 @@ class Draft {
   finish(stored: History | null, segment: string): Omit<Plan, 'answers'> {
     const top = this.#isErasing ? null : standing(this.#confirmations);
     const [minus, plus] = [columnOf(this.#last), columnOf(top)];
-    const isMoved = !isSameColumn(minus, plus);
+    // Before its features go, an erasure has a segment of its own that landed, also where nothing is to be subtracted: from
+    // then on no restore can bring the message back.
+    const isErased = this.#isErasing && (this.#last === null || isErasure(this.#last));
+    const isMoved = this.#isErasing ? !isErased : !isSameColumn(minus, plus);
     // Without a move, what is new is accounted for by the placement that stands already.
     const stamp = isMoved ? segment : (this.#last?.segment ?? unstamped);
     const confirmations = this.#confirmations.map((c) => ({
@@ -167,7 +173,7 @@ class Draft {
       ...(c.undone === unstamped ? { undone: stamp } : {}),
     }));
     const placements = isMoved ? [...this.#landed, this.#placement(top, segment)] : this.#landed;
-    if (this.#isErasing && !isMoved) return { next: this.#tombstone(stored), move: null };
+    if (isErased) return { next: this.#tombstone(stored), move: null };
     if (stored === null && confirmations.length === 0) return { next: null, move: null };
     const next: History = {
       format: 1,
@@ -197,13 +203,17 @@ class Draft {
 
   #placement(top: Recorded | null, segment: string): Placement {
     if (top !== null) return { queue: top.queue, by: top.by, at: top.at, segment };
-    if (this.#isErasing) return { queue: null, by: 'erase', at: this.#erasedAt, segment };
+    if (this.#isErasing) return { queue: null, by: erase, at: this.#erasedAt, segment };
     return { queue: null, by: 'undo', at: this.#undoneAt ?? this.#last?.at ?? '', segment };
   }
 
   #tombstone(stored: History | null): Stored {
     return { format: 1, rev: (stored?.rev ?? 0) + 1, erasedAt: this.#erasedAt };
   }
+}
+
+function isErasure({ queue, by }: Placement): boolean {
+  return queue === null && by === erase;
 }
 
 function done(confirmations: number): Answer {

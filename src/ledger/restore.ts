@@ -46,7 +46,7 @@ export async function restoreVersion(
   if (gone.size === 0 && target.base === before.base) return { kind: 'nothing-to-do', ...outcome };
   if (options.dryRun) return { kind: 'dry-run', ...outcome };
   const table = await tableFor(world, desk, schema, target, before, id);
-  await placeOrder(world, { kind: 'sweep', atMs: world.nowMs() });
+  const order = await placeOrder(world, { kind: 'sweep', atMs: world.nowMs() });
   const committed = await commit<boolean>(world, async (manifest) => {
     if (manifest.restores.some((r) => r.id === id)) return { kind: 'settled', value: true };
     if (manifest.version !== before.version) return { kind: 'settled', value: false };
@@ -67,6 +67,7 @@ export async function restoreVersion(
   const { version } = committed.manifest;
   if (!committed.value) return { kind: 'lost-race', ...outcome, version };
   const isDone = await sweepHistories(world);
+  if (isDone) await world.store.delete(order);
   return { kind: isDone ? 'restored' : 'unfinished', ...outcome, version };
 }
 

@@ -4,6 +4,7 @@ import { compact } from '../../src/ledger/compaction.ts';
 import { eraseMessages } from '../../src/ledger/erase.ts';
 import { recount } from '../../src/ledger/recount.ts';
 import { restoreVersion } from '../../src/ledger/restore.ts';
+import { undoConfirmations } from '../../src/ledger/undo.ts';
 import { createMemoryStore } from '../../src/store/memory.ts';
 import type { Store } from '../../src/store/store.ts';
 import { claim, desk, fold, keysOf, schema, standings, testWorld, tokenOf } from './fixture.ts';
@@ -22,6 +23,18 @@ function before(inner: Store, prefix: string, act: () => Promise<void>): Store {
       return inner.put(key, body, options);
     },
   };
+}
+
+/** Runs `act` until it puts a key that starts so: its process dies there, that call never returns. */
+function dieAt(inner: Store, prefix: string, act: (store: Store) => Promise<unknown>): Promise<void> {
+  return new Promise((died) => {
+    const put: Store['put'] = (key, body, options) => {
+      if (!key.startsWith(prefix)) return inner.put(key, body, options);
+      died();
+      return new Promise(() => {});
+    };
+    void act({ ...inner, put });
+  });
 }
 
 const dayMs = 24 * 3600_000;
@@ -68,21 +81,28 @@ describe('what the simulation found once stays mended:', () => {
     const inner = createMemoryStore();
     const world = testWorld(1, inner);
     await fold(world, claim('m1', 'billing'));
-    // The process dies when its segment is to be put: that call never returns.
-    await new Promise<void>((died) => {
-      const put: Store['put'] = (key, body, options) => {
-        if (!key.startsWith('model/segments/')) return inner.put(key, body, options);
-        died();
-        return new Promise(() => {});
-      };
-      void eraseMessages({ ...world, store: { ...inner, put } }, schema, ['m1']);
-    });
+    await dieAt(inner, 'model/segments/', (store) => eraseMessages({ ...world, store }, schema, ['m1']));
     world.clock.ms += 60_000;
     expect(await fold(world, claim('m1', 'leaks', 5))).toMatchObject([
       { kind: 'refused', fault: { code: 'message-erased' } },
     ]);
     expect(await standings(world, ['m1'])).toEqual({});
     await expect(restoreVersion(world, desk, schema, 1)).rejects.toMatchObject({ code: 'version-unknown' });
+  });
+
+  it('a restore while an undone message is being erased does not leave it in the counts for good', async () => {
+    const inner = createMemoryStore();
+    const world = testWorld(1, inner);
+    await fold(world, claim('m1', 'billing'), claim('m2', 'leaks'));
+    await undoConfirmations(world, schema, { by: 'ann', sinceMs: 0, untilMs: world.clock.ms });
+    await dieAt(inner, 'model/segments/', (store) => eraseMessages({ ...world, store }, schema, ['m1']));
+    await restoreVersion(world, desk, schema, 1);
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'billing', m2: 'leaks' });
+    world.clock.ms += 60_000;
+    expect(await compact(world, desk, schema)).toMatchObject({ orders: 1 });
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m2: 'leaks' });
+    await expect(restoreVersion(world, desk, schema, 1)).rejects.toMatchObject({ code: 'version-unknown' });
+    expect(await recount(world, desk, schema)).toMatchObject({ fault: null, differences: [] });
   });
 
   it('a compaction within the very millisecond of an erasure leaves none of its segments', async () => {
