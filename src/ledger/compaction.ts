@@ -52,6 +52,8 @@ export interface CompactionResult {
   readonly drift: readonly ChangedQueue[];
   /** Erasures and undos of crashed processes that were brought to their end. */
   readonly orders: number;
+  /** Those that could not be finished now. */
+  readonly ordersLeft: number;
   readonly deletedObjects: number;
 }
 
@@ -65,13 +67,15 @@ export async function compact(
   options: CompactionOptions = {},
 ): Promise<CompactionResult> {
   const isDryRun = options.dryRun ?? false;
-  const orders = isDryRun ? 0 : await finishOrders(world, schema, bounds.foldPatienceMs);
+  const orders = isDryRun
+    ? { finished: 0, left: 0 }
+    : await finishOrders(world, schema, bounds.foldPatienceMs);
   const made = await withFresh(() => compactOnce(world, desk, schema, options));
   const deletedObjects = await deleteUnnamed(world, isDryRun);
-  return { ...made, orders, deletedObjects };
+  return { ...made, orders: orders.finished, ordersLeft: orders.left, deletedObjects };
 }
 
-type Made = Omit<CompactionResult, 'orders' | 'deletedObjects'>;
+type Made = Omit<CompactionResult, 'orders' | 'ordersLeft' | 'deletedObjects'>;
 
 async function compactOnce(
   world: World,

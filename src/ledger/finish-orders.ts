@@ -7,23 +7,29 @@ import { sweepHistories } from './sweep.ts';
 import { carryOutUndo } from './undo.ts';
 import type { World } from './world.ts';
 
-/** Carries out the orders that are older than `ageMs`: younger ones are being carried out by who placed them. Gives their number. */
-export async function finishOrders(world: World, schema: Schema, ageMs: number): Promise<number> {
+/** Carries out the orders that are older than `ageMs`: younger ones are being carried out by who placed them. Gives how many
+ *  are done with, and how many are left for the next time. */
+export async function finishOrders(
+  world: World,
+  schema: Schema,
+  ageMs: number,
+): Promise<{ readonly finished: number; readonly left: number }> {
   const found: string[] = [];
   for await (const { key } of world.store.list(keys.orders)) {
     const id = key.slice(keys.orders.length, -'.json'.length);
     if (!isId(id) || world.nowMs() - timeOf(id) >= ageMs) found.push(key);
   }
-  let finished = 0;
+  let [finished, left] = [0, 0];
   for (const key of found) {
     const got = await world.store.get(key);
+    // Another process brought it to its end.
     if (got.kind !== 'found') continue;
     if (await carryOut(world, schema, readOrder(got.object.body, key))) {
       await world.store.delete(key);
       finished += 1;
-    }
+    } else left += 1;
   }
-  return finished;
+  return { finished, left };
 }
 
 /** True when all of it is done. */

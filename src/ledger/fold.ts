@@ -3,8 +3,10 @@ import type { Desk } from '../desk/desk.ts';
 import type { Fault } from '../errors.ts';
 import type { Schema } from '../features/schema.ts';
 import { encodeFeatures } from '../model/codec-entries.ts';
+import { checkKey } from '../store/checks.ts';
 import { historyKey } from './history-store.ts';
 import { type Landing, land, type Work } from './land.ts';
+import { faultOf } from './pace.ts';
 import { isQueueOpen } from './queue-names.ts';
 import type { Claim, FoldOutcome, World } from './world.ts';
 
@@ -70,6 +72,12 @@ function outcomeOf(landing: Landing, request: number): FoldOutcome {
 }
 
 function faultIn(claim: Claim, nowMs: number): Fault | null {
+  const key = historyKey(claim.confirmation.message);
+  try {
+    checkKey(key);
+  } catch (error) {
+    return faultOf(error, key);
+  }
   const atMs = Date.parse(claim.confirmation.at);
   if (atMs >= 0 && atMs <= nowMs + bounds.confirmedAheadMsMax) return null;
   return {

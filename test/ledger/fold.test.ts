@@ -91,6 +91,19 @@ describe('a fold', () => {
     expect(await standings(world, ['m1', 'm2', 'm3'])).toEqual({ m3: 'leaks' });
   });
 
+  it('refuses a message whose history no store could hold', async () => {
+    const world = testWorld();
+    const [tooLong, control] = ['x'.repeat(1024), 'a\u0000b'];
+    const outcomes = await fold(
+      world,
+      claim(tooLong, 'billing'),
+      claim(control, 'billing'),
+      claim('m1', 'billing'),
+    );
+    expect(kinds(outcomes)).toEqual(['refused', 'refused', 'folded']);
+    expect(outcomes[0]).toMatchObject({ fault: { code: 'key-refused' } });
+  });
+
   it('writes once for each message and twice for the batch: 1,000 confirmations, 1,002 writes', async () => {
     const counted = countingStore(createMemoryStore());
     const world = testWorld(1, counted.store);
