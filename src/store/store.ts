@@ -36,11 +36,13 @@ export interface PutOptions {
 export interface Store {
   /** Human-readable place, for messages: a directory path or `s3://bucket/prefix`. */
   readonly place: string;
+  /** Throws TallypostError `object-too-large`, before the body is read, when it has more than `bytesMax`. */
   get(
     key: string,
     options?: { readonly ifNoneMatch?: string; readonly bytesMax?: number },
   ): Promise<GetResult>;
-  /** The body in chunks of bounded size, for large objects; null when missing. */
+  /** The body in chunks of bounded size, for large objects; null when missing. Read the chunks, or stop reading them:
+   *  until then the file or the connection is held. */
   stream(
     key: string,
   ): Promise<{ readonly head: ObjectHead; readonly chunks: AsyncIterable<Uint8Array> } | null>;
