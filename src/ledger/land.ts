@@ -103,7 +103,7 @@ class Round {
     checkSchema(first, this.#schema);
     const opened = await this.#open(works);
     const { manifest, ready } = await this.#voidOthers(opened, first);
-    const hasAbsorbed = await this.#absorbedOf(manifest);
+    const hasAbsorbed = await this.#absorbedFor(ready, manifest);
     this.#segment = newId(this.#world, manifest.floor, manifest.atMs);
     this.#own.add(this.#segment);
     await mapBounded(ready, (one) => this.#write(one, manifest, hasAbsorbed));
@@ -134,15 +134,20 @@ class Round {
     return opened.filter((one) => one !== null);
   }
 
+  /** Reads the list of absorbed segments only when a history names a segment that is not beside the base. What turns up later
+   *  than that looks open, and is settled by the next round. */
+  async #absorbedFor(opened: readonly Opened[], manifest: Manifest): Promise<HasAbsorbed> {
+    const lasts = opened.flatMap(({ read }) => lastSegmentOf(read.stored) ?? []);
+    return lasts.some((id) => !isNamed(manifest, id)) ? this.#absorbedOf(manifest) : () => false;
+  }
+
   /** Takes the right to land from every segment that stands in the way: void before takeover. What turns out to have landed
    *  stays landed. Young segments of others are left alone, and their messages with them. */
   async #voidOthers(
     opened: readonly Opened[],
     first: Manifest,
   ): Promise<{ manifest: Manifest; ready: Opened[] }> {
-    const lasts = new Set(opened.flatMap(({ read }) => lastSegmentOf(read.stored) ?? []));
-    const mayBeAbsorbed = [...lasts].some((id) => !isNamed(first, id));
-    const hasAbsorbed = mayBeAbsorbed ? await this.#absorbedOf(first) : () => false;
+    const hasAbsorbed = await this.#absorbedFor(opened, first);
     const inTheWay = new Set<string>();
     const ready = opened.filter(({ work, read }) => {
       const blocking = settle(read.stored, first, hasAbsorbed, null).open?.segment;

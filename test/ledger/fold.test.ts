@@ -115,6 +115,19 @@ describe('a fold', () => {
     expect([...(await countsNow(world)).messages]).toEqual([500, 500]);
   });
 
+  it('reads the list of absorbed segments only for messages that were confirmed before', async () => {
+    const counted = countingStore(createMemoryStore());
+    const world = testWorld(1, counted.store);
+    await fold(world, claim('m1', 'billing'));
+    await compact(world, desk, schema);
+    for (const name of Object.keys(counted.calls)) delete counted.calls[name];
+    await fold(world, claim('m2', 'billing'));
+    // The manifest, the history, the manifest again before it is replaced.
+    expect(counted.calls).toEqual({ get: 3, put: 3 });
+    await fold(world, claim('m1', 'leaks', 5));
+    expect(counted.calls).toEqual({ get: 7, put: 6 });
+  });
+
   it('leaves a damaged history alone, names it, and folds the rest', async () => {
     const world = testWorld();
     await world.store.put('histories/m1.json', Buffer.from('{"format":1,"rev":3}'));
