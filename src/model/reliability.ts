@@ -20,39 +20,68 @@ export function countBands(record: Float64Array, since: readonly number[]): Band
   });
 }
 
-/** Draws' worth of belief that a band comes true at the rate said: a true rate within a few points of the middle of its band
- *  is no bias; and of the belief that it may come true at any other rate. */
-const soundDraws = 100;
-const biasedDraws = 2;
+/** Neighbouring bands that are tested together: log odds -3 to 0, 0 to 3, 3 to 6 and above, that is posteriors below 0.5, 0.95,
+ *  0.9975 and above. Single bands would need many hundreds of confirmations to show a bias that they share. */
+const groupBands = 4;
+
+/** Draws' worth of belief that a group comes true at the rate said: a rate within a few points is no bias. */
+const soundDraws = 300;
 /** Odds of 20 to 1 against the record being sound: strong evidence in the words of Kass and Raftery, JASA 90 (1995). */
 const logFactorMin = Math.log(20);
 /** Draws' worth of what was said in a corrected rate. */
 const priorDraws = 20;
 
-/** log Bayes factor of "the bands come true at rates of their own" against "they come true as said": Beta-binomial evidence of
- *  both, in closed form. */
-export function biasEvidence(bands: readonly BandCounts[]): number {
-  return bands.reduce((sum, { hits, misses }, b) => {
-    const said = middle(b);
-    const evidence = (draws: number) =>
-      logBetaBinomial(hits, hits + misses, draws * said, draws * (1 - said));
-    return sum + evidence(biasedDraws) - evidence(soundDraws);
-  }, 0);
+/** log Bayes factor, by group of bands, of "they come true at some rate" against "they come true as said": Beta-binomial evidence
+ *  of both, in closed form, with Jeffreys's prior of the rate and one around what was said. [groups]. */
+export function biasEvidence(bands: readonly BandCounts[]): number[] {
+  return Array.from({ length: recordBands / groupBands }, (_, g) => {
+    let [hits, draws, said] = [0, 0, 0];
+    for (let b = g * groupBands; b < (g + 1) * groupBands; b++) {
+      hits += bands[b].hits;
+      draws += bands[b].hits + bands[b].misses;
+      said += (bands[b].hits + bands[b].misses) * middle(b);
+    }
+    if (draws === 0) return 0;
+    const rate = said / draws;
+    const sound = logBetaBinomial(hits, draws, soundDraws * rate, soundDraws * (1 - rate));
+    return logBetaBinomial(hits, draws, 0.5, 0.5) - sound;
+  });
 }
 
-/** The correction after the record's news. What was said since the last one was said with it, so that a further bias comes on
- *  top of it; with no further bias it stays, and its record goes on. */
+/** The correction after the record's news. Bands of a group that shows a bias are corrected to what came true, shrunk to what was
+ *  said; what was said since the last correction was said with it, so that a further bias comes on top of it. Groups without
+ *  a bias stay as they are, and their record goes on. */
 export function learnReliability(record: Float64Array, last: Reliability): Reliability {
   const bands = countBands(record, last.since);
-  if (biasEvidence(bands) < logFactorMin) return last;
-  const rates = bands.map(
-    ({ hits, misses }, b) => (priorDraws * middle(b) + hits) / (priorDraws + hits + misses),
+  const isBiased = biasEvidence(bands).map((evidence) => evidence > logFactorMin);
+  if (!isBiased.includes(true)) return last;
+  const drawsOf = (b: number) => (isBiased[Math.floor(b / groupBands)] ? bands[b].hits + bands[b].misses : 0);
+  const rates = bands.map(({ hits }, b) =>
+    drawsOf(b) === 0 ? middle(b) : (priorDraws * middle(b) + hits) / (priorDraws + drawsOf(b)),
   );
-  const weights = bands.map(({ hits, misses }) => priorDraws + hits + misses);
-  const residual = isotonic(rates, weights).map((rate) => Math.log(rate) - Math.log1p(-rate));
+  const residual = isotonic(
+    rates,
+    bands.map((_, b) => priorDraws + drawsOf(b)),
+  ).map(logOddsOf);
   const before = last.logOdds ?? residual.map((_, b) => bandMiddleLogOdds(b));
-  return { logOdds: before.map((x) => interpolate(residual, x)), since: [...record] };
+  return {
+    logOdds: rising(before.map((x) => interpolate(residual, x))),
+    since: [...record].map((n, i) => (isBiased[Math.floor(i / 4 / groupBands)] ? n : (last.since[i] ?? 0))),
+  };
 }
+
+/** At least a little higher from band to band: of two messages the surer one stays the surer one where bands were pooled. */
+function rising(logOdds: readonly number[]): number[] {
+  let floor = -Infinity;
+  return logOdds.map((x) => {
+    const risen = Math.max(x, floor);
+    floor = risen + riseMin;
+    return risen;
+  });
+}
+
+/** Log odds a band: over all bands less than a fifth of a band's width. */
+const riseMin = 0.01;
 
 /** Non-decreasing values nearest to `values` in weighted squares, by pooling neighbours that are out of order.
  *  Source: Barlow, Bartholomew, Bremner, Brunk, Statistical inference under order restrictions (1972), section 1.2. */
@@ -93,4 +122,8 @@ function interpolate(logOdds: readonly number[], x: number): number {
 
 function middle(band: number): number {
   return 1 / (1 + Math.exp(-bandMiddleLogOdds(band)));
+}
+
+function logOddsOf(rate: number): number {
+  return Math.log(rate) - Math.log1p(-rate);
 }
