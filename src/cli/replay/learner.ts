@@ -2,7 +2,7 @@ import { bounds } from '../../bounds.ts';
 import type { Desk } from '../../desk/desk.ts';
 import type { Features, Schema } from '../../features/schema.ts';
 import { encodeTable } from '../../model/codec-table.ts';
-import type { Entry } from '../../model/counts.ts';
+import type { Entry, Said } from '../../model/counts.ts';
 import { defaultFit } from '../../model/fit.ts';
 import { type FoldedMessage, fitTable } from '../../model/fit-table.ts';
 import { emptyCounts, epochAt, foldEntries } from '../../model/fold.ts';
@@ -11,8 +11,8 @@ import { emptyTable, type ServedTable, serve } from '../../model/served-table.ts
 
 /** A table that learns in memory by the steps of the confirming and compacting functions, without a store. */
 export interface Learner {
-  /** One confirmed message; in force for the scorer from the next `refresh` or `compact` on. */
-  fold(features: Features, queue: string, atMs: number): void;
+  /** One confirmed message, with what was said of it before; in force for the scorer from the next `refresh` or `compact` on. */
+  fold(features: Features, queue: string, atMs: number, said: Said | null): void;
   /** What a router would have loaded by now: the last compaction's table with everything folded since. */
   refresh(): Scorer;
   /** What a nightly compaction does: fit the exponents, prune, make the served table. */
@@ -42,9 +42,9 @@ export function createLearner(desk: Desk, schema: Schema, isFitting: boolean): L
     uncounted = 0;
   };
   return {
-    fold(features, queue, atMs) {
+    fold(features, queue, atMs, said) {
       const epoch = epochAt(atMs);
-      overlay.push({ features, said: null, minus: null, plus: { queue, epoch } });
+      overlay.push({ features, said, minus: null, plus: { queue, epoch } });
       sample.push({ features, queue, epoch });
       uncounted += 1;
       waiting += 1;

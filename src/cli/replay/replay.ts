@@ -1,9 +1,11 @@
 import { decide } from '../../decision/decide.ts';
+import type { Decision } from '../../decision/decision.ts';
 import type { Desk } from '../../desk/desk.ts';
 import { TallypostError } from '../../errors.ts';
 import { createExtractor } from '../../features/extractor.ts';
 import type { Features } from '../../features/schema.ts';
 import type { Message } from '../../message/message.ts';
+import type { Said } from '../../model/counts.ts';
 import { posteriorOf } from '../../model/posterior-of.ts';
 import type { Scorer } from '../../model/scorer.ts';
 import { createLearner, type Learner } from './learner.ts';
@@ -115,7 +117,7 @@ interface Run {
   readonly options: ReplayOptions;
 }
 
-function scoreOne(run: Run, scorer: Scorer, each: Remembered): void {
+function scoreOne(run: Run, scorer: Scorer, each: Remembered): Decision {
   const startedMs = performance.now();
   const posterior = posteriorOf(scorer, each.features);
   const decision = decide({
@@ -132,13 +134,20 @@ function scoreOne(run: Run, scorer: Scorer, each: Remembered): void {
     run.desk.queues.some((queue) => queue.id === each.queue) ? each.queue : null,
   );
   run.spent.scoreMs += performance.now() - startedMs;
+  return decision;
+}
+
+/** What the record of reliability takes from a decision: nothing from a guard's, which claims no probability. */
+function saidBy(decision: Decision): Said | null {
+  if (decision.kind === 'guarded' || decision.queue === null) return null;
+  return { queue: decision.queue, posterior: decision.posterior, isAudit: false };
 }
 
 function learnAll(run: Run, messages: readonly Remembered[]): Scorer {
   const startedMs = performance.now();
   run.options.onProgress(0, 0, `learning ${messages.length} messages`);
   for (const each of messages)
-    if (each.queue !== null) run.learner.fold(each.features, each.queue, dateOf(each));
+    if (each.queue !== null) run.learner.fold(each.features, each.queue, dateOf(each), null);
   run.learner.compact();
   const scorer = run.learner.refresh();
   run.spent.learnMs += performance.now() - startedMs;
@@ -223,8 +232,8 @@ function progress(run: Run, learned: readonly Remembered[]) {
       scorer = learner.refresh();
     } else if (learner.waiting > learner.messages * waitingShareMax) scorer = learner.refresh();
     run.spent.learnMs += performance.now() - startedMs;
-    scoreOne(run, scorer, each);
-    if (each.queue !== null) learner.fold(each.features, each.queue, dateOf(each));
+    const said = saidBy(scoreOne(run, scorer, each));
+    if (each.queue !== null) learner.fold(each.features, each.queue, dateOf(each), said);
     if (index % 50 === 0)
       run.options.onProgress(index, ordered.length, `message ${index} of ${ordered.length}`);
   });
