@@ -29,7 +29,7 @@ export interface EraseResult {
 
 export interface Trace {
   readonly what: string;
-  readonly goneBy: 'now' | 'next compaction';
+  readonly goneBy: 'now' | 'next compaction' | 'lifecycle';
 }
 
 const traces: readonly Trace[] = [
@@ -50,6 +50,10 @@ const traces: readonly Trace[] = [
   {
     what: `token hashes in present and superseded tables (${keys.bases}, ${keys.tables})`,
     goneBy: 'next compaction',
+  },
+  {
+    what: 'versions that a bucket keeps of deleted and replaced objects, by its own rules',
+    goneBy: 'lifecycle',
   },
 ];
 
