@@ -78,7 +78,7 @@ export function fitFindings(
   if (own.length === 0 || queues.length < 2) return { fit: basis, contradictions: [] };
 
   const table = serve(counts, { ...basis, hold: holdAll }, { halfLifeDays });
-  const seenMin = hold.sparesNew ? 0 : hold.seenMin;
+  const seenMin = hold.sparesNew ? {} : hold.seenMin;
   const { active, scores } = leaveOneOut(
     createScorer(table, [], queues, halfLifeDays, { isForFit: true, seenMin }),
     own,

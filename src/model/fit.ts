@@ -41,8 +41,8 @@ export interface Reading {
 
 /** Which tokens a served table holds. */
 export interface Hold {
-  /** Confirmed messages that hold the token, at least. */
-  readonly seenMin: number;
+  /** Confirmed messages that hold the token, at least; by region id. */
+  readonly seenMin: Readonly<Record<string, number>>;
   /** Posterior probability that its rate depends on the queue, at least. */
   readonly relevanceMin: number;
   /** A token that fails stays while it is new: seen within the last `newTokenEpochs`. */
@@ -114,7 +114,7 @@ export function defaultFit(schema: Schema): Fit {
     bias: {},
     alpha: 1,
     beta: Object.fromEntries(schema.slots.map((slot) => [slot.id, 1])),
-    hold: { seenMin: 0, relevanceMin: 0, sparesNew: true },
+    hold: { seenMin: {}, relevanceMin: 0, sparesNew: true },
     reliability: { logOdds: null, since: [] },
     logLoss: null,
     messages: 0,

@@ -4,21 +4,30 @@ import type { Fit, Hold, Reading } from './fit.ts';
 import { createHits, kindOf, readHits } from './hits.ts';
 import { exposureOf, weighModels } from './rates.ts';
 
-export const holdAll: Hold = { seenMin: 0, relevanceMin: 0, sparesNew: true };
+export const holdAll: Hold = { seenMin: {}, relevanceMin: 0, sparesNew: true };
 
-/** From lenient to strict; the first under which the table fits its bound is taken. Tokens seen once go before others, since
- *  they are half of all and tell little; then those whose rate hardly depends on the queue. */
-const levels: readonly Hold[] = [
-  holdAll,
-  { seenMin: 2, relevanceMin: 0.2, sparesNew: true },
-  { seenMin: 2, relevanceMin: 0.2, sparesNew: false },
-  { seenMin: 2, relevanceMin: 0.5, sparesNew: false },
-  { seenMin: 3, relevanceMin: 0.5, sparesNew: false },
-  { seenMin: 4, relevanceMin: 0.5, sparesNew: false },
-  { seenMin: 6, relevanceMin: 0.5, sparesNew: false },
-  { seenMin: 8, relevanceMin: 0.7, sparesNew: false },
-  { seenMin: 16, relevanceMin: 0.9, sparesNew: false },
-];
+/** Rules from lenient to strict. First go old tokens that were seen once or hardly depend on the queue; then tokens seen once,
+ *  which are half of all and tell little, from the regions that hold most of them down to those that hold few; then ever
+ *  more frequent ones. `regions` by falling number of tokens. */
+function* rules(regions: readonly string[]): Generator<Hold> {
+  yield holdAll;
+  const everywhere = (seenMin: number) => Object.fromEntries(regions.map((id) => [id, seenMin]));
+  yield { seenMin: everywhere(2), relevanceMin: 0.2, sparesNew: true };
+  for (const [before, seenMin] of [
+    [1, 2],
+    [2, 3],
+    [3, 4],
+    [4, 6],
+    [6, 8],
+    [8, 16],
+    [16, 32],
+  ] as const) {
+    for (let n = 1; n <= regions.length; n++) {
+      const raised = Object.fromEntries(regions.map((id, i) => [id, i < n ? seenMin : before]));
+      yield { seenMin: raised, relevanceMin: seenMin < 3 ? 0.2 : 0.5, sparesNew: false };
+    }
+  }
+}
 
 /** What is known of each token of a region, by row. */
 interface Tokens {
@@ -35,11 +44,20 @@ interface Tokens {
 export function chooseHold(counts: Counts, projected: Counts, fit: Fit, referenceEpoch: number): Hold {
   const bytesMax = bounds.tableBytesPerQueueMax * Math.max(bounds.tableQueuesMin, projected.columns.length);
   if (sum(projected.regions.map((region) => bytesOf(region, () => true))) <= bytesMax) return holdAll;
+  const ids = projected.schema.regions.map(({ id }) => id);
+  const bySize = [...ids.keys()].sort(
+    (a, b) => projected.regions[b].tokens.length - projected.regions[a].tokens.length,
+  );
   const tokens = describeTokens(counts, projected, fit);
-  const fits = (hold: Hold) =>
-    sum(projected.regions.map((r, g) => bytesOf(r, (i) => isHeld(hold, tokens[g], i, referenceEpoch)))) <=
-    bytesMax;
-  return levels.find(fits) ?? levels[levels.length - 1];
+  let strictest = holdAll;
+  for (const hold of rules(bySize.map((g) => ids[g]))) {
+    strictest = hold;
+    const bytes = projected.regions.map((r, g) =>
+      bytesOf(r, (i) => isHeld(hold, ids[g], tokens[g], i, referenceEpoch)),
+    );
+    if (sum(bytes) <= bytesMax) break;
+  }
+  return strictest;
 }
 
 /** The counts with only the tokens held; totals stay, so that rates stay what they were. `dropped` are frequent tokens that
@@ -50,7 +68,7 @@ export function applyHold(
   fit: Fit,
   referenceEpoch: number,
 ): { readonly held: Counts; readonly dropped: readonly Float64Array[] } {
-  if (fit.hold.seenMin === 0 && fit.hold.relevanceMin === 0) {
+  if (Object.keys(fit.hold.seenMin).length === 0 && fit.hold.relevanceMin === 0) {
     return { held: projected, dropped: projected.regions.map(() => new Float64Array(0)) };
   }
   const tokens = describeTokens(counts, projected, fit);
@@ -59,7 +77,7 @@ export function applyHold(
     const kept: number[] = [];
     const gone: number[] = [];
     for (let i = 0; i < region.tokens.length; i++) {
-      if (isHeld(fit.hold, tokens[g], i, referenceEpoch)) kept.push(i);
+      if (isHeld(fit.hold, projected.schema.regions[g].id, tokens[g], i, referenceEpoch)) kept.push(i);
       else if (tokens[g].seen[i] >= bounds.droppedSeenMin) gone.push(region.tokens[i]);
     }
     dropped.push(Float64Array.from(gone));
@@ -70,11 +88,12 @@ export function applyHold(
 
 function isHeld(
   hold: Hold,
+  region: string,
   { seen, relevance, lastSeen }: Tokens,
   i: number,
   referenceEpoch: number,
 ): boolean {
-  if (seen[i] >= hold.seenMin && relevance[i] >= hold.relevanceMin) return true;
+  if (seen[i] >= (hold.seenMin[region] ?? 0) && relevance[i] >= hold.relevanceMin) return true;
   return hold.sparesNew && lastSeen[i] > referenceEpoch - bounds.newTokenEpochs;
 }
 

@@ -46,8 +46,8 @@ export interface ScorerReading {
 export interface ScorerOptions {
   /** Scores blocks with an exponent of 0 too. */
   readonly isForFit?: boolean;
-  /** Tokens held by fewer messages are scored as if the table did not hold them. */
-  readonly seenMin?: number;
+  /** Tokens held by fewer messages are scored as if the table did not hold them; by region id. */
+  readonly seenMin?: Readonly<Record<string, number>>;
 }
 
 /** Compiles a served table with the entries that came after it. Queues without a column have counts of zero; columns of
@@ -57,7 +57,7 @@ export function createScorer(
   overlay: readonly Entry[],
   queues: readonly string[],
   halfLifeDays: number | null,
-  { isForFit = false, seenMin = 0 }: ScorerOptions = {},
+  { isForFit = false, seenMin = {} }: ScorerOptions = {},
 ): Scorer {
   const counts = overlayEntries(table, overlay, halfLifeDays);
   const { schema } = counts;
@@ -81,7 +81,7 @@ export function createScorer(
     counts: region,
     pruned: table.pruned[g],
     queueOf,
-    seenMin,
+    seenMin: seenMin[schema.regions[g].id] ?? 0,
   }));
   const readings = schema.regions.map(({ id }, g) => {
     const draws = { tokens: byQueue(counts.regions[g].total), messages };

@@ -193,7 +193,7 @@ describe('the served table', () => {
   const table = serve(counts, { ...defaultFit(schema), hold }, plain);
 
   test('keeps to its bound by dropping tokens seen once and not lately; totals and vocabulary stay', () => {
-    expect(hold).toEqual({ seenMin: 2, relevanceMin: 0.2, sparesNew: true });
+    expect(hold).toEqual({ seenMin: { subject: 2, word: 2, pair: 2 }, relevanceMin: 0.2, sparesNew: true });
     const bytesMax = bounds.tableBytesPerQueueMax * bounds.tableQueuesMin;
     const whole = serve(counts, defaultFit(schema), plain);
     expect(encodeTable(whole).length).toBeGreaterThan(bytesMax);
@@ -218,7 +218,10 @@ describe('the served table', () => {
   });
 
   test('does not take a frequent token that was dropped for a new one', () => {
-    const strict = { ...defaultFit(schema), hold: { seenMin: 5000, relevanceMin: 0, sparesNew: false } };
+    const strict = {
+      ...defaultFit(schema),
+      hold: { seenMin: { word: 5000 }, relevanceMin: 0, sparesNew: false },
+    };
     const strictTable = serve(counts, strict, plain);
     const dropped = messages[0].features.regions[1][1];
     expect([...strictTable.pruned[1]]).toContain(dropped);
