@@ -98,7 +98,10 @@ describe(`a process on a directory is killed ${killsWanted} times at any moment 
       clearTimeout(timer);
       child.kill('SIGKILL');
       if (answers.length < orders.length) inTheMiddle += 1;
-      else usualMs = usualMs * 0.8 + (performance.now() - startedMs) * 0.2;
+      // On a busy machine the first guess may be too short for anything to be done before the kill.
+      if (answers.length === 0) usualMs *= 1.5;
+      else if (answers.length === orders.length)
+        usualMs = usualMs * 0.8 + (performance.now() - startedMs) * 0.2;
 
       // What was not answered, or answered with `retry`, is delivered again, as a queue would.
       const folds = answers.filter((answer) => answer.kind === 'folded');
