@@ -1,15 +1,14 @@
-import { bounds } from '../bounds.ts';
 import type { Features } from '../features/schema.ts';
 import type { Counts } from './counts.ts';
 import type { Block, Fit } from './fit.ts';
 import { fitQueues, fitShared, type LabelledScores, meanLoss, type Shrinkage } from './fit-exponents.ts';
 import type { Own } from './hits.ts';
+import { type OwnMessage, scoreLeavingOut } from './leave-one-out.ts';
 import { normalise } from './posterior-of.ts';
 import { fitPriors } from './priors.ts';
 import { chooseHold, holdAll } from './prune.ts';
 import { learnReliability } from './reliability.ts';
-import { blockScores } from './score.ts';
-import { createScorer, type Scorer } from './scorer.ts';
+import { createScorer } from './scorer.ts';
 import { project, serve, weightOf } from './served-table.ts';
 
 /** A confirmed message that stands in the counts. */
@@ -72,17 +71,22 @@ export function fitFindings(
   const reliability = learnReliability(counts.record, previousFit.reliability);
   const basis: Fit = { ...previousFit, ...fitPriors(projected), hold, reliability };
   const queues = projected.columns.map((c) => c.queue);
-  const own = chooseSample(sample, queues, basis.blocks.length, (epoch) =>
-    weightOf(epoch, referenceEpoch, halfLifeDays),
-  );
-  if (own.length === 0 || queues.length < 2) return { fit: basis, contradictions: [] };
+  const messages = sample
+    .map(({ features, queue, epoch }, index): OwnMessage => {
+      return {
+        index,
+        features,
+        queue: queues.indexOf(queue),
+        weight: weightOf(epoch, referenceEpoch, halfLifeDays),
+      };
+    })
+    .filter(({ queue, weight }) => queue >= 0 && weight > 0);
+  if (messages.length === 0 || queues.length < 2) return { fit: basis, contradictions: [] };
 
   const table = serve(counts, { ...basis, hold: holdAll }, { halfLifeDays });
   const seenMin = hold.sparesNew ? {} : hold.seenMin;
-  const { active, scores } = leaveOneOut(
-    createScorer(table, [], queues, halfLifeDays, { isForFit: true, seenMin }),
-    own,
-  );
+  const scorer = createScorer(table, [], queues, halfLifeDays, { isForFit: true, seenMin });
+  const { active, own, scores } = scoreLeavingOut(scorer, messages);
   const before = Float64Array.from(active, (b) => basis.blocks[b].exponent);
   const shared = fitShared(scores, before, shrinkage);
   const byQueue = fitQueues(scores, shared, shrinkage);
@@ -126,75 +130,7 @@ function contradict(
     .sort((a, b) => a.probability - b.probability || a.index - b.index);
 }
 
-interface OwnMessage extends Own {
-  readonly index: number;
-  readonly features: Features;
-}
-
-/** The messages that are fitted to, with what each weighs in the counts. */
-function chooseSample(
-  sample: readonly FoldedMessage[],
-  queues: readonly string[],
-  blocks: number,
-  weightAt: (epoch: number) => number,
-): OwnMessage[] {
-  const max = Math.min(
-    bounds.fitMessagesMax,
-    Math.floor(bounds.fitScoresMax / (Math.max(1, queues.length) * blocks)),
-  );
-  const indices = spread([...sample.keys()], max);
-  return indices
-    .map((index): OwnMessage => {
-      const { features, queue, epoch } = sample[index];
-      return { index, features, queue: queues.indexOf(queue), weight: weightAt(epoch) };
-    })
-    .filter((message) => message.queue >= 0 && message.weight > 0);
-}
-
-/** Leave-one-out scores of the blocks that score anything at all (`active`). */
-function leaveOneOut(
-  scorer: Scorer,
-  own: readonly OwnMessage[],
-): { readonly active: readonly number[]; readonly scores: LabelledScores } {
-  const queues = scorer.queues.length;
-  const blocks = scorer.fit.blocks.length;
-  const x = new Float32Array(own.length * queues * blocks);
-  const isActive = new Array<boolean>(blocks).fill(false);
-  own.forEach((message, i) => {
-    const scores = blockScores(scorer, message.features, message);
-    for (let b = 0; b < blocks; b++) {
-      for (let k = 0; k < queues; k++) {
-        x[(i * queues + k) * blocks + b] = scores[b * queues + k];
-        if (scores[b * queues + k] !== 0) isActive[b] = true;
-      }
-    }
-  });
-  const active = [...isActive.keys()].filter((b) => isActive[b]);
-  // Moved forward in place: no score is overwritten before it is read.
-  const rows = own.length * queues;
-  for (let row = 0; row < rows; row++)
-    active.forEach((b, at) => {
-      x[row * active.length + at] = x[row * blocks + b];
-    });
-  return {
-    active,
-    scores: {
-      messages: own.length,
-      queues,
-      blocks: active.length,
-      x,
-      truth: Uint32Array.from(own, (m) => m.queue),
-    },
-  };
-}
-
 /** Four decimals move no posterior that is written, and keep the table small. */
 function rounded(exponent: number): number {
   return Math.round(exponent * 1e4) / 1e4;
-}
-
-/** At most `max` items, evenly spaced and in order. */
-function spread<T>(items: readonly T[], max: number): T[] {
-  if (items.length <= max) return [...items];
-  return Array.from({ length: max }, (_, i) => items[Math.floor((i * items.length) / max)]);
 }
