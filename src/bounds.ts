@@ -21,8 +21,10 @@ export const bounds = {
   driftMessagesMin: 10,
   /** Tokens named for each finding of drift: enough to tell what happened. */
   driftTokensMax: 10,
-  /** Ratios that a scorer remembers for each reading: 8 MB; the tokens that make up most of all mail. */
-  rememberedRatiosMax: 1_000_000,
+  /** Scores that a scorer remembers for each region, 8 bytes each: 8 MB; the tokens that make up most of all mail. */
+  rememberedScoresMax: 1_000_000,
+  /** Ratios remembered for each queue and reading while a fit scores that queue's messages without themselves: 2 MB. */
+  rememberedRatiosMax: 250_000,
 
   // Messages (src/message)
   /** Header fields of a part that are kept: real ones hold a few KB; 10,000 recipients would be 300 KB. */

@@ -1,31 +1,53 @@
 import type { Features } from '../features/schema.ts';
 import { tokenHex } from '../features/schema.ts';
+import { priorScore, slotScore } from './closed-scores.ts';
 import { type Block, exponentOf, type Reliability } from './fit.ts';
+import { schemaMismatch } from './fold.ts';
 import type { EvidencePart, Posterior } from './posterior.ts';
 import { correctedLogOdds } from './reliability.ts';
-import {
-  blockScores,
-  emptySums,
-  lengthScale,
-  partOf,
-  priorScore,
-  type ReadingSums,
-  slotScore,
-  sumsOfToken,
-} from './score.ts';
-import { countTokens, rowOf, type Scorer, type ScorerReading } from './scorer.ts';
+import { lengthScale } from './score.ts';
+import type { Scorer, ScorerReading } from './scorer.ts';
+import { locate } from './scorer-region.ts';
+import { emptySums, partOf, type ReadingSums, sumsOfToken } from './sums.ts';
+import { rowIn } from './token-index.ts';
+import { slotOfRow } from './token-scores.ts';
 import { tokenRatios } from './view.ts';
 
 /** log P(queue | x) = Σ_b w_bk · score_bk + bias_k, normalised over the queues. Never changes the scorer's table.
- *  Throws TallypostError `schema-mismatch`. */
+ *  Throws TallypostError `schema-mismatch`. Cost: O(queues · present known tokens). */
 export function posteriorOf(scorer: Scorer, features: Features): Posterior {
-  const logProb = normalise(combine(scorer, blockScores(scorer, features)));
-  return {
-    queues: scorer.queues,
-    logProb,
-    probability: correct(logProb, scorer.fit.reliability),
-    ...countTokens(scorer, features),
-  };
+  if (features.schema !== scorer.schema.id)
+    throw schemaMismatch('features', scorer.schema.id, features.schema);
+  const queues = scorer.queues.length;
+  const sum = scorer.priorScores.slice();
+  features.slots.forEach((value, j) => {
+    const scores = scorer.slotScores[j];
+    for (let k = 0; k < queues; k++) sum[k] += scores[value * queues + k];
+  });
+  let tokens = 0;
+  let knownTokens = 0;
+  features.regions.forEach((present, g) => {
+    tokens += present.length;
+    const region = scorer.regions[g];
+    const scores = scorer.tokenScores[g];
+    const all = scorer.absentScores[g].slice();
+    for (const token of present) {
+      const row = locate(region, token);
+      if (row < 0) {
+        if (rowIn(region.pruned, token) >= 0) knownTokens++;
+        continue;
+      }
+      knownTokens++;
+      const from = slotOfRow(scorer, g, row) * queues;
+      const { values } = scores;
+      for (let k = 0; k < queues; k++) all[k] += values[from + k];
+    }
+    const scale = lengthScale(present.length);
+    for (let k = 0; k < queues; k++) sum[k] += scale * all[k];
+  });
+  const logProb = normalise(sum);
+  const probability = correct(logProb, scorer.fit.reliability);
+  return { queues: scorer.queues, logProb, probability, tokens, knownTokens };
 }
 
 /** Σ_b w_bk · score_bk + bias_k, the log posterior before normalisation; [queues]. */
@@ -111,7 +133,7 @@ export function explainParts(scorer: Scorer, features: Features): EvidencePart[]
       part('absent', '', ({ view }) => ({ ...none, absent: view.absent ?? none.absent }));
     }
     for (const token of present) {
-      const row = rowOf(scorer.regions[g], token);
+      const row = locate(scorer.regions[g], token);
       if (row < 0) continue;
       part('token', tokenHex(token), ({ view }) => sumsOfToken(tokenRatios(scorer.regions[g], view, row)));
     }

@@ -3,6 +3,7 @@ import type { Counts, RegionCounts } from './counts.ts';
 import type { Fit, Hold, Reading } from './fit.ts';
 import { createHits, kindOf, readHits } from './hits.ts';
 import { exposureOf, weighModels } from './rates.ts';
+import { pickTokens } from './sparse.ts';
 
 export const holdAll: Hold = { seenMin: {}, relevanceMin: 0, sparesNew: true };
 
@@ -163,24 +164,6 @@ function bytesOf({ tokens, start, column, count }: RegionCounts, isKept: (row: n
       bytes += (column[p] < 32 ? 1 : 2) + (count[p] === 1 ? 0 : Number.isInteger(count[p]) ? 1 : 2);
   }
   return bytes;
-}
-
-/** The rows at `kept`, ascending; totals stay. */
-export function pickTokens(region: RegionCounts, kept: ArrayLike<number>): RegionCounts {
-  const tokens = new Float64Array(kept.length);
-  const start = new Uint32Array(kept.length + 1);
-  for (let n = 0; n < kept.length; n++) {
-    tokens[n] = region.tokens[kept[n]];
-    start[n + 1] = start[n] + region.start[kept[n] + 1] - region.start[kept[n]];
-  }
-  const column = new Uint32Array(start[kept.length]);
-  const count = new Float64Array(start[kept.length]);
-  for (let n = 0; n < kept.length; n++) {
-    const [from, to] = [region.start[kept[n]], region.start[kept[n] + 1]];
-    column.set(region.column.subarray(from, to), start[n]);
-    count.set(region.count.subarray(from, to), start[n]);
-  }
-  return { tokens, start, column, count, total: region.total };
 }
 
 function sum(values: readonly number[]): number {

@@ -1,9 +1,11 @@
 import type { Features } from '../features/schema.ts';
-import type { TokensBlock } from './fit.ts';
+import { priorScore, slotScore } from './closed-scores.ts';
 import { schemaMismatch } from './fold.ts';
 import type { Own } from './hits.ts';
-import { rowOf, type Scorer, type ScorerReading, type ScorerRegion } from './scorer.ts';
-import { createView, type TokenRatios, tokenRatios, type View, viewLeaving } from './view.ts';
+import type { Scorer, ScorerReading } from './scorer.ts';
+import { locate, type ScorerRegion } from './scorer-region.ts';
+import { emptySums, partOf, type ReadingSums } from './sums.ts';
+import { createView, tokenRatios, type View, viewLeaving } from './view.ts';
 
 /** Each block's score, before exponents: nats; [blocks * queues], block-major. With `own` the message's contribution is
  *  taken out of its queue's counts and exposures first (leave-one-out), exactly as unfolding it would.
@@ -25,7 +27,7 @@ export function blockScores(scorer: Scorer, features: Features, own: Own | null 
   });
   scorer.readings.forEach((readings, g) => {
     const scale = lengthScale(features.regions[g].length);
-    const rows = Int32Array.from(features.regions[g], (token) => rowOf(scorer.regions[g], token));
+    const rows = Int32Array.from(features.regions[g], (token) => locate(scorer.regions[g], token));
     for (const reading of readings) {
       const sums = sumTokens(scorer.regions[g], viewOf(scorer.regions[g], reading, rows, own), rows);
       for (const { index, part } of reading.blocks) add(index, partOf(sums, part), scale);
@@ -34,38 +36,10 @@ export function blockScores(scorer: Scorer, features: Features, own: Own | null 
   return scores;
 }
 
-/** log (α + c_k)/(K α + n); [queues]. */
-export function priorScore(scorer: Scorer, own: Own | null): Float64Array {
-  const { alpha } = scorer.fit;
-  const c = countsWithout(scorer.messages, own);
-  const whole = c.reduce((sum, n) => sum + alpha + n, 0);
-  return c.map((n) => Math.log((alpha + n) / whole));
-}
-
-/** log (β + d_jk(v))/(N_j β + c_k), the posterior predictive of slot j's value v under a symmetric Dirichlet prior; [queues].
- *  Source: Murphy, Machine Learning (2012), section 3.4. */
-export function slotScore(scorer: Scorer, slot: number, value: number, own: Own | null): Float64Array {
-  const queues = scorer.queues.length;
-  const { id, values } = scorer.schema.slots[slot];
-  const beta = scorer.fit.beta[id] ?? 1;
-  const d = countsWithout(scorer.slots[slot].subarray(value * queues, (value + 1) * queues), own);
-  const c = countsWithout(scorer.messages, own);
-  return d.map((n, k) => Math.log((beta + n) / (values.length * beta + c[k])));
-}
-
 /** Words of one message depend on each other, so that their product would be far too sure: it is divided by
  *  √(1 + tokens of the region in the message), known or not. */
 export function lengthScale(tokens: number): number {
   return 1 / Math.sqrt(1 + tokens);
-}
-
-/** Sums over a message's tokens, before length scaling and exponents; each [queues]. */
-export interface ReadingSums {
-  /** Σ log p_k/m of present tokens where it is above 0, and where below. */
-  readonly for: Float64Array;
-  readonly against: Float64Array;
-  /** Σ log (1 - p_k)/(1 - m) over the tokens that are absent. */
-  readonly absent: Float64Array;
 }
 
 /** Ratios are multiplied and a logarithm is taken only when a product nears the end of the range: a multiplication a token and
@@ -106,28 +80,6 @@ function flush(product: Float64Array, sum: Float64Array, k: number): void {
   product[k] = 1;
 }
 
-export function emptySums(queues: number, value = 0): ReadingSums {
-  return {
-    for: new Float64Array(queues).fill(value),
-    against: new Float64Array(queues).fill(value),
-    absent: new Float64Array(queues).fill(value),
-  };
-}
-
-/** What one present token adds to the sums; it leaves the sum of the absent ones. */
-export function sumsOfToken({ present, absent }: TokenRatios): ReadingSums {
-  return {
-    for: present.map((ratio) => Math.max(0, Math.log(ratio))),
-    against: present.map((ratio) => Math.min(0, Math.log(ratio))),
-    absent: absent === null ? new Float64Array(present.length) : absent.map((factor) => -Math.log(factor)),
-  };
-}
-
-/** What a block takes of its reading's sums; [queues]. */
-export function partOf(sums: ReadingSums, part: TokensBlock['part']): Float64Array {
-  return part === 'all' ? sums.for.map((x, k) => x + sums.against[k] + sums.absent[k]) : sums[part];
-}
-
 function viewOf(region: ScorerRegion, reading: ScorerReading, rows: Int32Array, own: Own | null): View {
   if (own === null) return reading.view;
   const { exposure } = reading.view;
@@ -136,11 +88,4 @@ function viewOf(region: ScorerRegion, reading: ScorerReading, rows: Int32Array, 
   const known = reading.leaving.get(key) ?? createView(region, exposure, reading.countsAbsent, own);
   reading.leaving.set(key, known);
   return known;
-}
-
-function countsWithout(counts: Float64Array, own: Own | null): Float64Array {
-  if (own === null) return counts;
-  const less = counts.slice();
-  less[own.queue] -= own.weight;
-  return less;
 }

@@ -144,6 +144,24 @@ export function remapRegion(
   };
 }
 
+/** The rows at `kept`, ascending; totals stay. */
+export function pickTokens(region: RegionCounts, kept: ArrayLike<number>): RegionCounts {
+  const tokens = new Float64Array(kept.length);
+  const start = new Uint32Array(kept.length + 1);
+  for (let n = 0; n < kept.length; n++) {
+    tokens[n] = region.tokens[kept[n]];
+    start[n + 1] = start[n] + region.start[kept[n] + 1] - region.start[kept[n]];
+  }
+  const column = new Uint32Array(start[kept.length]);
+  const count = new Float64Array(start[kept.length]);
+  for (let n = 0; n < kept.length; n++) {
+    const [from, to] = [region.start[kept[n]], region.start[kept[n] + 1]];
+    column.set(region.column.subarray(from, to), start[n]);
+    count.set(region.count.subarray(from, to), start[n]);
+  }
+  return { tokens, start, column, count, total: region.total };
+}
+
 /** Where a token stands in the ascending list, or -1. Hashes are spread evenly, so the first guess by interpolation is
  *  near; the bracket is then halved when interpolation stalls: O(log log n) expected, O(log n) at worst. */
 export function indexOfToken(tokens: Float64Array, token: number): number {

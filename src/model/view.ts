@@ -1,7 +1,7 @@
 import { bounds } from '../bounds.ts';
-import { createHits, type Hits, kindOf, type Own, readHits } from './hits.ts';
+import { createHits, type Hits, kindOf, type Own } from './hits.ts';
 import { type Exposure, exposureWithout, pooledRate, rateRatios } from './rates.ts';
-import type { ScorerRegion } from './scorer.ts';
+import { readRow, type ScorerRegion } from './scorer-region.ts';
 
 /** One reading of a region as a message sees it: the whole table, or the table without that message. */
 export interface View {
@@ -10,7 +10,8 @@ export interface View {
   readonly own: Own | null;
   /** Σ_t log((1 - p_kt)/(1 - m_t)) over all tokens held, as if none were present; null where absence is not counted; [queues]. */
   readonly absent: Float64Array | null;
-  /** Ratios of rows that were asked for before. Null for a view that serves one message only. */
+  /** Ratios of rows that were asked for before. Null where they are asked for once: the whole table's are remembered with their
+   *  exponents (see token-scores), and a view may serve one message only. */
   readonly remembered: Map<number, TokenRatios> | null;
   /** Work space. */
   readonly hits: Hits;
@@ -37,7 +38,7 @@ export function createView(
     exposure: left,
     own,
     absent: countsAbsent ? absentSum(region, left) : null,
-    remembered: new Map(),
+    remembered: own === null ? null : new Map(),
     hits: createHits(left.draws.length),
     present: new Float64Array(left.draws.length),
   };
@@ -50,7 +51,7 @@ export function viewLeaving(region: ScorerRegion, exposure: Exposure, rows: Int3
   let only = 0;
   for (const row of rows) {
     if (row < 0) continue;
-    readHits(region.counts, region.queueOf, row, own, hits);
+    readRow(region, row, own, hits);
     if (hits.length === 0) only++;
   }
   const left = exposureWithout(exposure, own.queue, own.weight * rows.length, only);
@@ -64,8 +65,7 @@ export function viewLeaving(region: ScorerRegion, exposure: Exposure, rows: Int3
   };
 }
 
-/** The ratios of one row. Remembered, since a few thousand tokens make up most of all mail; otherwise good until the next
- *  call. */
+/** The ratios of one row; unless they are remembered, good until the next call. */
 export function tokenRatios(region: ScorerRegion, view: View, row: number): TokenRatios {
   const known = view.remembered?.get(row);
   if (known) return known;
@@ -75,10 +75,10 @@ export function tokenRatios(region: ScorerRegion, view: View, row: number): Toke
   let absent: Float64Array | null = null;
   if (view.absent !== null) {
     // As summed in view.absent: with the message's own count, which the sum over all tokens could not know to leave out.
-    readHits(region.counts, region.queueOf, row, null, hits);
+    readRow(region, row, null, hits);
     absent = isHeld(region, hits) ? absentFactors(exposure, hits) : new Float64Array(queues).fill(1);
   }
-  readHits(region.counts, region.queueOf, row, own, hits);
+  readRow(region, row, own, hits);
   const present = isRemembered ? new Float64Array(queues) : view.present;
   if (isHeld(region, hits)) rateRatios(exposure, hits, present);
   else present.fill(1);
@@ -96,8 +96,8 @@ export function absentSum(region: ScorerRegion, exposure: Exposure): Float64Arra
   const product = new Float64Array(queues).fill(1);
   const sum = new Float64Array(queues);
   const kinds = new Map<number, { readonly factors: Float64Array; times: number }>();
-  for (let row = 0; row < region.counts.tokens.length; row++) {
-    readHits(region.counts, region.queueOf, row, null, hits);
+  for (let row = 0; row < region.rows; row++) {
+    readRow(region, row, null, hits);
     if (!isHeld(region, hits)) continue;
     const kind = kindOf(hits, queues);
     const same = kinds.get(kind);

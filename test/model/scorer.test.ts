@@ -5,7 +5,7 @@ import { encodeCounts } from '../../src/model/codec-counts.ts';
 import type { Entry } from '../../src/model/counts.ts';
 import { defaultFit, type Fit, type TokensBlock } from '../../src/model/fit.ts';
 import { emptyCounts, foldEntries } from '../../src/model/fold.ts';
-import { combine, explainParts, posteriorOf } from '../../src/model/posterior-of.ts';
+import { combine, explainParts, normalise, posteriorOf } from '../../src/model/posterior-of.ts';
 import { blockScores } from '../../src/model/score.ts';
 import { createScorer } from '../../src/model/scorer.ts';
 import { emptyTable, serve } from '../../src/model/served-table.ts';
@@ -106,6 +106,40 @@ describe('laws of scoring', () => {
           );
         },
       ),
+    );
+  });
+
+  test('the posterior, scored by what is remembered of each token, is that of the blocks', () => {
+    fc.assert(
+      fc.property(
+        confirmations,
+        confirmations,
+        fc.array(features, { minLength: 2, maxLength: 4 }),
+        (entries, later, messages) => {
+          const scorer = createScorer(
+            serve(foldEntries(empty, entries), everyBlock, { halfLifeDays: null }),
+            later,
+            queueNames,
+            null,
+          );
+          for (const message of [...messages, ...messages]) {
+            closeTo(
+              posteriorOf(scorer, message).logProb,
+              normalise(combine(scorer, blockScores(scorer, message))),
+            );
+          }
+        },
+      ),
+    );
+  });
+
+  test('an entry that takes back what the table holds scores as if it had never been', () => {
+    fc.assert(
+      fc.property(confirmations, confirmations, features, (kept, taken, message) => {
+        const table = serve(foldEntries(empty, [...kept, ...taken]), everyBlock, { halfLifeDays: null });
+        const undoing = createScorer(table, taken.map(undone), queueNames, null);
+        closeTo(blockScores(undoing, message), blockScores(scorerOf(kept), message));
+      }),
     );
   });
 
