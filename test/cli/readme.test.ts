@@ -52,5 +52,5 @@ describe('what the README promises', () => {
 
 it('the version is one', () => {
   expect(JSON.parse(read('package.json')).version).toBe(version);
-  expect(read('CHANGELOG.md')).toContain(`## ${version}\n`);
+  expect(read('DEVELOPERS.md')).toContain(`### ${version}\n`);
 });
