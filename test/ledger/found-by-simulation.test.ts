@@ -1,6 +1,7 @@
 import { describe, expect, it } from 'vitest';
 import { bounds } from '../../src/bounds.ts';
 import { compact } from '../../src/ledger/compaction.ts';
+import { deleteUnnamed } from '../../src/ledger/deletion.ts';
 import { eraseMessages } from '../../src/ledger/erase.ts';
 import { recount } from '../../src/ledger/recount.ts';
 import { restoreVersion } from '../../src/ledger/restore.ts';
@@ -51,7 +52,6 @@ describe('what the simulation found once stays mended:', () => {
         Buffer.from('an orphan, so that there is something to delete'),
       );
       await compact(other, desk, schema, { dryRun: true });
-      const { deleteUnnamed } = await import('../../src/ledger/deletion.ts');
       await deleteUnnamed(other);
     });
     expect(await compact({ ...world, store }, desk, schema)).toMatchObject({ kind: 'lost-race' });
@@ -117,6 +117,45 @@ describe('what the simulation found once stays mended:', () => {
       if (got.kind === 'found') expect(tokensIn(key, got.object.body)).not.toContain(tokenOf('m1'));
     }
     expect((await keysOf(inner, 'model/bases/')).length).toBe(1);
+  });
+
+  it('a deletion keeps what landed and was absorbed while it looked around', async () => {
+    const inner = createMemoryStore();
+    const [world, other] = [testWorld(1, inner), testWorld(2, inner)];
+    await fold(world, claim('m1', 'billing'));
+    const steps = new Map([
+      ['get model/manifest.json', async () => void (await fold(other, claim('m2', 'leaks')))],
+      [
+        'list model/versions/',
+        async () => {
+          other.clock.ms += bounds.horizonMs + dayMs;
+        },
+      ],
+      ['list model/bases/', async () => void (await compact(other, desk, schema))],
+    ]);
+    const once = async (name: string) => {
+      const step = steps.get(name);
+      steps.delete(name);
+      await step?.();
+    };
+    const store: Store = {
+      ...inner,
+      async get(key, options) {
+        const got = await inner.get(key, options);
+        await once(`get ${key}`);
+        return got;
+      },
+      async *list(prefix, options) {
+        if (prefix !== 'model/versions/') await once(`list ${prefix}`);
+        yield* inner.list(prefix, options);
+        if (prefix === 'model/versions/') await once(`list ${prefix}`);
+      },
+    };
+    world.clock.ms += bounds.horizonMs + dayMs;
+    await deleteUnnamed({ ...world, store });
+    expect(steps.size).toBe(0);
+    expect(await restoreVersion(world, desk, schema, 2)).toMatchObject({ kind: 'restored' });
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'billing', m2: 'leaks' });
   });
 
   it('a recount whose base is deleted meanwhile starts again with the new one', async () => {

@@ -68,6 +68,7 @@ export class Checker {
     this.#restores = manifest.restores.length;
     const table = this.#tableOf(manifest);
     const landed = this.#landedIn(manifest);
+    if (manifest.table !== null) this.#bytes(`model/tables/${manifest.table}`);
     const totals = new Map<string, number>();
     for (const message of this.#messages) {
       const column = standingIn(table, message, manifest.version);
@@ -117,6 +118,7 @@ export class Checker {
   }
 
   #base(id: string): Table {
+    this.#bytes(`model/bases/${id}`);
     const held = this.#bases.get(id);
     if (held) return held;
     const counts = decodeCounts(this.#bytes(`model/bases/${id}`), schema, id);
@@ -135,6 +137,7 @@ export class Checker {
   }
 
   #segment(id: string): [string, string | null, string | null][] {
+    this.#bytes(`model/segments/${id}`);
     const held = this.#segments.get(id);
     if (held) return held;
     const read = decodeEntries(this.#bytes(`model/segments/${id}`), schema, id).map(
