@@ -9,8 +9,7 @@ import { lengthScale } from './score.ts';
 import type { Scorer, ScorerReading } from './scorer.ts';
 import { locate } from './scorer-region.ts';
 import { emptySums, partOf, type ReadingSums, sumsOfToken } from './sums.ts';
-import { rowIn } from './token-index.ts';
-import { slotOfRow } from './token-scores.ts';
+import { addTokens } from './token-scores.ts';
 import { tokenRatios } from './view.ts';
 
 /** log P(queue | x) = Σ_b w_bk · score_bk + bias_k, normalised over the queues. Never changes the scorer's table.
@@ -28,20 +27,8 @@ export function posteriorOf(scorer: Scorer, features: Features): Posterior {
   let knownTokens = 0;
   features.regions.forEach((present, g) => {
     tokens += present.length;
-    const region = scorer.regions[g];
-    const scores = scorer.tokenScores[g];
     const all = scorer.absentScores[g].slice();
-    for (const token of present) {
-      const row = locate(region, token);
-      if (row < 0) {
-        if (rowIn(region.pruned, token) >= 0) knownTokens++;
-        continue;
-      }
-      knownTokens++;
-      const from = slotOfRow(scorer, g, row) * queues;
-      const { values } = scores;
-      for (let k = 0; k < queues; k++) all[k] += values[from + k];
-    }
+    knownTokens += addTokens(scorer, g, present, all);
     const scale = lengthScale(present.length);
     for (let k = 0; k < queues; k++) sum[k] += scale * all[k];
   });

@@ -5,28 +5,28 @@ import { tokenBits } from '../features/schema.ts';
 export interface TokenIndex {
   /** Ascending. */
   readonly tokens: Float64Array;
-  /** 2^(tokenBits - bucket bits). */
-  readonly width: number;
+  /** Buckets a unit of hash: a power of two, so that the product is exact. */
+  readonly density: number;
   /** First row of each bucket, and the end of the last; [buckets + 1]. */
   readonly first: Uint32Array;
 }
 
 export function indexTokens(tokens: Float64Array): TokenIndex {
   const buckets = 2 ** Math.max(0, Math.ceil(Math.log2(tokens.length + 1)) - 2);
-  const width = 2 ** tokenBits / buckets;
+  const density = buckets / 2 ** tokenBits;
   const first = new Uint32Array(buckets + 1);
   let bucket = 0;
   for (let row = 0; row < tokens.length; row++) {
-    const at = Math.floor(tokens[row] / width);
+    const at = Math.floor(tokens[row] * density);
     while (bucket < at) first[++bucket] = row;
   }
   while (bucket < buckets) first[++bucket] = tokens.length;
-  return { tokens, width, first };
+  return { tokens, density, first };
 }
 
 /** The row of a token, or -1. */
-export function rowIn({ tokens, width, first }: TokenIndex, token: number): number {
-  const bucket = Math.floor(token / width);
+export function rowIn({ tokens, density, first }: TokenIndex, token: number): number {
+  const bucket = Math.floor(token * density);
   const end = first[bucket + 1];
   for (let row = first[bucket]; row < end; row++)
     if (tokens[row] >= token) return tokens[row] === token ? row : -1;

@@ -1,8 +1,9 @@
 import { bounds } from '../bounds.ts';
 import { createHits, type Hits, kindOf } from './hits.ts';
 import type { Scorer } from './scorer.ts';
-import { readRow, type ScorerRegion } from './scorer-region.ts';
+import { locate, readRow, type ScorerRegion } from './scorer-region.ts';
 import { partOf, sumsOfToken } from './sums.ts';
+import { rowIn } from './token-index.ts';
 import { tokenRatios } from './view.ts';
 
 /** What each token of a region adds to the log posterior before length scaling: all readings and parts at once, times their
@@ -28,8 +29,39 @@ export function createTokenScores(region: ScorerRegion, queues: number): TokenSc
   };
 }
 
+/** Adds what the present tokens contribute to `sum` [queues], before length scaling; answers how many of them the table knows,
+ *  those included that it knows to say nothing. */
+export function addTokens(scorer: Scorer, g: number, present: Float64Array, sum: Float64Array): number {
+  const queues = sum.length;
+  const region = scorer.regions[g];
+  const scores = scorer.tokenScores[g];
+  const from = new Int32Array(present.length);
+  let known = 0;
+  let remembered = 0;
+  for (const token of present) {
+    const row = locate(region, token);
+    if (row < 0) {
+      if (rowIn(region.pruned, token) >= 0) known++;
+      continue;
+    }
+    known++;
+    const slot = slotOfRow(scorer, g, row);
+    if (slot === 0) for (let k = 0; k < queues; k++) sum[k] += scores.values[k];
+    else from[remembered++] = slot * queues;
+  }
+  // Four tokens at a time: half the time of one by one, since the sum is read and written a quarter as often.
+  const { values } = scores;
+  let at = 0;
+  for (; at + 4 <= remembered; at += 4) {
+    const [a, b, c, d] = [from[at], from[at + 1], from[at + 2], from[at + 3]];
+    for (let k = 0; k < queues; k++) sum[k] += values[a + k] + values[b + k] + values[c + k] + values[d + k];
+  }
+  for (; at < remembered; at++) for (let k = 0; k < queues; k++) sum[k] += values[from[at] + k];
+  return known;
+}
+
 /** Slot of a row's values. The work space is good until the next call. */
-export function slotOfRow(scorer: Scorer, g: number, row: number): number {
+function slotOfRow(scorer: Scorer, g: number, row: number): number {
   const scores = scorer.tokenScores[g];
   const known = scores.slotOf[row];
   if (known !== 0) return known;
