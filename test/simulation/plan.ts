@@ -75,7 +75,7 @@ export function drawPlan(random: () => number): Plan {
     messages,
     drops,
     rates: ratesOf(theme, random, oneOf([0, 0.01, 0.04, 0.1])),
-    processesMax: 1 + pick(6),
+    processesMax: theme === 'lost answers' ? 4 + pick(4) : 1 + pick(6),
     jobs,
     longPauseRate: theme === 'pauses' ? 0.02 : random() < 0.2 ? 0.004 : 0,
     skewMsMax: oneOf([0, 1000, 3 * dayMs]),
@@ -85,7 +85,7 @@ export function drawPlan(random: () => number): Plan {
 
 function ratesOf(theme: string, random: () => number, level: number): FaultRates {
   if (theme === 'outages') return { ...noFaults, outage: 0.15 };
-  if (theme === 'lost answers') return { ...noFaults, failAfter: 0.12, spuriouslyLost: 0.12 };
+  if (theme === 'lost answers') return { ...noFaults, failAfter: 0.15, spuriouslyLost: 0.1, slow: 1 };
   if (theme === 'pauses') return { ...noFaults, stall: 0.1 };
   const rate = () => (random() < 0.5 ? level * random() : 0);
   return {
@@ -95,6 +95,7 @@ function ratesOf(theme: string, random: () => number, level: number): FaultRates
     late: rate(),
     duplicate: rate(),
     spuriouslyLost: rate(),
+    slow: 0.5,
     stall: random() < 0.4 ? 0.05 * random() : 0,
     outage: random() < 0.3 ? 0.05 * random() : 0,
   };

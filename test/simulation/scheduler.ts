@@ -14,6 +14,8 @@ export interface FaultRates {
   readonly duplicate: number;
   /** A conditional write is answered as lost: half of the times it landed. */
   readonly spuriouslyLost: number;
+  /** Share of lost answers and late effects that come much later. */
+  readonly slow: number;
   /** The process is not chosen for the next hundreds of steps. */
   readonly stall: number;
   /** For a while all writes of one object fail, or happen much later. */
@@ -27,6 +29,7 @@ export const noFaults: FaultRates = {
   late: 0,
   duplicate: 0,
   spuriouslyLost: 0,
+  slow: 0.5,
   stall: 0,
   outage: 0,
 };
@@ -168,7 +171,9 @@ export class Scheduler {
 
   #drawFate(label: string, isWrite: boolean, isConditional: boolean): keyof FaultRates | 'fine' {
     const { rates } = this;
-    if (isWrite && this.#outage.untilStep <= this.steps && this.random() < rates.outage) {
+    // Most of all histories: theirs are the writes that must be known before anything else goes on.
+    const outage = label.startsWith('put histories/') ? rates.outage : rates.outage / 10;
+    if (isWrite && this.#outage.untilStep <= this.steps && this.random() < outage) {
       const untilStep = this.steps + 100 + Math.floor(this.random() * 300);
       this.#outage = { label, untilStep, lateShare: [0, 0.1, 1][Math.floor(this.random() * 3)] };
     }
@@ -193,7 +198,7 @@ export class Scheduler {
   /** A lost answer is noticed after a time-out, and what was held up on the way arrives whenever it will. */
   #later(process: Process | null, run: () => void): void {
     const isSlow = this.#isOut && this.#outage.lateShare === 1;
-    const isSoon = !isSlow && this.random() < 0.5;
+    const isSoon = !isSlow && this.random() >= this.rates.slow;
     this.#parked.push({
       process,
       run,
