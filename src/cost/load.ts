@@ -46,6 +46,10 @@ export interface Machine {
   /** A night's compaction, and for every million histories that it lists. */
   readonly compactSeconds: number;
   readonly compactSecondsPerMillion: number;
+  /** The morning's report: newest messages that it looks at, two reads each; all it bills besides does not grow. */
+  readonly reportMessagesMax: number;
+  readonly reportSeconds: number;
+  readonly reportMemoryMb: number;
   /** Histories that the weekly recount reads in a second; of more than the most it reads none. */
   readonly recountPerSecond: number;
   readonly recountMax: number;
@@ -67,6 +71,7 @@ export interface Machine {
   readonly routeMetrics: number;
   readonly confirmMetrics: number;
   readonly compactMetrics: number;
+  readonly reportMetrics: number;
   /** Metrics that alarms look at. */
   readonly alarmMetrics: number;
   readonly secrets: number;
@@ -86,6 +91,9 @@ export const machineOfTemplate: Machine = {
   compactMemoryMb: 2048,
   compactSeconds: 30,
   compactSecondsPerMillion: 100,
+  reportMessagesMax: bounds.reportMessagesMax,
+  reportSeconds: 60,
+  reportMemoryMb: 2048,
   recountPerSecond: 800,
   recountMax: bounds.functionRecountMax,
   functionSecondsMax: 900,
@@ -102,7 +110,8 @@ export const machineOfTemplate: Machine = {
   routeMetrics: 10,
   confirmMetrics: 3,
   compactMetrics: 7,
-  alarmMetrics: 16,
+  reportMetrics: 1,
+  alarmMetrics: 18,
   secrets: 2,
   dashboards: 1,
 };

@@ -42,6 +42,9 @@ export function monthlyCost(load: Load, machine: Machine, prices: Prices): reado
   const histories = confirmed * load.historyMonths;
   // Listing pages, 1,000 keys each, are billed as writes.
   const nightly = { reads: 2000 + folds / nights, writes: 10 + histories / 1000 };
+  const kept = (messages * load.rawDays) / 30;
+  // Newest messages and their histories, texts of those held and of examples; the pages that list what came, four objects.
+  const report = { reads: 2 * Math.min(machine.reportMessagesMax, kept) + 1000, writes: 4 + kept / 1000 };
   const recounted = histories <= machine.recountMax ? histories : 0;
   const counted: readonly (readonly [number, { readonly reads: number; readonly writes: number }])[] = [
     [mails, { reads: 0, writes: 1 }],
@@ -54,6 +57,7 @@ export function monthlyCost(load: Load, machine: Machine, prices: Prices): reado
     // A router reads each new segment.
     [Math.min(routes, folds), { reads: 1, writes: 0 }],
     [nights, nightly],
+    [nights, report],
     [recounts, { reads: recounted, writes: recounted / 1000 }],
   ];
   const reads = counted.reduce((sum, [times, each]) => sum + times * each.reads, 0);
@@ -68,7 +72,8 @@ export function monthlyCost(load: Load, machine: Machine, prices: Prices): reado
       (machine.routeMemoryMb / 1024) +
     ((intakes * machine.intakeMs) / 1000) * (machine.intakeMemoryMb / 1024) +
     (nights * compactSeconds + recounts * (recounted / machine.recountPerSecond)) *
-      (machine.compactMemoryMb / 1024);
+      (machine.compactMemoryMb / 1024) +
+    nights * machine.reportSeconds * (machine.reportMemoryMb / 1024);
   // Each message comes, is overwritten and expires; each confirmation's drop and mark come and go, its history is written.
   const events = 3 * messages + 5 * confirmed + 2 * folds;
   const rawKb = mails * load.mailKb + forms * load.formKb;
@@ -82,7 +87,7 @@ export function monthlyCost(load: Load, machine: Machine, prices: Prices): reado
   const metrics =
     machine.routeMetrics * busyShare(messages) +
     machine.confirmMetrics * busyShare(confirmed) +
-    machine.compactMetrics / 24 +
+    (machine.compactMetrics + machine.reportMetrics) / 24 +
     load.queues * busyShare(messages / load.queues);
   const line = (service: string, what: string, amount: number, unit: string, price: number): CostLine => ({
     service,

@@ -1,3 +1,4 @@
+import { measureReport } from '../metrics/measurement.ts';
 import { writeReport } from '../report/write-report.ts';
 import type { HandlerDeps } from './handler-deps.ts';
 import { faultMembers } from './log-fault.ts';
@@ -10,8 +11,8 @@ export interface ReportResult {
   readonly pageBytes: number;
 }
 
-/** Writes the report of now, whatever the event: made for a schedule an hour after the compaction's. A function of its own,
- *  since it alone draws. Throws what stopped it, so that the schedule's retries and alarms see it. */
+/** Writes the report of now, whatever the event: made for a schedule after the compaction's. A function of its own, since
+ *  it alone draws. Throws what stopped it, so that the schedule's retries and alarms see it. */
 export function createReportHandler(deps: HandlerDeps): (event: unknown) => Promise<ReportResult> {
   const openDesk = createDeskOpener(deps);
   return async () => {
@@ -22,6 +23,7 @@ export function createReportHandler(deps: HandlerDeps): (event: unknown) => Prom
         readMessage: async (key) => (await readMessage(deps.world, key, () => true))?.message ?? null,
       });
       const result = { page, numbers, pageBytes };
+      deps.measure?.(measureReport());
       deps.log({ level: 'info', event: 'report', tookMs: deps.world.nowMs() - startedMs, ...result });
       return result;
     } catch (error) {

@@ -32,6 +32,8 @@ export const metrics = {
   TableBytes: { unit: 'Bytes', merge: 'last' },
   /** Cells in which the table and a recount differ; 1 also stands for a table that could not be read. */
   RecountDifferences: { unit: 'Count', merge: 'last' },
+  // The report.
+  Reports: { unit: 'Count', merge: 'sum' },
 } as const satisfies Record<string, { unit: 'Count' | 'Seconds' | 'Bytes'; merge: 'sum' | 'all' | 'last' }>;
 
 export type MetricName = keyof typeof metrics;
@@ -124,6 +126,10 @@ export function measureCompaction(
     ...(kind === 'compacted' ? sizes : {}),
   };
   return [{ queue: null, values }];
+}
+
+export function measureReport(): Measurement[] {
+  return [{ queue: null, values: { Reports: [1] } }];
 }
 
 /** `fault`: why the table could not be read, if it could not. */

@@ -24,18 +24,20 @@ describe('a month of 100,000 messages', () => {
 
   it('pays for the requests that the handlers make', () => {
     // Writes: 80,000 mails by SES + 100,000 copies + 20,000 forms + 40,000 · 2 webhooks + 40,000 histories + 40,000 · 2 folds
-    // = 400,000; nights 30 · (10 + 960,000 histories / 1000) = 29,100; no recount: 960,000 are more than the 400,000 that a function recounts.
-    expect(lineOf(lines, 'S3', 'writes and listings').amount).toBeCloseTo(429_100, 6);
+    // = 400,000; nights 30 · (10 + 960,000 histories / 1000) = 29,100; no recount: 960,000 are more than the 400,000 that a function recounts;
+    // reports 30 · (4 + 300,000 kept messages / 1000) = 9,120.
+    expect(lineOf(lines, 'S3', 'writes and listings').amount).toBeCloseTo(438_220, 6);
     // Reads: 100,000 · 2 + 100,000 manifests + 40,000 marks + 40,000 · 4 + 40,000 · 3 + 40,000 segments = 660,000;
-    // nights 30 · (2,000 + 40,000 / 30) = 100,000.
-    expect(lineOf(lines, 'S3', 'reads').amount).toBeCloseTo(760_000, 6);
+    // nights 30 · (2,000 + 40,000 / 30) = 100,000; reports 30 · (2 · 5,000 + 1,000) = 330,000.
+    expect(lineOf(lines, 'S3', 'reads').amount).toBeCloseTo(1_090_000, 6);
   });
 
   it('pays for time by memory', () => {
     // (100,000 · 60 + 40,000 · 40 + 140,000 · 60) / 1000 · 1 GB = 16,000; 60,000 · 40 / 1000 · 0.5 GB = 1,200;
-    // nights 30 · (30 + 0.96 · 100) · 2 GB = 7,560; together 24,760 GB-s · $0.0000133334 = $0.33013.
-    expect(lineOf(lines, 'Lambda', 'time').amount).toBeCloseTo(24_760, 6);
-    expect(lineOf(lines, 'Lambda', 'time').dollars).toBeCloseTo(0.33013, 5);
+    // nights 30 · (30 + 0.96 · 100) · 2 GB = 7,560; reports 30 · 60 · 2 GB = 3,600; together 28,360 GB-s · $0.0000133334
+    // = $0.37814.
+    expect(lineOf(lines, 'Lambda', 'time').amount).toBeCloseTo(28_360, 6);
+    expect(lineOf(lines, 'Lambda', 'time').dollars).toBeCloseTo(0.37814, 5);
   });
 
   it('pays for what is kept', () => {
@@ -52,8 +54,8 @@ describe('a month of 100,000 messages', () => {
   });
 
   it('pays for each metric by the hours in which it is written', () => {
-    // All hours busy: 10 of route + 3 of confirm + 7 / 24 of the night + 10 queues of 10,000 each.
-    expect(lineOf(lines, 'CloudWatch', 'metrics').amount).toBeCloseTo(10 + 3 + 7 / 24 + 10, 4);
+    // All hours busy: 10 of route + 3 of confirm + (7 + 1) / 24 of the night + 10 queues of 10,000 each.
+    expect(lineOf(lines, 'CloudWatch', 'metrics').amount).toBeCloseTo(10 + 3 + 8 / 24 + 10, 4);
   });
 
   it('adds up', () => {

@@ -69,6 +69,7 @@ describe('a bundle', () => {
     ['route', 1_800_000],
     ['confirm', 1_800_000],
     ['compact', 1_800_000],
+    ['report', 1_800_000],
     ['backfill', 1_800_000],
     // Parses no mail.
     ['intake', 600_000],
@@ -166,6 +167,23 @@ describe('the example events, played through the built bundles', () => {
       kind: 'response',
       value: { recount: { messages: 1, differences: 0, fault: null } },
     });
+  });
+
+  it('report: a page is written that no request leaves, and its numbers beside it', async () => {
+    const report = await start('report');
+    const answer = await report.invoke(eventIn('compact-schedule.json'));
+    const { page, numbers, pageBytes } = answer.value as { page: string; numbers: string; pageBytes: number };
+    expect(answer.kind).toBe('response');
+    expect(await keysOf('reports/')).toEqual([page, numbers, 'reports/latest.html', 'reports/latest.json']);
+    expect(await store.head('reports/latest.html')).toMatchObject({
+      bytes: pageBytes,
+      contentType: 'text/html; charset=utf-8',
+    });
+    const latest = await store.get('reports/latest.html');
+    const html = latest.kind === 'found' ? Buffer.from(latest.object.body).toString() : '';
+    expect(html).toContain('default-src &#39;none&#39;');
+    expect(html).toContain('1 message');
+    expect(lines(report).find((line) => 'Reports' in line)).toMatchObject({ Desk: bucket, Reports: 1 });
   });
 
   it('route: the next message is decided by that table', async () => {

@@ -3,6 +3,7 @@ import { readdirSync, readFileSync } from 'node:fs';
 import { beforeAll, describe, expect, it } from 'vitest';
 import { createBackfillHandler } from '../../src/handlers/backfill.ts';
 import { createIntakeHandler } from '../../src/handlers/intake.ts';
+import { createReportHandler } from '../../src/handlers/report.ts';
 import { placeOrder } from '../../src/ledger/orders.ts';
 import { createS3Store } from '../../src/store/s3.ts';
 import { exampleDesk } from '../features/example.ts';
@@ -11,13 +12,14 @@ import { queues as intakeQueues, settings as intakeSettings } from '../intake/de
 import { actionsOfCommand, createRecordingClient, type Use } from './recording-s3.ts';
 import { resources, statementsOf } from './template.ts';
 
-const functions = ['Route', 'Confirm', 'Compact', 'Intake', 'Backfill'] as const;
+const functions = ['Route', 'Confirm', 'Compact', 'Report', 'Intake', 'Backfill'] as const;
 type Role = (typeof functions)[number];
 
 const uses: Record<Role, Map<string, Use>> = {
   Route: new Map(),
   Confirm: new Map(),
   Compact: new Map(),
+  Report: new Map(),
   Intake: new Map(),
   Backfill: new Map(),
 };
@@ -114,6 +116,13 @@ beforeAll(async () => {
   station.pass(40 * 24 * 3_600_000);
   await teach(station);
   await station.compact({});
+
+  // The report: of a desk without a file, of one that learned nothing, of one with a base and a segment beside it.
+  const report = (of: Station) => as('Report', () => createReportHandler(of.deps)({}));
+  await report(bare).catch(() => {});
+  await report(await openRecorded(exampleDesk));
+  await station.confirmAs('lesson-0', 'moving');
+  await report(station);
 
   const secret = Buffer.from('a secret of twenty-four.').toString('base64');
   const intake = createIntakeHandler({

@@ -1,5 +1,6 @@
 // biome-ignore-all lint/suspicious/noTemplateCurlyInString: CloudFormation's Fn::Sub is written like this
 import { describe, expect, it } from 'vitest';
+import { machineOfTemplate } from '../../src/cost/load.ts';
 import { metrics } from '../../src/metrics/measurement.ts';
 import { keys } from '../../src/store/keys.ts';
 import { type Node, ofType, resources, strings, template, templateText } from './template.ts';
@@ -142,12 +143,17 @@ describe('the bucket', () => {
     expect(bucket.NotificationConfiguration.EventBridgeConfiguration.EventBridgeEnabled).toBe(true);
   });
 
-  it('deletes raw messages, refused confirmations, marks, superseded objects and unfinished uploads, and nothing else', () => {
+  it('deletes raw messages and what quotes them, refused confirmations, marks, superseded objects and unfinished uploads, and nothing else', () => {
     const rules = bucket.LifecycleConfiguration.Rules;
     const expiring = rules
       .filter((rule: Node) => rule.ExpirationInDays !== undefined)
       .map((rule: Node) => rule.Prefix);
-    expect(expiring.sort()).toEqual([keys.refusedConfirmations, keys.inbound, keys.webhookMarks].sort());
+    expect(expiring.sort()).toEqual(
+      [keys.refusedConfirmations, keys.inbound, keys.reports, keys.webhookMarks].sort(),
+    );
+    const ofDays = (prefix: string) => rules.find((rule: Node) => rule.Prefix === prefix).ExpirationInDays;
+    // A report holds words of messages: it may not outlive them.
+    expect(ofDays(keys.reports)).toEqual(ofDays(keys.inbound));
     expect(rules.every((rule: Node) => rule.Status === 'Enabled')).toBe(true);
     const superseded = rules.find((rule: Node) => rule.NoncurrentVersionExpiration !== undefined);
     expect(superseded.Prefix).toBeUndefined();
@@ -236,7 +242,9 @@ describe('policies', () => {
 });
 
 describe('the schedules', () => {
-  const schedules = Object.entries(resources.CompactFunction.Properties.Events as Record<string, Node>);
+  const schedules = [resources.CompactFunction, resources.ReportFunction].flatMap((one) =>
+    Object.entries(one.Properties.Events as Record<string, Node>),
+  );
 
   it.each(schedules)(
     '%s runs in the desk’s zone, is tried again, and leaves what fails where an alarm sees it',
@@ -244,7 +252,7 @@ describe('the schedules', () => {
       expect(Type).toBe('ScheduleV2');
       expect(Properties.ScheduleExpressionTimezone).toEqual({ Ref: 'TimeZone' });
       expect(Properties.RetryPolicy.MaximumRetryAttempts).toBeGreaterThan(0);
-      expect(refOf(Properties.DeadLetterConfig.Arn)).toBe('CompactDeadLetters');
+      expect(refOf(Properties.DeadLetterConfig.Arn)).toBe('NightDeadLetters');
       expect(refOf(Properties.RoleArn)).toBe('ScheduleRole');
     },
   );
@@ -252,6 +260,29 @@ describe('the schedules', () => {
   it('give the compaction an event that it understands', () => {
     const [, { Properties }] = schedules.find(([name]) => name === 'Recount') as [string, Node];
     expect(JSON.parse(Properties.Input)).toEqual({ recount: true });
+  });
+
+  it('may start every function that they name, and no other', () => {
+    const [invoke] = resources.ScheduleRole.Properties.Policies[0].PolicyDocument.Statement;
+    expect(invoke.Action).toBe('lambda:InvokeFunction');
+    expect(invoke.Resource.map(refOf).sort()).toEqual(
+      functions
+        .filter(([, { Events = {} }]) =>
+          Object.values(Events as Record<string, Node>).some(({ Type }) => Type === 'ScheduleV2'),
+        )
+        .map(([name]) => name)
+        .sort(),
+    );
+  });
+
+  it('write the report after the night’s table and the week’s recount, unless somebody changes them', () => {
+    const minuteOf = (name: string): number => {
+      const [, minute, hour] = /^cron\((\d+) (\d+) /.exec(template.Parameters[name].Default) ?? [];
+      return Number(hour) * 60 + Number(minute);
+    };
+    // A compaction may take 15 minutes.
+    expect(minuteOf('RecountSchedule')).toBeGreaterThan(minuteOf('NightSchedule') + 15);
+    expect(minuteOf('ReportSchedule')).toBeGreaterThan(minuteOf('RecountSchedule') + 15);
   });
 });
 
@@ -271,9 +302,8 @@ describe('alarms', () => {
     expect(properties.TreatMissingData).toMatch(/^(notBreaching|breaching|ignore)$/);
   });
 
-  it('watch dead letters, age, errors, failures, the held share, missed compactions and recounts', () => {
+  it('watch dead letters, age, errors, failures, the held share, missed compactions and reports, and recounts', () => {
     expect(alarms.map(([name]) => name.replace(/Alarm$/, '')).sort()).toEqual([
-      'CompactDeadLetters',
       'CompactionMissed',
       'ConfirmationAge',
       'ConfirmationDeadLetters',
@@ -282,7 +312,9 @@ describe('alarms', () => {
       'HeldShare',
       'InboundAge',
       'InboundDeadLetters',
+      'NightDeadLetters',
       'Recount',
+      'ReportMissed',
     ]);
   });
 
@@ -297,17 +329,27 @@ describe('alarms', () => {
   });
 
   it('look at metrics that the functions write, under the dimension that they write', () => {
-    expect(watched.length).toBe(6);
+    expect(watched.length).toBe(7);
     for (const { MetricName, Dimensions } of watched) {
       expect(Object.keys(metrics)).toContain(MetricName);
       expect(Dimensions).toEqual([{ Name: 'Desk', Value: { Ref: 'Bucket' } }]);
     }
   });
 
-  it('of a missed compaction waits for longer than from one night to the next', () => {
-    const { Period, EvaluationPeriods, TreatMissingData } = resources.CompactionMissedAlarm.Properties;
-    expect(Period * EvaluationPeriods).toBe(26 * 3600);
-    expect(TreatMissingData).toBe('breaching');
+  it.each(['Compaction', 'Report'])(
+    'of a missed %s wait for longer than from one night to the next',
+    (name) => {
+      const { Period, EvaluationPeriods, TreatMissingData } = resources[`${name}MissedAlarm`].Properties;
+      expect(Period * EvaluationPeriods).toBe(26 * 3600);
+      expect(TreatMissingData).toBe('breaching');
+    },
+  );
+
+  it('look at as many metrics as their cost is computed from', () => {
+    const looked = alarms.flatMap(([, { Metrics = [{ MetricStat: {} }] }]) =>
+      Metrics.filter((one: Node) => one.MetricStat !== undefined),
+    );
+    expect(looked).toHaveLength(machineOfTemplate.alarmMetrics);
   });
 });
 
