@@ -7,7 +7,7 @@ import { isTombstone } from './history.ts';
 import { readHistory } from './history-store.ts';
 import { type Landing, land, type Work } from './land.ts';
 import { successor } from './manifest.ts';
-import { placeOrder } from './orders.ts';
+import { closeOrder, placeOrder } from './orders.ts';
 import { mapBounded } from './pace.ts';
 import type { World } from './world.ts';
 
@@ -72,7 +72,7 @@ export async function eraseMessages(
   const atMs = world.nowMs();
   const order = await placeOrder(world, { kind: 'erase', messages: distinct, atMs });
   const result = await carryOutErasure(world, schema, distinct, atMs);
-  if (result.isDone) await world.store.delete(order);
+  if (result.isDone) await closeOrder(world, order);
   return result;
 }
 

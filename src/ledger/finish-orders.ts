@@ -2,7 +2,7 @@ import type { Schema } from '../features/schema.ts';
 import { keys } from '../store/keys.ts';
 import { carryOutErasure } from './erase.ts';
 import { isId, timeOf } from './ids.ts';
-import { type Order, readOrder } from './orders.ts';
+import { closeOrder, type Order, readOrder } from './orders.ts';
 import { sweepHistories } from './sweep.ts';
 import { carryOutUndo } from './undo.ts';
 import type { World } from './world.ts';
@@ -15,7 +15,8 @@ export async function finishOrders(
   ageMs: number,
 ): Promise<{ readonly finished: number; readonly left: number }> {
   const found: string[] = [];
-  for await (const { key } of world.store.list(keys.orders)) {
+  for await (const { key, bytes } of world.store.list(keys.orders)) {
+    if (bytes === 0) continue;
     const id = key.slice(keys.orders.length, -'.json'.length);
     if (!isId(id) || world.nowMs() - timeOf(id) >= ageMs) found.push(key);
   }
@@ -23,9 +24,9 @@ export async function finishOrders(
   for (const key of found) {
     const got = await world.store.get(key);
     // Another process brought it to its end.
-    if (got.kind !== 'found') continue;
+    if (got.kind !== 'found' || got.object.bytes === 0) continue;
     if (await carryOut(world, schema, readOrder(got.object.body, key))) {
-      await world.store.delete(key);
+      await closeOrder(world, key);
       finished += 1;
     } else left += 1;
   }

@@ -12,7 +12,7 @@ export interface UndoScope {
   readonly untilMs: number;
 }
 
-/** What a command was asked to do, written down before it begins and deleted when all of it is done: a process that dies in the
+/** What a command was asked to do, written down before it begins and emptied when all of it is done: a process that dies in the
  *  middle leaves its order, and the next compaction brings it to its end. Every step may be repeated. */
 export type Order =
   | { readonly kind: 'erase'; readonly messages: readonly string[]; readonly atMs: number }
@@ -24,6 +24,12 @@ export async function placeOrder(world: World, order: Order): Promise<string> {
   const key = `${keys.orders}${newId(world, '')}.json`;
   await putNew(world, key, new TextEncoder().encode(`${JSON.stringify(order)}\n`));
   return key;
+}
+
+/** All of it is done. The order stays as an empty object, for good: were it deleted, a copy of its writing that was held up on
+ *  the way could still arrive, and an undo be carried out again on what was confirmed since. Who did what is not kept. */
+export async function closeOrder(world: World, key: string): Promise<void> {
+  await world.store.put(key, new Uint8Array(0));
 }
 
 /** Throws TallypostError `object-damaged`. */

@@ -8,7 +8,7 @@ import { readAbsorbed } from './absorbed.ts';
 import { commit, readManifest } from './commit.ts';
 import { checkSchema, decodeManifest, type Manifest, successor } from './manifest.ts';
 import { putNew, readBase } from './objects.ts';
-import { placeOrder } from './orders.ts';
+import { closeOrder, placeOrder } from './orders.ts';
 import { archive, makeTable, newBaseId } from './rebuild.ts';
 import { sweepHistories } from './sweep.ts';
 import type { World } from './world.ts';
@@ -67,7 +67,7 @@ export async function restoreVersion(
   const { version } = committed.manifest;
   if (!committed.value) return { kind: 'lost-race', ...outcome, version };
   const isDone = await sweepHistories(world);
-  if (isDone) await world.store.delete(order);
+  if (isDone) await closeOrder(world, order);
   return { kind: isDone ? 'restored' : 'unfinished', ...outcome, version };
 }
 

@@ -4,7 +4,7 @@ import type { Schema } from '../features/schema.ts';
 import { isTombstone } from './history.ts';
 import { listMessages, readHistory } from './history-store.ts';
 import { land, type Work } from './land.ts';
-import { placeOrder, type UndoScope } from './orders.ts';
+import { closeOrder, placeOrder, type UndoScope } from './orders.ts';
 import { mapBounded } from './pace.ts';
 import type { World } from './world.ts';
 
@@ -35,7 +35,7 @@ export async function undoConfirmations(
   const { by, sinceMs, untilMs } = scope;
   const order = await placeOrder(world, { kind: 'undo', atMs, by, sinceMs, untilMs });
   const result = await carryOutUndo(world, schema, scope, atMs);
-  if (result.isDone) await world.store.delete(order);
+  if (result.isDone) await closeOrder(world, order);
   return result;
 }
 

@@ -158,6 +158,28 @@ describe('what the simulation found once stays mended:', () => {
     expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'billing', m2: 'leaks' });
   });
 
+  it('an order whose writing arrives once more after it was carried out is not carried out again', async () => {
+    const inner = createMemoryStore();
+    const world = testWorld(1, inner);
+    const late: (() => Promise<unknown>)[] = [];
+    const store: Store = {
+      ...inner,
+      put(key, body, options) {
+        if (key.startsWith('model/orders/')) late.push(() => inner.put(key, body, options));
+        return inner.put(key, body, options);
+      },
+    };
+    await fold(world, claim('m1', 'billing'), claim('m2', 'leaks', 0, 'bob'));
+    await undoConfirmations({ ...world, store }, schema, { by: 'ann', sinceMs: 0, untilMs: world.clock.ms });
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m2: 'leaks' });
+    // What ann says since, of the same period, is no part of what was undone.
+    await fold(world, claim('m1', 'meters'));
+    for (const arrive of late) await arrive();
+    world.clock.ms += 3_600_000;
+    expect(await compact(world, desk, schema)).toMatchObject({ orders: 0, ordersLeft: 0 });
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'meters', m2: 'leaks' });
+  });
+
   it('a recount whose base is deleted meanwhile starts again with the new one', async () => {
     const inner = createMemoryStore();
     const world = testWorld(1, inner);

@@ -1,7 +1,7 @@
 import type { World } from '../../src/ledger/world.ts';
 import { desk, seeded, startMs } from '../ledger/fixture.ts';
 import { work } from './actors.ts';
-import { Checker } from './checker.ts';
+import { Checker, fail } from './checker.ts';
 import { checkEnd } from './end.ts';
 import { Oracle, type Undo } from './oracle.ts';
 import { drawPlan, type Job, type Plan } from './plan.ts';
@@ -29,6 +29,8 @@ export class Simulation {
   readonly #random: () => number;
   /** Order to the undo and those that may still be carrying it out. */
   readonly #undoOf = new Map<string, { readonly undo: Undo; busy: Set<symbol> | null }>();
+  /** Orders ever placed. */
+  readonly #placed = new Set<string>();
   /** Processes that carry out orders. */
   readonly #carriers = new Set<symbol>();
 
@@ -48,7 +50,7 @@ export class Simulation {
         this.scheduler.failure ??= error;
       }
     };
-    this.objects.onDelete = (key) => this.#onDelete(key);
+    this.objects.onDelete = (key) => this.#onDone(key);
     this.objects.put('config/desk.json', new TextEncoder().encode(JSON.stringify(desk)));
   }
 
@@ -130,7 +132,14 @@ export class Simulation {
   #onWrite(key: string): void {
     if (key === 'model/manifest.json') this.checker.check();
     if (!key.startsWith('model/orders/')) return;
-    const order = JSON.parse(new TextDecoder().decode(this.objects.held.get(key)?.body));
+    const text = new TextDecoder().decode(this.objects.held.get(key)?.body);
+    if (text === '') {
+      this.#onDone(key);
+      return;
+    }
+    if (this.#placed.has(key)) fail(`${key} stands again after it was carried out`);
+    this.#placed.add(key);
+    const order = JSON.parse(text);
     for (const message of order.messages ?? []) this.oracle.erasureOrdered.add(message);
     if (order.kind !== 'undo') return;
     const { by, sinceMs, untilMs } = order;
@@ -139,13 +148,13 @@ export class Simulation {
     this.oracle.undos.push(undo);
   }
 
-  #onDelete(key: string): void {
+  #onDone(key: string): void {
     const order = this.#undoOf.get(key);
-    if (order) order.busy = new Set(this.#carriers);
+    if (order) order.busy ??= new Set(this.#carriers);
     this.#endUndos();
   }
 
-  /** An undo has ended when its order is gone, and nobody is left who read the order before. */
+  /** An undo has ended when its order is done, and nobody is left who read the order before. */
   #endUndos(): void {
     for (const { undo, busy } of this.#undoOf.values())
       if (busy?.size === 0) undo.endedAt ??= this.oracle.tick();
