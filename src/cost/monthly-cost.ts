@@ -19,10 +19,12 @@ export const requests = {
   form: { reads: 0, writes: 1 },
   /** A look for the webhook's mark; the drop and the mark. */
   webhook: { reads: 1, writes: 2 },
-  /** The drop, the message, its history, a last look at the drop; the history. */
-  confirmation: { reads: 4, writes: 1 },
-  /** The manifest twice and the list of absorbed segments; the segment and the manifest. */
+  /** The drop, the message, its history; the history. */
+  confirmation: { reads: 3, writes: 1 },
+  /** The manifest twice and the list of absorbed segments; the segment and the manifest. Assumed of every fold, though
+   *  only those that hold a message confirmed before, by a segment that is in the base by now, read the list. */
   fold: { reads: 3, writes: 2 },
+  foldOfNew: { reads: 2, writes: 2 },
 } as const;
 
 const million = 1e6;

@@ -107,7 +107,8 @@ async function settleDrop(deps: HandlerDeps, taken: Taken, outcome: FoldOutcome 
         ...lag,
       });
     }
-    await deleteUnchanged(deps, drop);
+    // A drop that was replaced meanwhile is another confirmation, with an event of its own: it stays.
+    await deps.world.store.delete(drop.key, { ifMatch: drop.etag });
     return true;
   } catch (error) {
     deps.log({
@@ -152,10 +153,4 @@ async function keepRefused({ world }: HandlerDeps, { key, body, trace }: Drop, f
     `${keys.refusedConfirmations}${id}.json`,
     Buffer.from(`${JSON.stringify(record, null, 2)}\n`),
   );
-}
-
-/** A drop that was replaced meanwhile is another confirmation, with an event of its own. */
-async function deleteUnchanged({ world }: HandlerDeps, { key, etag }: Drop): Promise<void> {
-  const head = await world.store.head(key);
-  if (head?.etag === etag) await world.store.delete(key);
 }

@@ -287,11 +287,14 @@ export function createDirectoryStore(directory: string): Store {
       }
     },
 
-    async delete(key) {
+    async delete(key, options = {}) {
       checkKey(key);
       return guarded(key, async () => {
         for (const _ of attempts) {
           const current = look(key);
+          // Looked at again in each attempt: whoever won the last one may have replaced it.
+          if (options.ifMatch !== undefined && current.head !== null && current.head.etag !== options.ifMatch)
+            return;
           if (current.head === null) return removePlain(key, current.version?.header.plain ?? null);
           makeReady();
           if ((await advance(key, current, null)) !== null) return;

@@ -61,8 +61,9 @@ export function createMemoryStore(nowMs: () => number = Date.now): Store {
         yield { key, etag: object.etag, bytes: object.bytes, modifiedAtMs: object.modifiedAtMs };
       }
     },
-    async delete(key) {
+    async delete(key, options = {}) {
       checkKey(key);
+      if (options.ifMatch !== undefined && objects.get(key)?.etag !== options.ifMatch) return;
       objects.delete(key);
     },
     async replaceMetadata(key, metadata, options) {

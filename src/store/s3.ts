@@ -136,9 +136,13 @@ export function createS3Store({ client, bucket, prefix }: S3Place): Store {
       } while (token !== undefined);
     },
 
-    async delete(key) {
+    async delete(key, { ifMatch } = {}) {
       checkKey(key);
-      await send(key, () => client.send(new DeleteObjectCommand(target(key))), [404]);
+      // 412: it changed. 409: another request of this key ran at the same time, and may have changed it.
+      // Source: Amazon S3 User Guide, "How to perform conditional deletes".
+      const input = { ...target(key), ...(ifMatch === undefined ? {} : { IfMatch: ifMatch }) };
+      const expected = ifMatch === undefined ? [404] : [404, 409, 412];
+      await send(key, () => client.send(new DeleteObjectCommand(input)), expected);
     },
 
     async replaceMetadata(key, metadata, options) {

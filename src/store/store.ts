@@ -53,8 +53,8 @@ export interface Store {
     prefix: string,
     options?: { readonly after?: string },
   ): AsyncIterable<Pick<ObjectHead, 'key' | 'etag' | 'bytes' | 'modifiedAtMs'>>;
-  /** Deletes; no error when there is nothing. */
-  delete(key: string): Promise<void>;
+  /** Deletes; no error when there is nothing. With `ifMatch` only this version: whatever stands there by then stays. */
+  delete(key: string, options?: { readonly ifMatch?: string }): Promise<void>;
   /** Replaces all user metadata, keeping body and content type; `lost` when the object changed since `ifMatch`; `missing` when gone. */
   replaceMetadata(
     key: string,

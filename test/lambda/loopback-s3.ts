@@ -66,7 +66,12 @@ export async function startLoopbackS3(store: Store, bucket: string): Promise<Loo
       return say(200, headers, object.body);
     }
     if (request.method === 'DELETE') {
-      await store.delete(key);
+      const ifMatch = unquoted(header('if-match'));
+      if (ifMatch !== undefined) {
+        const head = await store.head(key);
+        if (head !== null && head.etag !== ifMatch) return refuse(412, 'PreconditionFailed');
+      }
+      await store.delete(key, ifMatch === undefined ? {} : { ifMatch });
       return say(204);
     }
     if (request.method !== 'PUT') return refuse(405, 'MethodNotAllowed');

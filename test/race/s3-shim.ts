@@ -1,4 +1,4 @@
-import { CreateBucketCommand, S3Client } from '@aws-sdk/client-s3';
+import { CreateBucketCommand, HeadObjectCommand, S3Client } from '@aws-sdk/client-s3';
 
 /** Where a real S3-protocol server answers; undefined: none. Set by .ci/run, or by hand after `s3-server.sh up`. */
 export const endpoint = process.env.TALLYPOST_S3_ENDPOINT;
@@ -11,7 +11,7 @@ interface Request {
 /** A client for radosgw, which differs from Amazon S3 in ways that no product should know of. Seen with Ceph 16.2:
  *  it compares If-Match with the ETag without its quotes; it tells a copy's ETag without quotes; and it may answer 500 to the loser of a race of conditional
  *  writes, where Amazon S3 answers 409. (It ignores CopySourceIfMatch and If-Match on a copy: the store's own look at
- *  the ETag before the copy is all that guards there.) */
+ *  the ETag before the copy is all that guards there.) It also ignores If-Match on a deletion: a look before it stands in. */
 export function createShimmedClient(at: string): S3Client {
   const client = new S3Client({
     endpoint: at,
@@ -20,6 +20,20 @@ export function createShimmedClient(at: string): S3Client {
     credentials: { accessKeyId: 'testkey', secretAccessKey: 'testsecret' },
     maxAttempts: 3,
   });
+  client.middlewareStack.add(
+    (next, context) => async (args) => {
+      const { Bucket, Key, IfMatch } = args.input as { Bucket?: string; Key?: string; IfMatch?: string };
+      if (context.commandName !== 'DeleteObjectCommand' || IfMatch === undefined) return next(args);
+      const head = await client.send(new HeadObjectCommand({ Bucket, Key }));
+      if (head.ETag !== IfMatch)
+        throw Object.assign(new Error('PreconditionFailed'), {
+          name: 'PreconditionFailed',
+          $metadata: { httpStatusCode: 412 },
+        });
+      return next(args);
+    },
+    { step: 'initialize', name: 'deleteOnCondition' },
+  );
   client.middlewareStack.add(
     (next) => async (args) => {
       const { headers } = args.request as Request;

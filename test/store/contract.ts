@@ -215,6 +215,18 @@ export function describeContract(
       expect(await bodyOf(store, key)).toBe('3');
     });
 
+    it('deletes on condition only the version that was read', async () => {
+      const key = `${fresh()}a`;
+      const first = etagOf(await store.put(key, bytes('1')));
+      const second = etagOf(await again().put(key, bytes('2')));
+      await store.delete(key, { ifMatch: first });
+      expect(await bodyOf(again(), key)).toBe('2');
+      await store.delete(key, { ifMatch: second });
+      expect(await again().head(key)).toBeNull();
+      await store.delete(key, { ifMatch: second });
+      expect(await keysOf(store, key)).toEqual([]);
+    });
+
     it('lets an object come back after its deletion', async () => {
       const key = `${fresh()}a`;
       const first = etagOf(await store.put(key, bytes('1'), { ifNoneMatch: '*' }));

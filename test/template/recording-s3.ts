@@ -99,8 +99,13 @@ export function createRecordingClient(
         if (copied.kind !== 'written') throw refusal(412, 'PreconditionFailed');
         return { CopyObjectResult: { ETag: copied.etag } };
       }
-      case 'DeleteObjectCommand':
-        return store.delete(key);
+      case 'DeleteObjectCommand': {
+        if (input.IfMatch === undefined) return store.delete(key);
+        // Amazon S3 User Guide, "Enforce conditional deletes": with an ETag they need both rights.
+        note({ action: 's3:GetObject', on: key });
+        if ((await store.head(key))?.etag !== input.IfMatch) throw refusal(412, 'PreconditionFailed');
+        return store.delete(key, { ifMatch: input.IfMatch });
+      }
       case 'ListObjectsV2Command': {
         const Contents = [];
         for await (const item of store.list(
