@@ -116,7 +116,17 @@ describe('the requests that a month’s cost is computed from are those that the
     for (let i = 2; i < 12; i++) drops.push(await station.putDrop(`d${i}`, drop(i)));
     take();
     await station.feed(confirm, ...drops);
-    expect(take()).toEqual(plus(times(requests.confirmation, 10), requests.fold));
+    expect(take()).toEqual(plus(times(requests.confirmation, 10), requests.foldOfNew));
+    // Where their segments are is told by the manifest alone while they stand beside the base.
+    const corrected = (i: number) => ({ ...drop(i), queue: 'leaks', at: '2026-03-02T08:59:30Z' });
+    const beside = [await station.putDrop('e2', corrected(2)), await station.putDrop('e3', corrected(3))];
+    take();
+    await station.feed(confirm, ...beside);
+    expect(take()).toEqual(plus(times(requests.confirmation, 2), requests.foldOfNew));
+    const absorbed = [await station.putDrop('e0', corrected(0)), await station.putDrop('e1', corrected(1))];
+    take();
+    await station.feed(confirm, ...absorbed);
+    expect(take()).toEqual(plus(times(requests.confirmation, 2), requests.fold));
   });
 });
 
