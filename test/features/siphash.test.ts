@@ -55,6 +55,21 @@ describe('SipHash-2-4', () => {
     );
   });
 
+  it('agrees with another implementation on texts of every length', () => {
+    const text = fc.oneof(
+      fc.string({ unit: 'binary', maxLength: 60 }),
+      fc.string({ unit: 'grapheme', minLength: 200, maxLength: 800 }),
+    );
+    fc.assert(
+      fc.property(text, (each) => {
+        const expected = reference.hash(keyWords, new TextEncoder().encode(each));
+        expect(textToken(each)).toBe(low40(expected));
+        expect(Number.parseInt(fingerprint(each).slice(0, 8), 16)).toBe(expected.h);
+      }),
+      { seed: 20269, numRuns: 1000 },
+    );
+  });
+
   it('is not confused by what it hashed before', () => {
     textToken('something much longer than the next one');
     expect(fingerprint(bytesText(4))).toBe('cf2794e0277187b7');
