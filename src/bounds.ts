@@ -186,6 +186,9 @@ export const bounds = {
   driftRecentEpochs: 2,
   /** Histories counted at a time by a recount. */
   recountChunkMax: 500,
+  /** Attempts at a recount, a pause before each but the first. One for a new schema must find a gap between two folds that is as
+   *  long as itself: where none of eight does, the next eight would hardly. */
+  recountAttemptsMax: 8,
 
   // Intake over HTTPS (src/intake)
   /** A long letter typed into a form is under 20 KB; all fields of one submission together. */

@@ -2,7 +2,7 @@ import { bounds } from '../bounds.ts';
 import { type Fault, TallypostError } from '../errors.ts';
 import { keys } from '../store/keys.ts';
 import { brokenRule, decodeManifest, emptyManifest, encodeManifest, type Manifest } from './manifest.ts';
-import { faultOf, isOfStore, pause } from './pace.ts';
+import { faultOf, isLasting, isOfStore, pause } from './pace.ts';
 import type { World } from './world.ts';
 
 export interface ReadManifest {
@@ -58,6 +58,7 @@ export async function commit<T>(
     } catch (error) {
       if (!isOfStore(error)) throw error;
       fault = faultOf(error, keys.manifest);
+      if (isLasting(fault)) break;
     }
   }
   return { kind: 'unknown', fault };

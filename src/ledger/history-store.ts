@@ -1,7 +1,8 @@
 import { bounds } from '../bounds.ts';
+import type { Fault } from '../errors.ts';
 import { keys } from '../store/keys.ts';
 import { decodeHistory, encodeHistory, type Stored } from './history.ts';
-import { isOfStore, pause } from './pace.ts';
+import { faultOf, isLasting, isOfStore, pause } from './pace.ts';
 import type { World } from './world.ts';
 
 export interface ReadHistory {
@@ -35,15 +36,22 @@ export interface Edit<T> {
   readonly value: T;
 }
 
+export type Edited<T> =
+  | { readonly kind: 'known'; readonly value: T }
+  /** The change may or may not have happened, or may happen yet. */
+  | { readonly kind: 'unknown'; readonly fault: Fault };
+
 /** Changes a history by compare-and-set and returns only what is certain: the write landed, or `edit` saw, in a state that
  *  an earlier attempt of ours can no longer replace, that nothing is to be written. A read alone is not enough for that:
- *  a write whose answer was lost may still be on its way while the ETag it expects stands. Null: not certain. */
+ *  a write whose answer was lost may still be on its way while the ETag it expects stands. */
 export async function editHistory<T>(
   world: World,
   message: string,
   first: ReadHistory | null,
   edit: (stored: Stored | null) => Edit<T>,
-): Promise<{ readonly value: T } | null> {
+): Promise<Edited<T>> {
+  const key = historyKey(message);
+  let fault: Fault = { code: 'contended', place: key, expected: 'a turn to write', got: 'none' };
   let read = first;
   let triedOn: { readonly etag: string | null } | null = null;
   for (let attempt = 0; attempt < bounds.writeAttemptsMax; attempt++) {
@@ -51,19 +59,20 @@ export async function editHistory<T>(
     try {
       read ??= await readHistory(world, message);
       const { next, value } = edit(read.stored);
-      if (next === null && (triedOn === null || triedOn.etag !== read.etag)) return { value };
+      if (next === null && (triedOn === null || triedOn.etag !== read.etag)) return { kind: 'known', value };
       if (next !== null) {
         const { etag } = read;
         triedOn = { etag };
         const condition = etag === null ? { ifNoneMatch: '*' as const } : { ifMatch: etag };
-        const put = await world.store.put(historyKey(message), encodeHistory(next), condition);
-        if (put.kind === 'written') return { value };
+        const put = await world.store.put(key, encodeHistory(next), condition);
+        if (put.kind === 'written') return { kind: 'known', value };
       }
     } catch (error) {
       if (!isOfStore(error) && triedOn === null) throw error;
-      if (!isOfStore(error)) return null;
+      fault = faultOf(error, key);
+      if (!isOfStore(error) || isLasting(fault)) return { kind: 'unknown', fault };
     }
     read = null;
   }
-  return null;
+  return { kind: 'unknown', fault };
 }

@@ -12,7 +12,7 @@ import { newId } from './ids.ts';
 import { landingOf, openAmong } from './landing.ts';
 import { ageMs, checkSchema, isNamed, type Manifest, withSegment, withVoided } from './manifest.ts';
 import { putNew } from './objects.ts';
-import { faultOf, isOfStore, mapBounded, pause } from './pace.ts';
+import { faultOf, isLasting, isOfStore, mapBounded, pause } from './pace.ts';
 import { type Answer, type Plan, plan, type Request } from './plan.ts';
 import type { World } from './world.ts';
 
@@ -69,7 +69,7 @@ export async function land(
 const lastingFaults = new Set(['being-folded', 'object-damaged', 'schema-mismatch', 'invariant-broken']);
 
 function isHopeless(landing: Landing): boolean {
-  return landing.kind === 'landed' || lastingFaults.has(landing.fault.code);
+  return landing.kind === 'landed' || lastingFaults.has(landing.fault.code) || isLasting(landing.fault);
 }
 
 interface Opened {
@@ -88,7 +88,8 @@ class Round {
   readonly #landings = new Map<Work, Landing>();
   readonly #planned = new Map<Work, Plan>();
   #segment = '';
-  #isAbandoned = false;
+  /** Why nothing of this round can land; null: it can. */
+  #abandonedFor: Fault | null = null;
 
   constructor(world: World, schema: Schema, options: LandOptions, own: Set<string>) {
     this.#world = world;
@@ -107,12 +108,12 @@ class Round {
     this.#segment = newId(this.#world, manifest.floor, manifest.atMs);
     this.#own.add(this.#segment);
     await mapBounded(ready, (one) => this.#write(one, manifest, hasAbsorbed));
-    if (!this.#isAbandoned && this.#planned.size > 0) await this.#commit(first.version);
+    if (this.#abandonedFor === null && this.#planned.size > 0) await this.#commit(first.version);
     return works.map(
       (work) =>
         this.#landings.get(work) ?? {
           kind: 'unknown',
-          fault: {
+          fault: this.#abandonedFor ?? {
             code: 'contended',
             place: historyKey(work.message),
             expected: 'a turn to fold',
@@ -179,7 +180,7 @@ class Round {
   }
 
   async #write({ work, read }: Opened, manifest: Manifest, hasAbsorbed: HasAbsorbed): Promise<void> {
-    if (this.#isAbandoned) return;
+    if (this.#abandonedFor !== null) return;
     try {
       const edited = await editHistory(this.#world, work.message, read, (stored) => {
         const settled = settle(stored, manifest, hasAbsorbed, this.#segment);
@@ -189,7 +190,7 @@ class Round {
       });
       // Whether the history names the segment is not known: committing it could count the message without its
       // entry, or the entry without its message.
-      if (edited === null) this.#isAbandoned = true;
+      if (edited.kind === 'unknown') this.#abandonedFor ??= edited.fault;
       else if (edited.value?.move) this.#planned.set(work, edited.value);
       else if (edited.value) this.#landings.set(work, { kind: 'landed', answers: edited.value.answers });
     } catch (error) {
@@ -233,7 +234,8 @@ class Round {
       const next = withSegment(manifest, this.#world.nowMs(), id, this.#schema.id, erases);
       return { kind: 'write', next, value: true };
     });
-    if (committed.kind === 'known' && committed.value)
+    if (committed.kind === 'unknown') this.#abandonedFor = committed.fault;
+    else if (committed.value)
       for (const [work, { answers }] of planned) this.#landings.set(work, { kind: 'landed', answers });
   }
 

@@ -10,7 +10,7 @@ import { emptyTable, type ServedTable } from '../model/served-table.ts';
 import { keys } from '../store/keys.ts';
 import { missing } from './absorbed.ts';
 import type { Manifest } from './manifest.ts';
-import { isOfStore, mapBounded, pause } from './pace.ts';
+import { faultOf, isLasting, isOfStore, mapBounded, pause } from './pace.ts';
 import type { World } from './world.ts';
 
 /** The immutable objects that a manifest names. All throw TallypostError: `object-missing`, and what the codec refuses. */
@@ -50,7 +50,8 @@ export async function putNew(world: World, key: string, body: Uint8Array): Promi
       const put = await world.store.put(key, body, { ifNoneMatch: '*' });
       if (put.kind === 'written' || (await world.store.head(key)) !== null) return;
     } catch (error) {
-      if (!isOfStore(error) || attempt >= bounds.writeAttemptsMax) throw error;
+      const isHopeless = !isOfStore(error) || isLasting(faultOf(error, key));
+      if (isHopeless || attempt >= bounds.writeAttemptsMax) throw error;
     }
     if (attempt >= bounds.writeAttemptsMax)
       throw new TallypostError({

@@ -37,6 +37,13 @@ export function isOfStore(error: unknown): boolean {
   return error instanceof TallypostError ? error.code.startsWith('store-') : !isMistake(error);
 }
 
+const lastingCodes = new Set(['store-full', 'store-refused', 'store-unsupported', 'store-missing']);
+
+/** What the store will say again within any pause: somebody must make room, give leave, or name another place. */
+export function isLasting(fault: Pick<Fault, 'code'>): boolean {
+  return lastingCodes.has(fault.code);
+}
+
 function isMistake(error: unknown): boolean {
   return error instanceof TypeError || error instanceof ReferenceError || error instanceof RangeError;
 }

@@ -8,11 +8,11 @@ import { diffCounts } from '../model/difference.ts';
 import { emptyCounts, foldEntries, mergeCounts } from '../model/fold.ts';
 import { createAbsorbedReader, type HasAbsorbed } from './absorbed.ts';
 import { readManifest } from './commit.ts';
-import { columnAsOf, type History, isTombstone } from './history.ts';
+import { columnAsOf, type History, isTombstone, type Stored } from './history.ts';
 import { editHistory, historyKey, listMessages, readHistory } from './history-store.ts';
 import { isOutdated, type Manifest } from './manifest.ts';
 import { readCounts, withFresh } from './objects.ts';
-import { faultOf, mapBounded } from './pace.ts';
+import { faultOf, mapBounded, pause } from './pace.ts';
 import { type FitModel, newBaseId, rebuild } from './rebuild.ts';
 import type { World } from './world.ts';
 
@@ -37,6 +37,7 @@ export interface RecountResult {
   readonly fault: Fault | null;
   /** Messages that are left out under the new schema, since their raw form is gone. */
   readonly unread: number;
+  /** `lost-race`: something landed during each of the attempts; nothing was changed. */
   readonly repair: 'none' | 'not-needed' | 'repaired' | 'lost-race';
 }
 
@@ -58,49 +59,67 @@ async function recountUndisturbed(
   options: RecountOptions,
 ): Promise<RecountResult> {
   for (let attempt = 0; ; attempt++) {
+    if (attempt > 0) await pause(world, attempt);
     const { manifest } = await readManifest(world);
     const id = newBaseId(world, manifest);
     const isMigration = manifest.schema !== '' && manifest.schema !== schema.id;
-    const unread = isMigration && options.repair ? await rereadHistories(world, schema, options.reread) : 0;
-    const { counts, messages } = await countHistories(world, schema, manifest);
+    const reread = isMigration && options.repair ? (options.reread ?? (async () => null)) : null;
+    const { counts, messages, unread } = await countHistories(world, schema, manifest, reread);
     const { table, fault } = await readTableCounts(world, schema, manifest);
     const { manifest: after } = await readManifest(world);
     // An erasure or a restore meanwhile changed what the histories say of the version compared; a compaction may have deleted
     // what it named.
     const isGone = fault?.code === 'object-missing' && after.version !== manifest.version;
     const isDisturbed = after.erasedAtVersion > manifest.version || isOutdated(after, manifest.version);
-    if ((isGone || isDisturbed) && attempt < 5) continue;
+    const isLastAttempt = attempt + 1 >= bounds.recountAttemptsMax;
+    if ((isGone || isDisturbed) && !isLastAttempt) continue;
     const max = options.differencesMax ?? bounds.faultsListedMax;
     const differences = table ? diffCounts(table, counts, max) : [];
     const found = { version: manifest.version, messages, differences, fault, unread };
     const isRight = fault === null && differences.length === 0;
     if (!options.repair) return { ...found, repair: 'none' };
     if (isRight) return { ...found, repair: 'not-needed' };
-    const { isCommitted } = await rebuild(world, desk, schema, manifest, counts, {
-      id,
-      renames: manifest.renames,
-      fitModel: options.fitModel ?? null,
-      isExclusive: isMigration,
-    });
-    if (isCommitted || attempt >= 5) return { ...found, repair: isCommitted ? 'repaired' : 'lost-race' };
+    // Nothing may land between a count under a new schema and its commit: what was folded with the old features is not in it.
+    const isInTime = !isMigration || after.version === manifest.version;
+    const isCommitted = isInTime && (await replaceBase());
+    if (isCommitted) return { ...found, repair: 'repaired' };
+    if (isLastAttempt) return { ...found, repair: 'lost-race' };
+
+    async function replaceBase(): Promise<boolean> {
+      const rebuilt = await rebuild(world, desk, schema, manifest, counts, {
+        id,
+        renames: manifest.renames,
+        fitModel: options.fitModel ?? null,
+        isExclusive: isMigration,
+      });
+      return rebuilt.isCommitted;
+    }
   }
 }
 
-/** What the histories say of the counts at `manifest`. */
-export async function countHistories(
+type Reread = NonNullable<RecountOptions['reread']>;
+
+/** What the histories say of the counts at `manifest`. `reread`: gives features to those that have none of this schema. */
+async function countHistories(
   world: World,
   schema: Schema,
   manifest: Manifest,
-): Promise<{ counts: Counts; messages: number }> {
+  reread: Reread | null,
+): Promise<{ counts: Counts; messages: number; unread: number }> {
   const hasAbsorbed = await createAbsorbedReader(world)(manifest);
   let counts = emptyCounts(schema);
   let pending = emptyCounts(schema);
-  let messages = 0;
+  let [messages, unread] = [0, 0];
   let chunk: string[] = [];
   const add = async () => {
-    const entries = await mapBounded(chunk, (message) =>
-      entryOf(world, schema, manifest, hasAbsorbed, message),
-    );
+    const entries = await mapBounded(chunk, async (message) => {
+      const { stored } = await readHistory(world, message);
+      if (stored === null || isTombstone(stored)) return null;
+      const isKnown = Object.hasOwn(stored.features, schema.id);
+      const read = isKnown || reread === null ? stored : await addFeatures(world, schema, message, reread);
+      if (read === null) unread += 1;
+      return read && entryOf(schema, manifest, hasAbsorbed, read);
+    });
     const standing = entries.filter((e) => e !== null);
     messages += standing.length;
     pending = foldEntries(pending, standing);
@@ -116,26 +135,24 @@ export async function countHistories(
     if (chunk.length >= bounds.recountChunkMax) await add();
   }
   await add();
-  return { counts: mergeCounts(counts, pending), messages };
+  return { counts: mergeCounts(counts, pending), messages, unread };
 }
 
 function sizeOf(counts: Counts): number {
   return counts.regions.reduce((sum, r) => sum + r.column.length, 1);
 }
 
-async function entryOf(
-  world: World,
+function entryOf(
   schema: Schema,
   manifest: Manifest,
   hasAbsorbed: HasAbsorbed,
-  message: string,
-): Promise<Entry | null> {
-  const { stored } = await readHistory(world, message);
-  if (stored === null || isTombstone(stored) || !Object.hasOwn(stored.features, schema.id)) return null;
-  const plus = columnAsOf(stored, manifest, hasAbsorbed);
+  history: History,
+): Entry | null {
+  if (!Object.hasOwn(history.features, schema.id)) return null;
+  const plus = columnAsOf(history, manifest, hasAbsorbed);
   if (plus === null) return null;
-  const features = decodeFeatures(stored.features[schema.id], schema, historyKey(message));
-  return { features, said: stored.said, minus: null, plus };
+  const features = decodeFeatures(history.features[schema.id], schema, historyKey(history.message));
+  return { features, said: history.said, minus: null, plus };
 }
 
 async function readTableCounts(
@@ -151,36 +168,23 @@ async function readTableCounts(
   }
 }
 
-/** Adds features of the new schema to every history that stands anywhere, beside the old ones: until the manifest turns to the
- *  new schema, nothing else changes. Gives the number that could not be read. */
-async function rereadHistories(
+/** Adds features of the new schema to a history, beside the old ones: until the manifest turns to the new schema, nothing
+ *  else changes. Gives the history as it is then; null when its message cannot be read. */
+async function addFeatures(
   world: World,
   schema: Schema,
-  reread: RecountOptions['reread'],
-): Promise<number> {
-  let unread = 0;
-  for await (const message of listMessages(world)) {
-    const { stored } = await readHistory(world, message);
-    if (stored === null || isTombstone(stored) || Object.hasOwn(stored.features, schema.id)) continue;
-    const features = (await reread?.(message)) ?? null;
-    if (features === null) {
-      unread += 1;
-      continue;
-    }
-    const encoded = encodeFeatures(features);
-    const edited = await editHistory(world, message, null, (now) => {
-      if (now === null || isTombstone(now) || Object.hasOwn(now.features, schema.id))
-        return { next: null, value: true };
-      const next: History = { ...now, rev: now.rev + 1, features: { ...now.features, [schema.id]: encoded } };
-      return { next, value: true };
-    });
-    if (edited === null)
-      throw new TallypostError({
-        code: 'store-busy',
-        place: historyKey(message),
-        expected: 'a turn to write',
-        got: 'none',
-      });
-  }
-  return unread;
+  message: string,
+  reread: Reread,
+): Promise<History | null> {
+  const features = await reread(message);
+  if (features === null) return null;
+  const encoded = encodeFeatures(features);
+  const edited = await editHistory<Stored | null>(world, message, null, (now) => {
+    if (now === null || isTombstone(now) || Object.hasOwn(now.features, schema.id))
+      return { next: null, value: now };
+    const next: History = { ...now, rev: now.rev + 1, features: { ...now.features, [schema.id]: encoded } };
+    return { next, value: next };
+  });
+  if (edited.kind === 'unknown') throw new TallypostError(edited.fault);
+  return edited.value === null || isTombstone(edited.value) ? null : edited.value;
 }

@@ -26,7 +26,7 @@ export async function sweepHistories(world: World): Promise<boolean> {
         return { next: { ...stored, rev: stored.rev + 1, confirmations, placements }, value: null };
       }),
     );
-    if (edits.includes(null)) isDone = false;
+    if (edits.some((edited) => edited.kind === 'unknown')) isDone = false;
     chunk = [];
   };
   for await (const message of listMessages(world)) {

@@ -1,8 +1,10 @@
 import { describe, expect, it } from 'vitest';
+import { TallypostError } from '../../src/errors.ts';
 import { compact } from '../../src/ledger/compaction.ts';
 import { foldClaims } from '../../src/ledger/fold.ts';
 import { recount } from '../../src/ledger/recount.ts';
 import { createMemoryStore } from '../../src/store/memory.ts';
+import type { Store } from '../../src/store/store.ts';
 import {
   claim,
   countingStore,
@@ -147,6 +149,56 @@ describe('a fold', () => {
       { kind: 'retry', fault: { code: 'object-damaged', place: 'model/manifest.json#/version' } },
     ]);
   });
+
+  describe.each(['histories/m2', 'model/segments/', 'model/manifest.json'])(
+    'while %s cannot be written',
+    (prefix) => {
+      /** Every put of a key that starts with `prefix` fails so. */
+      const failing = (inner: Store, failure: () => Error) => {
+        const counted = countingStore(inner);
+        const put: Store['put'] = async (key, body, options) => {
+          if (key.startsWith(prefix)) throw failure();
+          return counted.store.put(key, body, options);
+        };
+        return { store: { ...counted.store, put }, calls: counted.calls };
+      };
+
+      it('names a full disk at once, and folds the same claims once there is room', async () => {
+        const inner = createMemoryStore();
+        const full = () =>
+          new TallypostError({
+            code: 'store-full',
+            place: 'a key',
+            expected: 'space on the disk',
+            got: 'ENOSPC',
+          });
+        const { store, calls } = failing(inner, full);
+        const world = testWorld(1, inner);
+        const before = world.clock.ms;
+        const claims = [claim('m1', 'billing'), claim('m2', 'leaks')];
+        expect(await fold({ ...world, store }, ...claims)).toMatchObject([
+          { kind: 'retry', fault: { code: 'store-full', place: 'a key', got: 'ENOSPC' } },
+          { kind: 'retry', fault: { code: 'store-full', place: 'a key', got: 'ENOSPC' } },
+        ]);
+        // One round without a pause: the manifest twice at most and two histories.
+        expect(calls.get).toBeLessThanOrEqual(4);
+        expect(world.clock.ms - before).toBeLessThan(20);
+        expect(await standings(world, ['m1', 'm2'])).toEqual({});
+        world.clock.ms += 60_000;
+        expect(kinds(await fold(world, ...claims))).toEqual(['folded', 'folded']);
+        expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'billing', m2: 'leaks' });
+      });
+
+      it('names a store that does not answer, after all attempts', async () => {
+        const { store } = failing(createMemoryStore(), () => new Error('socket hang up'));
+        const outcomes = await fold({ ...testWorld(), store }, claim('m1', 'billing'), claim('m2', 'leaks'));
+        expect(outcomes).toMatchObject([
+          { kind: 'retry', fault: { code: 'store-failed' } },
+          { kind: 'retry', fault: { code: 'store-failed' } },
+        ]);
+      });
+    },
+  );
 
   it('does not mix schemas: claims of another one are kept for later', async () => {
     const world = testWorld();

@@ -1,4 +1,5 @@
 import { describe, expect, it } from 'vitest';
+import { bounds } from '../../src/bounds.ts';
 import type { Schema } from '../../src/features/schema.ts';
 import { compact } from '../../src/ledger/compaction.ts';
 import { foldClaims } from '../../src/ledger/fold.ts';
@@ -116,6 +117,55 @@ describe('after a change of schema', () => {
     expect([...(await loadModel(world, desk, wider, null)).scorer.messages]).toEqual([1, 1, 1, 0]);
     await compact(world, desk, wider);
     expect(await recount(world, desk, wider)).toMatchObject({ differences: [], messages: 3 });
+  });
+
+  /** Folds one more message under the old schema just before each of the first `times` bases is put. */
+  const busy = (world: TestWorld, times: number) => {
+    let folds = 0;
+    const put: TestWorld['store']['put'] = async (key, body, options) => {
+      if (key.startsWith('model/bases/') && folds < times) {
+        folds += 1;
+        await fold(world, claim(`late-${folds}`, 'moving', folds));
+      }
+      return world.store.put(key, body, options);
+    };
+    return { world: { ...world, store: { ...world.store, put } }, folds: () => folds };
+  };
+
+  it('a recount finds its gap between folds, and counts under the new schema what they folded', async () => {
+    const world = await counted();
+    const occupied = busy(world, 5);
+    const slept: number[] = [];
+    const sleep = async (ms: number) => void slept.push(ms);
+    expect(await recount({ ...occupied.world, sleep }, desk, wider, { repair: true, reread })).toMatchObject({
+      repair: 'repaired',
+      messages: 7,
+      unread: 1,
+    });
+    expect(occupied.folds()).toBe(5);
+    // Before each new attempt, drawn at random.
+    expect(slept.length).toBeGreaterThanOrEqual(5);
+    expect(new Set(slept).size).toBeGreaterThan(1);
+    // m1 and m2 under leaks as before, late-1 to late-5 under moving; m3 could not be read.
+    expect([...(await loadModel(world, desk, wider, null)).scorer.messages]).toEqual([0, 2, 0, 5]);
+    expect(await recount(world, desk, wider)).toMatchObject({ differences: [], fault: null });
+  });
+
+  it('a recount that finds no gap says so, and changes nothing', async () => {
+    const world = await counted();
+    const occupied = busy(world, Number.POSITIVE_INFINITY);
+    expect(await recount(occupied.world, desk, wider, { repair: true, reread })).toMatchObject({
+      repair: 'lost-race',
+    });
+    expect(occupied.folds()).toBe(bounds.recountAttemptsMax);
+    expect((await loadModel(world, desk, schema, null)).fault).toBeNull();
+    expect(await recount(world, desk, schema)).toMatchObject({ differences: [], fault: null, messages: 11 });
+    expect(await standings(world, [...messages, 'late-8'])).toEqual({
+      m1: 'leaks',
+      m2: 'leaks',
+      m3: 'leaks',
+      'late-8': 'moving',
+    });
   });
 
   it('everything but that recount refuses to mix the two', async () => {

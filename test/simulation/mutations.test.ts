@@ -72,8 +72,8 @@ vi.mock('../../src/ledger/history-store.ts', async (original) => {
     ...real,
     editHistory: async (...args: Parameters<typeof real.editHistory>) => {
       const edited = await real.editHistory(...args);
-      return edited === null && is('goes on without knowing whether a history was written')
-        ? { value: null }
+      return edited.kind === 'unknown' && is('goes on without knowing whether a history was written')
+        ? { kind: 'known', value: null }
         : edited;
     },
   };
