@@ -128,7 +128,8 @@ async function deleteDrops(world: World, messages: ReadonlySet<string>): Promise
       if (bytes <= bounds.ledgerJsonBytesMax) found.push(key);
   await mapBounded(found, async (key) => {
     const got = await world.store.get(key);
-    if (got.kind === 'found' && messages.has(messageNamedIn(got.object.body))) await world.store.delete(key);
+    if (got.kind === 'found' && messages.has(messageNamedIn(got.object.body)))
+      await world.store.delete(key, { ifMatch: got.object.etag });
   });
 }
 

@@ -6,7 +6,8 @@ import { loadModel } from '../../src/ledger/load-model.ts';
 import { currentDesk } from '../../src/ledger/queue-names.ts';
 import { mergeQueues, openQueue, renameQueue, renamesAfter, retireQueue } from '../../src/ledger/queues.ts';
 import { recount } from '../../src/ledger/recount.ts';
-import { claim, desk, fold, keysOf, schema, standings, testWorld } from './fixture.ts';
+import { diffCounts } from '../../src/model/difference.ts';
+import { claim, countsNow, desk, fold, keysOf, schema, standings, testWorld } from './fixture.ts';
 
 type TestWorld = ReturnType<typeof testWorld>;
 
@@ -96,6 +97,20 @@ describe('a queue', () => {
       wrongRouteMinutes: 30,
     });
     expect((await totals(world, await deskFile(world))).sewers).toBe(0);
+  });
+
+  it('is split by opening another and confirming messages for it again; the rest stays', async () => {
+    const [world, never] = [await deskWorld(), testWorld(2)];
+    await openQueue(world, desk, schema, { queue: 'bursts', title: 'Bursts' });
+    const file = await deskFile(world);
+    const moved = [claim('m2', 'bursts', 60), claim('m4', 'bursts', 60)];
+    expect(await foldClaims(world, file, schema, moved)).toEqual([{ kind: 'folded' }, { kind: 'folded' }]);
+    expect(await totals(world, file)).toEqual({ billing: 1, leaks: 1, meters: 0, moving: 0, bursts: 2 });
+    // As if they had never been in the other half.
+    await foldClaims(never, file, schema, [claim('m1', 'billing'), claim('m3', 'leaks'), ...moved]);
+    const [split, fresh] = [await countsNow(world), await countsNow(never)];
+    expect(diffCounts(split, fresh, 10)).toEqual([]);
+    expect((await recount(world, file, schema)).differences).toEqual([]);
   });
 
   it('is not changed by a dry run, which tells how many messages would move', async () => {
