@@ -181,6 +181,9 @@ describe('compact and recount', () => {
     const found = await runCli('recount', ...at, store);
     expect(found.code).toBe(1);
     expect(found.out).toContain('the table cannot be read');
+    const dry = await runCli('recount', ...at, store, '--repair', '--dry-run', '--json');
+    expect([dry.code, dry.json().repair]).toEqual([1, 'none']);
+    expect((await recountOf()).fault).not.toBeNull();
     const repaired = await runCli('recount', ...at, store, '--repair', '--json');
     expect([repaired.code, repaired.json().repair]).toEqual([0, 'repaired']);
     expect(await recountOf()).toMatchObject({ isRight: true, messages: 9 });

@@ -44,6 +44,15 @@ describe('the command line', () => {
     const { out } = await runCli('queue', name, '--help');
     expect(out).toContain('--dry-run');
   });
+  it('has a dry run of every command that changes what was learned', async () => {
+    for (const name of ['compact', 'recount', 'erase', 'undo', 'restore'])
+      expect((await runCli(name, '--help')).out).toContain('--dry-run');
+  });
+  it('says how a queue is split, for which there is no command', async () => {
+    const { out } = await runCli('queue', '--help');
+    expect(out.replaceAll(/\s+/g, ' ')).toContain('open the new queue and confirm its messages again');
+    expect((await runCli('queue', 'split', 'leaks')).code).toBe(2);
+  });
   it('tells its version, and leaves --version of a command to that command', async () => {
     expect((await runCli('--version')).out.trim()).toMatch(/^\d+\.\d+\.\d+$/);
     const { code, err } = await runCli('restore', '--store', join(root, 'none'), '--version', '3');

@@ -4,7 +4,7 @@ import { type RecountResult, recount } from '../../ledger/recount.ts';
 import { fitTable } from '../../model/fit-table.ts';
 import { keys } from '../../store/keys.ts';
 import { columns, count, plural } from '../layout.ts';
-import { openSession, type StoreFlags, withStore } from '../store-session.ts';
+import { openSession, type StoreFlags, withDryRun, withStore } from '../store-session.ts';
 import { type Answer, answer, exitCodes, type Terminal } from '../terminal.ts';
 
 interface Flags extends StoreFlags {
@@ -12,7 +12,7 @@ interface Flags extends StoreFlags {
 }
 
 export function addRecount(program: Command, terminal: Terminal, end: (code: number) => void): void {
-  withStore(program.command('recount'))
+  withDryRun(withStore(program.command('recount')))
     .description('count every confirmed message again and compare with the table, cell by cell')
     .option(
       '--repair',
@@ -26,7 +26,7 @@ export function addRecount(program: Command, terminal: Terminal, end: (code: num
 async function runRecount(flags: Flags): Promise<Answer> {
   const { world, desk, extractor } = await openSession(flags.store);
   const result = await recount(world, desk, extractor.schema, {
-    repair: flags.repair === true,
+    repair: flags.repair === true && flags.dryRun !== true,
     fitModel: fitTable,
     reread: async (message) => {
       const found = await readMessage(world, keys.inbound + message, () => true);
