@@ -13,7 +13,7 @@ const into = resolve(
 );
 
 /** Lambda functions by name: dist/functions/<name>/index.mjs, the folder that the template names. */
-export const functions = ['route', 'confirm', 'compact', 'report', 'intake', 'backfill'];
+export const functions = ['route', 'confirm', 'compact', 'report', 'settle', 'intake', 'backfill'];
 
 const entries = {
   'cli/tallypost': 'src/cli/tallypost.ts',

@@ -252,6 +252,10 @@ export const bounds = {
   // The page for held messages (src/settle)
   /** A link is for one person to come in with, once; a working day later it is stale. */
   settleLinkMs: 24 * 3600 * 1000,
+  /** A link to the deployed page may lie in a mailbox over a weekend, not for longer. */
+  settleLinkHoursMax: 72,
+  /** Of the secret that signs links to the deployed page: 32 letters and digits are 190 bits. */
+  settleSecretCharsMin: 32,
   /** A person stays in for a working day. */
   settleSessionMs: 12 * 3600 * 1000,
   /** What was settled and could still be taken back is dropped for good when nothing follows. */
@@ -260,6 +264,10 @@ export const bounds = {
   settleBodyBytesMax: 8 * 1024,
   /** Messages listed on the page; whoever settles these sees the next ones. */
   settleListedMax: 200,
+  /** Marks of waiting messages looked at for one page, of which the first may be settled long since: two seconds of reads. */
+  settleMarksReadMax: 2_000,
+  /** Marks of used tokens taken away at a time, so that nobody waits for it. */
+  settleSweptMax: 200,
   /** Words marked in one message, and rows of evidence beside it: more would not be read. */
   settleMarksMax: 300,
   settleEvidenceMax: 8,

@@ -8,6 +8,7 @@ import { addErase } from './commands/erase.ts';
 import { addExplain } from './commands/explain.ts';
 import { addInit } from './commands/init.ts';
 import { addIntake } from './commands/intake.ts';
+import { addLink } from './commands/link.ts';
 import { addQueue } from './commands/queue.ts';
 import { addRecount } from './commands/recount.ts';
 import { addReplay } from './commands/replay.ts';
@@ -45,6 +46,7 @@ export async function runProgram(args: readonly string[], terminal: Terminal): P
     addCompact,
     addReport,
     addSettle,
+    addLink,
   ])
     add(program, terminal, end);
   for (const add of [addRecount, addErase, addUndo, addQueue, addRestore, addCost, addIntake, addDesk])

@@ -20,6 +20,8 @@ export interface HandlerDeps {
   readonly log: (line: LogLine) => void;
   /** Takes what was measured, any number of times an invocation; left out: nobody looks. */
   readonly measure?: (measurements: readonly Measurement[]) => void;
+  /** Messages left for a person are marked for the deployed page; left out: nobody looks there. */
+  readonly isMarkingWaiting?: boolean;
   /** What stands before every key of this desk in a bucket's events, without the slash; empty or left out: nothing. */
   readonly prefix?: string;
 }

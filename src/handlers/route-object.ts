@@ -5,6 +5,7 @@ import { createSipHash } from '../features/siphash.ts';
 import type { Message } from '../message/message.ts';
 import type { Posterior } from '../model/posterior.ts';
 import { posteriorOf } from '../model/posterior-of.ts';
+import { markWaiting } from '../settle/waiting-marks.ts';
 import { keys } from '../store/keys.ts';
 import type { EventObject } from './event-objects.ts';
 import type { HandlerDeps, LogLine } from './handler-deps.ts';
@@ -68,6 +69,8 @@ async function routeOnce(
     trace: traceIn(head.metadata) || trace,
   };
   const metadata = joinMetadata(head.metadata, metadataOf(decision, posterior, context), key);
+  const isForPerson = decision.kind === 'held' || metadata['tallypost-audit'] === 'yes';
+  if (deps.isMarkingWaiting === true && isForPerson) await markWaiting(world, key.slice(keys.inbound.length));
   const put = await world.store.replaceMetadata(key, metadata, { ifMatch: head.etag });
   if (put.kind === 'lost') return null;
   if (put.kind === 'missing') return { level: 'warn', event: 'message-missing' };

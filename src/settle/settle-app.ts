@@ -1,6 +1,7 @@
 import { bounds } from '../bounds.ts';
 import { TallypostError } from '../errors.ts';
 import { strictPolicy } from '../html/policy.ts';
+import { mapBounded } from '../ledger/pace.ts';
 import type { World } from '../ledger/world.ts';
 import type { Message } from '../message/message.ts';
 import { keys } from '../store/keys.ts';
@@ -19,7 +20,7 @@ import {
 } from './settle-pages.ts';
 import { settleScript } from './settle-script.ts';
 import { settleStyle } from './settle-style.ts';
-import { readTicket, signTicket, type TicketKey } from './ticket.ts';
+import { readTicket, signTicket, type Ticket, type TicketKey, usedMark } from './ticket.ts';
 import type { Waiting, WaitingList } from './waiting.ts';
 
 export interface SettleDeps {
@@ -57,32 +58,37 @@ export interface SettleReply {
  *  local server and a function behind a URL alike. */
 export type SettleApp = (request: SettleRequest) => Promise<SettleReply>;
 
-const cookieName = 'tallypost-settle';
+/** With Secure and the whole origin as its path, a cookie of this prefix can be set by no other host (RFC 6265bis, 4.1.3.2). */
+function cookieNameOf({ origin, base }: SettleDeps): string {
+  return origin.startsWith('https:') && base === '' ? '__Host-tallypost-settle' : 'tallypost-settle';
+}
 
 export function createSettleApp(deps: SettleDeps): SettleApp {
   return async (request) => {
     const by = personOf(deps, request);
-    const bench = await deps.openBench();
-    const frame: Frame = { base: deps.base, desk: bench.desk.name, by };
+    const stranger: Frame = { base: deps.base, desk: 'Tallypost', by: null };
     const route = `${request.method} ${request.path}`;
     if (request.method === 'POST' && !isOwnPost(deps, request)) {
       return problem(
-        frame,
+        stranger,
         403,
         'Not from this page',
         'The request came from another page, or does not say from where. Nothing was changed.',
       );
     }
-    if (route === 'GET /enter') return openDoor(deps, frame, request);
-    if (route === 'POST /enter') return enter(deps, frame, request);
+    if (route === 'GET /enter') return openDoor(deps, stranger, request);
+    if (route === 'POST /enter') return enter(deps, stranger, request);
+    // Nothing is read from the store for somebody who is not known.
     if (by === null) {
       return problem(
-        frame,
+        stranger,
         401,
         'No way in',
-        'Ask for a link: tallypost settle prints one, or whoever runs this desk can make one.',
+        'Ask for a link: tallypost settle or tallypost link prints one, or whoever runs this desk can make one.',
       );
     }
+    const bench = await deps.openBench();
+    const frame: Frame = { base: deps.base, desk: bench.desk.name, by };
     const visit = { deps, frame, bench, by, nowMs: deps.world.nowMs() };
     switch (route) {
       case 'GET /':
@@ -109,11 +115,11 @@ interface Visit {
   readonly nowMs: number;
 }
 
-function personOf({ ticketKey, world }: SettleDeps, { headers }: SettleRequest): string | null {
+function personOf(deps: SettleDeps, { headers }: SettleRequest): string | null {
   const pairs = (headers.cookie ?? '').split(';').map((pair) => pair.trim().split('='));
-  const value = pairs.find(([name]) => name === cookieName)?.[1];
+  const value = pairs.find(([name]) => name === cookieNameOf(deps))?.[1];
   if (value === undefined) return null;
-  const read = readTicket(ticketKey, 'session', value, world.nowMs());
+  const read = readTicket(deps.ticketKey, 'session', value, deps.world.nowMs());
   return read.kind === 'valid' ? read.ticket.by : null;
 }
 
@@ -125,12 +131,16 @@ function isOwnPost({ origin }: SettleDeps, { headers }: SettleRequest): boolean 
   return headers.origin === origin;
 }
 
-function openDoor({ ticketKey, world }: SettleDeps, frame: Frame, { query }: SettleRequest): SettleReply {
+async function openDoor(
+  { ticketKey, world, openBench }: SettleDeps,
+  stranger: Frame,
+  { query }: SettleRequest,
+): Promise<SettleReply> {
   const text = query.get('t') ?? '';
   const read = readTicket(ticketKey, 'enter', text, world.nowMs());
-  return read.kind === 'valid'
-    ? reply(200, doorPage(frame, text, read.ticket.by))
-    : refusedLink(frame, read.why);
+  if (read.kind === 'refused') return refusedLink(stranger, read.why);
+  const { desk } = await openBench();
+  return reply(200, doorPage({ ...stranger, desk: desk.name }, text, read.ticket.by));
 }
 
 async function enter(deps: SettleDeps, frame: Frame, request: SettleRequest): Promise<SettleReply> {
@@ -138,11 +148,9 @@ async function enter(deps: SettleDeps, frame: Frame, request: SettleRequest): Pr
   const nowMs = world.nowMs();
   const read = readTicket(ticketKey, 'enter', formOf(request).get('ticket') ?? '', nowMs);
   if (read.kind === 'refused') return refusedLink(frame, read.why);
-  const { by, about, untilMs } = read.ticket;
-  const mark = `${keys.settling}used/${untilMs.toString(36)}-${about}`;
-  const put = await world.store.put(mark, new Uint8Array(0), { ifNoneMatch: '*' });
-  if (put.kind === 'lost') return refusedLink(frame, 'used');
-  await sweepUsed(deps, nowMs);
+  const { by } = read.ticket;
+  if (!(await isFirstUse(deps, read.ticket))) return refusedLink(frame, 'used');
+  await sweepUsed(world, nowMs);
   const session = signTicket(ticketKey, {
     purpose: 'session',
     by,
@@ -151,20 +159,30 @@ async function enter(deps: SettleDeps, frame: Frame, request: SettleRequest): Pr
   });
   const secure = deps.origin.startsWith('https:') ? '; Secure' : '';
   const seconds = Math.floor(bounds.settleSessionMs / 1000);
-  const cookie = `${cookieName}=${session}; HttpOnly; SameSite=Strict; Path=${deps.base || '/'}; Max-Age=${seconds}${secure}`;
+  const cookie = `${cookieNameOf(deps)}=${session}; HttpOnly; SameSite=Strict; Path=${deps.base || '/'}; Max-Age=${seconds}${secure}`;
   return {
     ...goTo(`${deps.base}/next`),
     headers: { ...goTo(`${deps.base}/next`).headers, 'set-cookie': cookie },
   };
 }
 
-/** Marks of links that are stale by now need not be kept: their links are refused without them. */
-async function sweepUsed({ world: { store } }: SettleDeps, nowMs: number): Promise<void> {
-  const prefix = `${keys.settling}used/`;
-  for await (const { key } of store.list(prefix)) {
-    const untilMs = Number.parseInt(key.slice(prefix.length).split('-')[0] as string, 36);
-    if (untilMs < nowMs) await store.delete(key);
+/** Whether this ticket is used for the first time; it cannot be used again. */
+async function isFirstUse({ world }: SettleDeps, ticket: Ticket): Promise<boolean> {
+  const mark = `${usedPrefix}${usedMark(ticket)}`;
+  return (await world.store.put(mark, new Uint8Array(0), { ifNoneMatch: '*' })).kind === 'written';
+}
+
+const usedPrefix = `${keys.settling}used/`;
+
+/** Marks of tickets that are stale by now need not be kept: their tickets are refused without them. */
+export async function sweepUsed({ store }: World, nowMs: number): Promise<void> {
+  const stale: string[] = [];
+  for await (const { key } of store.list(usedPrefix)) {
+    const untilMs = Number.parseInt(key.slice(usedPrefix.length).split('-')[0] as string, 36);
+    if (untilMs < nowMs) stale.push(key);
+    if (stale.length >= bounds.settleSweptMax) break;
   }
+  await mapBounded(stale, (key) => store.delete(key));
 }
 
 function refusedLink(frame: Frame, why: 'altered' | 'expired' | 'used'): SettleReply {
@@ -191,13 +209,17 @@ async function showList(visit: Visit): Promise<SettleReply> {
       };
     }),
   );
-  return reply(200, listPage(frame, shown, all.length, await lastOf(visit), nowMs));
+  return reply(200, listPage(frame, shown, totalOf(visit, all), await lastOf(visit), nowMs));
 }
 
 /** What waits, without the one that this person has just settled. */
 async function waitingFor({ deps, by }: Visit): Promise<Waiting[]> {
   const held = await heldOf(deps.world.store, by);
   return (await deps.waiting.list()).filter(({ message }) => message !== held?.message);
+}
+
+function totalOf({ deps }: Visit, listed: readonly Waiting[]): number {
+  return listed.length + (deps.waiting.beyond?.() ?? 0);
 }
 
 async function goOn(visit: Visit, after: string | null): Promise<SettleReply> {
@@ -207,7 +229,7 @@ async function goOn(visit: Visit, after: string | null): Promise<SettleReply> {
 }
 
 async function showMessage(visit: Visit, id: string): Promise<SettleReply> {
-  const { deps, frame, bench, by, nowMs } = visit;
+  const { deps, frame, bench, nowMs } = visit;
   const all = await waitingFor(visit);
   const waiting = all.find(({ message }) => message === id);
   if (waiting === undefined)
@@ -215,12 +237,7 @@ async function showMessage(visit: Visit, id: string): Promise<SettleReply> {
   const message = await deps.readMessage(keys.inbound + id);
   if (message === null) return problem(frame, 404, 'It is gone', 'The message was deleted.');
   const titleOf = (queue: string) => titleIn(bench.desk, queue);
-  const token = signTicket(deps.ticketKey, {
-    purpose: 'act',
-    by,
-    untilMs: nowMs + bounds.settleSessionMs,
-    about: id,
-  });
+  const token = tokenFor(visit, `settle ${id}`);
   return reply(
     200,
     messagePage(frame, {
@@ -228,7 +245,7 @@ async function showMessage(visit: Visit, id: string): Promise<SettleReply> {
       whyWords: whyWords(waiting, titleOf),
       message,
       likelihood: weighMessage(bench, message),
-      total: all.length,
+      total: totalOf(visit, all),
       token,
       last: await lastOf(visit),
       nowMs,
@@ -237,7 +254,8 @@ async function showMessage(visit: Visit, id: string): Promise<SettleReply> {
   );
 }
 
-async function lastOf({ deps, bench, by, nowMs }: Visit): Promise<Last | null> {
+async function lastOf(visit: Visit): Promise<Last | null> {
+  const { deps, bench, by } = visit;
   const confirmation = await heldOf(deps.world.store, by);
   if (confirmation === null) return null;
   const message = await deps.readMessage(keys.inbound + confirmation.message);
@@ -246,19 +264,15 @@ async function lastOf({ deps, bench, by, nowMs }: Visit): Promise<Last | null> {
     title: titleIn(bench.desk, confirmation.queue),
     subject: messageTitle(message, 80),
     learned: message && whatItTeaches(bench, message, confirmation.queue, Date.parse(confirmation.at)),
-    token: signTicket(deps.ticketKey, {
-      purpose: 'act',
-      by,
-      untilMs: nowMs + bounds.settleSessionMs,
-      about: `undo ${confirmation.message}`,
-    }),
+    token: tokenFor(visit, `undo ${confirmation.message}`),
   };
 }
 
 async function settleMessage(visit: Visit, form: URLSearchParams): Promise<SettleReply> {
   const { deps, frame, bench, by, nowMs } = visit;
   const [message, queue] = [form.get('message') ?? '', form.get('queue') ?? ''];
-  if (!mayAct(visit, form, message)) return stalePage(frame);
+  const token = tokenIn(visit, form, `settle ${message}`);
+  if (token === null) return stalePage(frame);
   if (!bench.desk.queues.some(({ id }) => id === queue)) {
     return problem(frame, 400, 'No such queue', 'The queue was closed meanwhile. Nothing was changed.');
   }
@@ -266,6 +280,7 @@ async function settleMessage(visit: Visit, form: URLSearchParams): Promise<Settl
   const at = all.findIndex((each) => each.message === message);
   if (at < 0)
     return problem(frame, 409, 'Already settled', 'Somebody settled it meanwhile. Nothing was changed.');
+  if (!(await isFirstUse(deps, token))) return stalePage(frame);
   await holdSettlement(
     deps.world.store,
     { message, queue, by, at: new Date(nowMs).toISOString() },
@@ -279,9 +294,13 @@ async function settleMessage(visit: Visit, form: URLSearchParams): Promise<Settl
 async function undo(visit: Visit, form: URLSearchParams): Promise<SettleReply> {
   const { deps, frame, by } = visit;
   const message = form.get('message') ?? '';
-  if (!mayAct(visit, form, `undo ${message}`)) return stalePage(frame);
+  const token = tokenIn(visit, form, `undo ${message}`);
+  if (token === null) return stalePage(frame);
   const held = await heldOf(deps.world.store, by);
-  const taken = held?.message === message ? await takeBack(deps.world.store, by) : null;
+  const taken =
+    held?.message === message && (await isFirstUse(deps, token))
+      ? await takeBack(deps.world.store, by)
+      : null;
   if (taken === null)
     return problem(
       frame,
@@ -292,9 +311,17 @@ async function undo(visit: Visit, form: URLSearchParams): Promise<SettleReply> {
   return goTo(messageHref(frame, taken.message));
 }
 
-function mayAct({ deps, by, nowMs }: Visit, form: URLSearchParams, about: string): boolean {
+/** For one view of one message: lets this person do this with it, once. */
+function tokenFor({ deps, by, nowMs }: Visit, what: string): string {
+  const number = Math.floor(deps.world.random() * 2 ** 52).toString(36);
+  const untilMs = nowMs + bounds.settleSessionMs;
+  return signTicket(deps.ticketKey, { purpose: 'act', by, untilMs, about: `${number} ${what}` });
+}
+
+function tokenIn({ deps, by, nowMs }: Visit, form: URLSearchParams, what: string): Ticket | null {
   const read = readTicket(deps.ticketKey, 'act', form.get('token') ?? '', nowMs);
-  return read.kind === 'valid' && read.ticket.by === by && read.ticket.about === about;
+  if (read.kind === 'refused' || read.ticket.by !== by) return null;
+  return read.ticket.about.slice(read.ticket.about.indexOf(' ') + 1) === what ? read.ticket : null;
 }
 
 function stalePage(frame: Frame): SettleReply {
@@ -322,6 +349,7 @@ const headers: Readonly<Record<string, string>> = {
   'content-type': 'text/html; charset=utf-8',
   'content-security-policy': `${strictPolicy({ style: settleStyle, script: settleScript })}; frame-ancestors 'none'`,
   'cache-control': 'no-store',
+  // Not `no-referrer`: under it browsers send `Origin: null` with a form, which says no more where it comes from.
   'referrer-policy': 'same-origin',
   'x-content-type-options': 'nosniff',
   'cross-origin-opener-policy': 'same-origin',

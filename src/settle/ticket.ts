@@ -10,7 +10,7 @@ export interface Ticket {
   /** The person's name, as it will stand in confirmations. */
   readonly by: string;
   readonly untilMs: number;
-  /** For `enter`: used once. For `act`: the message that it lets settle, or `undo`. */
+  /** For `enter`: a number that makes it unique. For `act`: such a number, and what it lets do with which message. */
   readonly about: string;
 }
 
@@ -22,8 +22,15 @@ export type TicketKey = Uint8Array;
 
 const charsMax = 4096;
 
-export function ticketKeyOf(secret: Uint8Array): TicketKey {
-  return new Uint8Array(hkdfSync('sha256', secret, new Uint8Array(0), 'tallypost settle tickets 1', 32));
+/** `place`: the origin that tickets are for, so that a link to one desk's page opens no other, whatever secret they share. */
+export function ticketKeyOf(secret: Uint8Array, place = ''): TicketKey {
+  const info = `tallypost settle tickets 1 ${place}`.trimEnd();
+  return new Uint8Array(hkdfSync('sha256', secret, new Uint8Array(0), info, 32));
+}
+
+/** Under which a ticket is marked as used; its time stands first, so that stale marks are known by their names. */
+export function usedMark({ untilMs, about }: Pick<Ticket, 'untilMs' | 'about'>): string {
+  return `${untilMs.toString(36)}-${about.split(' ', 1)[0]}`;
 }
 
 /** `<base64url of JSON>.<base64url of its code>`; safe in a URL. */

@@ -18,6 +18,8 @@ export interface Waiting {
 export interface WaitingList {
   /** Oldest first. */
   list(): Promise<Waiting[]>;
+  /** How many the last list left out, some of which may be settled; without it: none. */
+  beyond?(): number;
 }
 
 /** The messages that wait, read from the store. What carries a decision does not change any more, and what is confirmed stays
@@ -57,7 +59,8 @@ export function createWaitingList(world: World): WaitingList {
   };
 }
 
-function waitingOf(
+/** What the head of a message says: whether a person must look at it, and why. */
+export function waitingOf(
   key: string,
   metadata: Readonly<Record<string, string>>,
   modifiedAtMs: number,

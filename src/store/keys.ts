@@ -19,6 +19,8 @@ export const keys = {
   reports: 'reports/',
   /** Of the page for held messages: what a person can still take back, and links that were used. */
   settling: 'settling/',
+  /** One mark for each message that the router left for a person, where the deployed page is in use: `waiting/<message>`. */
+  waiting: 'waiting/',
   /** Ids of webhooks taken, kept a day: longer than their timestamps hold. */
   webhookMarks: 'webhook-marks/',
 } as const;

@@ -70,6 +70,7 @@ describe('a bundle', () => {
     ['confirm', 1_800_000],
     ['compact', 1_800_000],
     ['report', 1_800_000],
+    ['settle', 1_800_000],
     ['backfill', 1_800_000],
     // Parses no mail.
     ['intake', 600_000],

@@ -6,6 +6,7 @@ import { readTicket, signTicket, ticketKeyOf } from '../../src/settle/ticket.ts'
 import { createWaitingList } from '../../src/settle/waiting.ts';
 import { keys } from '../../src/store/keys.ts';
 import { createMemoryStore } from '../../src/store/memory.ts';
+import type { Store } from '../../src/store/store.ts';
 import { playSmallDesk, type SmallDesk, smallTokenKey } from './small-desk.ts';
 
 const origin = 'http://127.0.0.1:4000';
@@ -158,6 +159,29 @@ describe('the page for held messages', () => {
     cookie = await comeIn(app, 'm.quill', nowMs);
   }, 120_000);
 
+  it('reads nothing from the store for whoever is not known', async () => {
+    const { world } = desk;
+    const blind = createSettleApp({
+      world: { ...world, store: {} as Store },
+      openBench: () => Promise.reject(new Error('opened')),
+      readMessage: () => Promise.reject(new Error('read')),
+      waiting: { list: () => Promise.reject(new Error('listed')) },
+      ticketKey: key,
+      origin,
+      base: '',
+      onDropped: async () => {},
+    });
+    const requests: [number, SettleRequest][] = [
+      [401, get('/')],
+      [401, get('/message?m=x', 'tallypost-settle=a.b')],
+      [401, post('/settle', { message: 'x', queue: 'billing', token: 'a.b' })],
+      [403, get('/enter?t=a.b')],
+      [403, post('/enter', { ticket: 'a.b' })],
+      [403, post('/settle', {}, cookie, { origin: 'https://elsewhere.example' })],
+    ];
+    for (const [status, request] of requests) expect((await blind(request)).status).toBe(status);
+  });
+
   it('lets nobody in without a link, and each link in once', async () => {
     expect((await app(get('/'))).status).toBe(401);
     const ticket = signTicket(key, { purpose: 'enter', by: 'x', untilMs: nowMs + 1, about: 'once' });
@@ -208,7 +232,7 @@ describe('the page for held messages', () => {
               purpose: 'act',
               by: 'other',
               untilMs: nowMs + hourMs,
-              about: first!.message,
+              about: `1 settle ${first!.message}`,
             }),
           },
           cookie,
@@ -227,14 +251,12 @@ describe('the page for held messages', () => {
   it('settles, shows what that teaches, takes it back, settles again, and drops it with the next one', async () => {
     const [first, second, third] = await createWaitingList(desk.world).list();
     const open = (message: string) => app(get(`/message?m=${encodeURIComponent(message)}`, cookie));
-    const settle = async (message: string, queue: string) =>
-      app(
-        post(
-          '/settle',
-          { message, queue, token: field((await open(message)).body, '/settle', 'token') },
-          cookie,
-        ),
-      );
+    const sent: SettleRequest[] = [];
+    const settle = async (message: string, queue: string) => {
+      const token = field((await open(message)).body, '/settle', 'token');
+      sent.push(post('/settle', { message, queue, token }, cookie));
+      return app(sent.at(-1) as SettleRequest);
+    };
     const done = await settle(first!.message, 'complaints');
     expect(done.headers.location).toBe(`/message?m=${encodeURIComponent(second!.message)}`);
     const next = await open(second!.message);
@@ -252,6 +274,10 @@ describe('the page for held messages', () => {
     expect((await app(post('/undo', undoForm, cookie))).status).toBe(409);
     expect((await open(first!.message)).status).toBe(200);
     expect(dropped).toEqual([]);
+
+    // The very request that settled it, sent again now that it waits again: its token is used up.
+    expect((await app(sent[0] as SettleRequest)).status).toBe(403);
+    expect(await heldOf(desk.store, 'm.quill')).toBeNull();
 
     const again = await open(first!.message);
     const replayed = {

@@ -4,7 +4,10 @@ import { beforeAll, describe, expect, it } from 'vitest';
 import { createBackfillHandler } from '../../src/handlers/backfill.ts';
 import { createIntakeHandler } from '../../src/handlers/intake.ts';
 import { createReportHandler } from '../../src/handlers/report.ts';
+import { createRouteHandler } from '../../src/handlers/route.ts';
+import { createSettleHandler, type SettleUrlResult } from '../../src/handlers/settle.ts';
 import { placeOrder } from '../../src/ledger/orders.ts';
+import { linkTo } from '../../src/settle/link.ts';
 import { createS3Store } from '../../src/store/s3.ts';
 import { exampleDesk } from '../features/example.ts';
 import { openStation, type Station, teach } from '../handlers/station.ts';
@@ -12,7 +15,7 @@ import { queues as intakeQueues, settings as intakeSettings } from '../intake/de
 import { actionsOfCommand, createRecordingClient, type Use } from './recording-s3.ts';
 import { resources, statementsOf } from './template.ts';
 
-const functions = ['Route', 'Confirm', 'Compact', 'Report', 'Intake', 'Backfill'] as const;
+const functions = ['Route', 'Confirm', 'Compact', 'Report', 'Settle', 'Intake', 'Backfill'] as const;
 type Role = (typeof functions)[number];
 
 const uses: Record<Role, Map<string, Use>> = {
@@ -20,6 +23,7 @@ const uses: Record<Role, Map<string, Use>> = {
   Confirm: new Map(),
   Compact: new Map(),
   Report: new Map(),
+  Settle: new Map(),
   Intake: new Map(),
   Backfill: new Map(),
 };
@@ -57,6 +61,64 @@ async function openRecorded(desk: unknown): Promise<Station> {
     confirm: (event: unknown) => as('Confirm', () => confirm(event)),
     compact: (event: unknown) => as('Compact', () => compact(event)),
   });
+}
+
+/** A link, a list, messages settled and taken back, marks of messages that do not wait any more, and the schedule. */
+async function playSettling(bare: Station, station: Station): Promise<void> {
+  const secret = Buffer.from('a secret of more than 32 characters');
+  const requestContext = { domainName: 'page.example', http: { method: 'GET' } };
+  const undescribed = createSettleHandler(bare.deps, secret);
+  const route = createRouteHandler({ ...station.deps, isMarkingWaiting: true });
+  for (const name of ['mail/w1', 'mail/w2', 'mail/w3', 'mail/w4'])
+    await as('Route', async () => station.feed(route, await station.putMail(name, 'Zebra', `zebra ${name}`)));
+  await station.store.put('waiting/mail/gone', new Uint8Array(1));
+  await station.confirmAs('mail/w4', 'billing');
+  const handle = createSettleHandler(station.deps, secret);
+  let cookie = '';
+  const ask = async (method: string, path: string, form?: Record<string, string>) => {
+    const [rawPath, rawQueryString = ''] = path.split('?');
+    const event = {
+      rawPath,
+      rawQueryString,
+      headers: { origin: 'https://page.example' },
+      cookies: [cookie],
+      ...(form === undefined ? {} : { body: new URLSearchParams(form).toString() }),
+      requestContext: { domainName: 'page.example', http: { method } },
+    };
+    return as('Settle', async () => (await handle(event)) as SettleUrlResult);
+  };
+  const link = new URL(
+    linkTo(secret, {
+      url: new URL('https://page.example/'),
+      by: 'jo',
+      untilMs: station.world.nowMs() + 1000,
+      number: 'n1',
+    }),
+  );
+  const ticket = link.searchParams.get('t') as string;
+  // Cold functions of a desk that learned nothing, and of one without a file.
+  const blank = createSettleHandler((await openRecorded(exampleDesk)).deps, secret);
+  await as('Settle', () => blank({ rawPath: '/enter', rawQueryString: `t=${ticket}`, requestContext }));
+  await as('Settle', () =>
+    undescribed({ rawPath: '/enter', rawQueryString: `t=${ticket}`, requestContext }),
+  ).catch(() => {});
+  expect((await ask('GET', `/enter?t=${ticket}`)).statusCode).toBe(200);
+  cookie = (await ask('POST', '/enter', { ticket })).cookies[0]!.split(';')[0] as string;
+  const tokenOf = async (message: string, action: string) => {
+    const { body } = await ask('GET', `/message?m=${encodeURIComponent(message)}`);
+    return /name="token" value="([^"]*)"/.exec(body.slice(body.indexOf(`action="${action}"`)))?.[1] ?? '';
+  };
+  const settle = async (message: string) =>
+    ask('POST', '/settle', { message, queue: 'billing', token: await tokenOf(message, '/settle') });
+  expect((await ask('GET', '/')).body).toContain('3 messages wait');
+  expect((await settle('mail/w1')).statusCode).toBe(303);
+  const undone = { message: 'mail/w1', token: await tokenOf('mail/w2', '/undo') };
+  expect((await ask('POST', '/undo', undone)).statusCode).toBe(303);
+  expect((await settle('mail/w1')).statusCode).toBe(303);
+  expect((await settle('mail/w2')).statusCode).toBe(303);
+  await as('Settle', () => handle({}));
+  station.pass(24 * 3_600_000);
+  await as('Settle', () => handle({}));
 }
 
 /** Plays everything that each function does, also when things are missing. */
@@ -123,6 +185,8 @@ beforeAll(async () => {
   await report(await openRecorded(exampleDesk));
   await station.confirmAs('lesson-0', 'moving');
   await report(station);
+
+  await playSettling(bare, station);
 
   const secret = Buffer.from('a secret of twenty-four.').toString('base64');
   const intake = createIntakeHandler({

@@ -1,5 +1,6 @@
 // biome-ignore-all lint/suspicious/noTemplateCurlyInString: CloudFormation's Fn::Sub is written like this
 import { describe, expect, it } from 'vitest';
+import { bounds } from '../../src/bounds.ts';
 import { machineOfTemplate } from '../../src/cost/load.ts';
 import { metrics } from '../../src/metrics/measurement.ts';
 import { keys } from '../../src/store/keys.ts';
@@ -149,11 +150,19 @@ describe('the bucket', () => {
       .filter((rule: Node) => rule.ExpirationInDays !== undefined)
       .map((rule: Node) => rule.Prefix);
     expect(expiring.sort()).toEqual(
-      [keys.refusedConfirmations, keys.inbound, keys.reports, keys.webhookMarks].sort(),
+      [
+        keys.refusedConfirmations,
+        keys.inbound,
+        keys.reports,
+        keys.settling,
+        keys.waiting,
+        keys.webhookMarks,
+      ].sort(),
     );
     const ofDays = (prefix: string) => rules.find((rule: Node) => rule.Prefix === prefix).ExpirationInDays;
-    // A report holds words of messages: it may not outlive them.
-    expect(ofDays(keys.reports)).toEqual(ofDays(keys.inbound));
+    // A report holds words of messages, the others name them: they may not outlive them.
+    for (const prefix of [keys.reports, keys.settling, keys.waiting])
+      expect(ofDays(prefix)).toEqual(ofDays(keys.inbound));
     expect(rules.every((rule: Node) => rule.Status === 'Enabled')).toBe(true);
     const superseded = rules.find((rule: Node) => rule.NoncurrentVersionExpiration !== undefined);
     expect(superseded.Prefix).toBeUndefined();
@@ -189,9 +198,10 @@ describe('secrets', () => {
     for (const name of Object.keys(template.Parameters))
       expect(name).not.toMatch(/Key$|Secret$|Password|Token$/);
     const found = [...strings(template)].filter(([path]) =>
-      /TALLYPOST_(TOKEN_KEY|WEBHOOK_SECRETS)/.test(path),
+      /TALLYPOST_(TOKEN_KEY|WEBHOOK_SECRETS|SETTLE_SECRET)/.test(path),
     );
     expect(found.map(([, text]) => text).sort()).toEqual([
+      '{{resolve:secretsmanager:${SettleSecret}:SecretString}}',
       '{{resolve:secretsmanager:${TokenKey}:SecretString}}',
       '{{resolve:secretsmanager:${WebhookSecret}:SecretString}}',
     ]);
@@ -229,15 +239,78 @@ describe('policies', () => {
       }
   });
 
-  it('of the open address let anyone call it, by its URL only', () => {
-    expect(resources.IntakeFunction.Properties.FunctionUrlConfig.AuthType).toBe('NONE');
-    expect(resources.IntakeInvokePermission.Properties).toMatchObject({
+  it.each(['Intake', 'Settle'])('of the open address of %s let anyone call it, by its URL only', (name) => {
+    expect(resources[`${name}Function`].Properties.FunctionUrlConfig).toEqual({ AuthType: 'NONE' });
+    expect(resources[`${name}InvokePermission`].Properties).toEqual({
+      FunctionName: { Ref: `${name}Function` },
       Action: 'lambda:InvokeFunction',
       Principal: '*',
       InvokedViaFunctionUrl: true,
     });
-    expect(ofType('AWS::Lambda::Permission')).toHaveLength(1);
-    expect(functions.filter(([, properties]) => properties.FunctionUrlConfig !== undefined)).toHaveLength(1);
+  });
+
+  it('open no other address', () => {
+    expect(ofType('AWS::Lambda::Permission')).toHaveLength(2);
+    expect(functions.filter(([, properties]) => properties.FunctionUrlConfig !== undefined)).toHaveLength(2);
+  });
+});
+
+describe('the page for held messages', () => {
+  const ofPage = Object.entries(resources).filter(([name]) => name.startsWith('Settle'));
+
+  it('is there only when somebody asks for it, with all that belongs to it', () => {
+    expect(template.Parameters.SettlePage.Default).toBe('no');
+    expect(ofPage.map(([name, { Condition }]) => [name, Condition])).toEqual(
+      ['Secret', 'Function', 'InvokePermission', 'Logs', 'Role', 'ScheduleRole'].map((what) => [
+        `Settle${what}`,
+        'HasSettlePage',
+      ]),
+    );
+    for (const [name, output] of Object.entries(template.Outputs as Record<string, Node>))
+      if (name.startsWith('Settle')) expect(output.Condition).toBe('HasSettlePage');
+  });
+
+  it('is named by nothing that is there without it', () => {
+    const names = new Set(ofPage.map(([name]) => name));
+    const others = Object.entries(resources).filter(([name]) => !names.has(name));
+    const found = others.flatMap(([name, resource]) =>
+      [...strings(resource)]
+        .filter(([path, text]) =>
+          path.endsWith('Fn::Sub')
+            ? [...names].some((one) => text.includes(`\${${one}`))
+            : /(\/Ref|Fn::GetAtt\/0)$/.test(path) && names.has(text),
+        )
+        .map(([path]) => `${name}${path}`),
+    );
+    // Errors of its function, when there is one.
+    expect(found).toEqual([expect.stringMatching(/^ErrorsAlarm.*\/Fn::If\/1\//)]);
+  });
+
+  it('makes the router mark what waits, and only then', () => {
+    expect(resources.RouteFunction.Properties.Environment.Variables.TALLYPOST_MARK_WAITING).toEqual({
+      Ref: 'SettlePage',
+    });
+    expect(template.Parameters.SettlePage.AllowedValues).toEqual(['yes', 'no']);
+  });
+
+  it('ends what was left lying sooner than an hour, by a schedule that starts nothing else', () => {
+    const { Type, Properties } = resources.SettleFunction.Properties.Events.Finish;
+    expect(Type).toBe('ScheduleV2');
+    expect(Properties.ScheduleExpression).toBe('rate(15 minutes)');
+    expect(refOf(Properties.RoleArn)).toBe('SettleScheduleRole');
+    const [{ PolicyDocument }] = resources.SettleScheduleRole.Properties.Policies;
+    expect(PolicyDocument.Statement).toEqual([
+      {
+        Effect: 'Allow',
+        Action: 'lambda:InvokeFunction',
+        Resource: { 'Fn::GetAtt': ['SettleFunction', 'Arn'] },
+      },
+    ]);
+  });
+
+  it('has a secret that its code takes', () => {
+    const { PasswordLength } = resources.SettleSecret.Properties.GenerateSecretString;
+    expect(PasswordLength).toBeGreaterThanOrEqual(bounds.settleSecretCharsMin);
   });
 });
 
@@ -268,7 +341,9 @@ describe('the schedules', () => {
     expect(invoke.Resource.map(refOf).sort()).toEqual(
       functions
         .filter(([, { Events = {} }]) =>
-          Object.values(Events as Record<string, Node>).some(({ Type }) => Type === 'ScheduleV2'),
+          Object.values(Events as Record<string, Node>).some(
+            ({ Type, Properties }) => Type === 'ScheduleV2' && refOf(Properties.RoleArn) === 'ScheduleRole',
+          ),
         )
         .map(([name]) => name)
         .sort(),
@@ -322,9 +397,9 @@ describe('alarms', () => {
     const names = alarms.map(([, properties]) => properties.Dimensions?.[0].Value['Fn::GetAtt']?.[0]);
     for (const queue of [...queues.keys()].filter((name) => name.endsWith('DeadLetters')))
       expect(names).toContain(queue);
-    const errors = resources.ErrorsAlarm.Properties.Metrics.slice(1).map((one: Node) =>
-      refOf(one.MetricStat.Metric.Dimensions[0].Value),
-    );
+    const errors = resources.ErrorsAlarm.Properties.Metrics.slice(1)
+      .map((one: Node) => one['Fn::If']?.[1] ?? one)
+      .map((one: Node) => refOf(one.MetricStat.Metric.Dimensions[0].Value));
     expect(errors.sort()).toEqual(functions.map(([name]) => name).sort());
   });
 
@@ -424,7 +499,7 @@ describe('the file', () => {
         return [...text.matchAll(/\$\{([A-Za-z]+)/g)].map(([, name]) => name as string);
       return [];
     });
-    const made = new Set(['IntakeFunctionUrl']); // By the transform.
+    const made = new Set(['IntakeFunctionUrl', 'SettleFunctionUrl']); // By the transform.
     expect(
       [...new Set(named)].filter((name) => !known.has(name) && !made.has(name) && !name.startsWith('AWS')),
     ).toEqual([]);

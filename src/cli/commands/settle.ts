@@ -1,10 +1,9 @@
 import { userInfo } from 'node:os';
 import { type Command, InvalidArgumentError } from 'commander';
-import { createExtractor } from '../../features/extractor.ts';
 import { createConfirmHandler } from '../../handlers/confirm.ts';
 import { queueEvent } from '../../handlers/local-runner.ts';
 import { readMessage } from '../../handlers/read-message.ts';
-import { type LoadedModel, loadModel } from '../../ledger/load-model.ts';
+import { createBenchOpener } from '../../handlers/settle-bench.ts';
 import { type SettleServer, startSettleServer } from '../../settle/settle-server.ts';
 import { ticketKeyOf } from '../../settle/ticket.ts';
 import { createWaitingList } from '../../settle/waiting.ts';
@@ -52,16 +51,10 @@ export async function serveSettling(
 ): Promise<{ readonly server: SettleServer; settled(): number }> {
   const confirm = createConfirmHandler(deps);
   let settled = 0;
-  let model: LoadedModel | null = null;
   const server = await startSettleServer(
     {
       world,
-      async openBench() {
-        const file = await deps.loadDesk();
-        const extractor = createExtractor(file, deps.tokenKey);
-        model = await loadModel(world, file, extractor.schema, model);
-        return { desk: model.desk, extractor, model };
-      },
+      openBench: createBenchOpener(deps),
       readMessage: async (key) => (await readMessage(world, key, () => true))?.message ?? null,
       waiting: createWaitingList(world),
       ticketKey: ticketKeyOf(deps.tokenKey),

@@ -10,7 +10,8 @@ import { createDeskLoader } from '../load-desk.ts';
 import { loadTokenKey } from '../load-token-key.ts';
 
 /** A handler made from the function's environment on its first invocation, and kept for the next ones with its client, desk
- *  and model. Settings: TALLYPOST_BUCKET; TALLYPOST_PREFIX and TALLYPOST_TOKEN_KEY may be left out. */
+ *  and model. Settings: TALLYPOST_BUCKET; TALLYPOST_PREFIX and TALLYPOST_TOKEN_KEY may be left out;
+ *  TALLYPOST_MARK_WAITING says `yes` where the page for held messages is deployed. */
 export function handlerFrom<R>(
   create: (deps: HandlerDeps) => (event: unknown) => Promise<R>,
 ): (event: unknown) => Promise<R> {
@@ -32,7 +33,15 @@ export function handlerFrom<R>(
     // Not kept when it fails: a key that is put there later is found by the next invocation.
     if (handler === null) {
       const tokenKey = await loadTokenKey(store, process.env.TALLYPOST_TOKEN_KEY, null);
-      handler = create({ world, loadDesk, tokenKey, log: writeLine, measure, prefix });
+      handler = create({
+        world,
+        loadDesk,
+        tokenKey,
+        log: writeLine,
+        measure,
+        prefix,
+        isMarkingWaiting: process.env.TALLYPOST_MARK_WAITING === 'yes',
+      });
     }
     try {
       return await handler(event);
