@@ -1,9 +1,10 @@
 import { bounds } from '../bounds.ts';
 import type { Desk } from '../desk/desk.ts';
 import type { Schema } from '../features/schema.ts';
-import type { Counts } from '../model/counts.ts';
+import type { CountsView } from '../model/counts.ts';
 import { findDrift } from '../model/drift.ts';
 import { fitFindings } from '../model/fit-table.ts';
+import { cellCount } from '../model/rows.ts';
 import { readManifest } from './commit.ts';
 import { deleteUnnamed } from './deletion.ts';
 import { finishOrders } from './finish-orders.ts';
@@ -121,11 +122,11 @@ const nothing = {
   drift: [],
 };
 
-function measure(counts: Counts): Pick<Made, 'messages' | 'columns' | 'cells'> {
+function measure(counts: CountsView): Pick<Made, 'messages' | 'columns' | 'cells'> {
   return {
     messages: counts.messages.reduce((sum, c) => sum + c, 0),
     columns: counts.columns.length,
-    cells: counts.regions.reduce((sum, r) => sum + r.column.length, 0),
+    cells: cellCount(counts),
   };
 }
 

@@ -1,12 +1,13 @@
 import { bounds } from '../bounds.ts';
 import { TallypostError } from '../errors.ts';
 import type { Schema } from '../features/schema.ts';
-import { decodeCounts } from '../model/codec-counts.ts';
 import { decodeEntries } from '../model/codec-entries.ts';
 import { decodeTable } from '../model/codec-table.ts';
-import type { Counts, Entry } from '../model/counts.ts';
-import { emptyCounts, foldEntries } from '../model/fold.ts';
+import type { EncodedCounts, Entry } from '../model/counts.ts';
+import { openCounts } from '../model/encoded.ts';
 import { emptyTable, type ServedTable } from '../model/served-table.ts';
+import { sumCounts } from '../model/sum-counts.ts';
+import { createTally } from '../model/tally.ts';
 import { keys } from '../store/keys.ts';
 import { missing } from './absorbed.ts';
 import type { Manifest } from './manifest.ts';
@@ -20,20 +21,31 @@ export async function readTable(world: World, schema: Schema, id: string | null)
   return decodeTable(await readBytes(world, keys.tables + id), schema, keys.tables + id);
 }
 
-export async function readBase(world: World, schema: Schema, id: string | null): Promise<Counts> {
-  if (id === null) return emptyCounts(schema);
-  return decodeCounts(await readBytes(world, keys.bases + id), schema, keys.bases + id);
+export async function readBase(world: World, schema: Schema, id: string | null): Promise<EncodedCounts> {
+  if (id === null) return sumCounts(schema, [], 'no base');
+  return openCounts(await readBytes(world, keys.bases + id), schema, keys.bases + id);
 }
 
 export async function readSegment(world: World, schema: Schema, id: string): Promise<Entry[]> {
   return decodeEntries(await readBytes(world, keys.segments + id), schema, keys.segments + id);
 }
 
-/** The counts as a manifest has them: its base with all its segments. Exact, all epochs, the names that were confirmed. */
-export async function readCounts(world: World, schema: Schema, manifest: Manifest): Promise<Counts> {
-  const base = await readBase(world, schema, manifest.base);
-  const segments = await mapBounded(manifest.segments, ({ id }) => readSegment(world, schema, id));
-  return foldEntries(base, segments.flat());
+/** The counts as a manifest has them: its base with all its segments. Exact, all epochs, the names that were confirmed. Takes the
+ *  room of two bases, however many the segments: they are read some at a time. */
+export async function readCounts(
+  world: World,
+  schema: Schema,
+  { base, segments }: Pick<Manifest, 'base' | 'segments'>,
+): Promise<EncodedCounts> {
+  const counts = await readBase(world, schema, base);
+  if (segments.length === 0) return counts;
+  const tally = createTally(schema);
+  for (let at = 0; at < segments.length; at += bounds.requestsAtOnceMax) {
+    const some = segments.slice(at, at + bounds.requestsAtOnceMax);
+    const read = await mapBounded(some, ({ id }) => readSegment(world, schema, id));
+    for (const entries of read) tally.add(entries);
+  }
+  return tally.sum(counts, `base ${base ?? 'none'} with ${segments.length} segments`);
 }
 
 async function readBytes(world: World, key: string): Promise<Uint8Array> {

@@ -1,12 +1,10 @@
 import type { Desk } from '../desk/desk.ts';
 import type { Schema } from '../features/schema.ts';
 import { checkCounts } from '../model/check-counts.ts';
-import { encodeCounts } from '../model/codec-counts.ts';
 import { encodeTable } from '../model/codec-table.ts';
-import type { Counts } from '../model/counts.ts';
+import type { CountsView, EncodedCounts } from '../model/counts.ts';
 import { defaultFit, type Fit } from '../model/fit.ts';
 import type { FitFindings, fitFindings } from '../model/fit-table.ts';
-import { renameQueues } from '../model/fold.ts';
 import { type ServedTable, serve } from '../model/served-table.ts';
 import { keys } from '../store/keys.ts';
 import { encodeAbsorbed, readAbsorbed } from './absorbed.ts';
@@ -25,8 +23,8 @@ export type FitModel = (...args: Parameters<typeof fitFindings>) => Fit | FitFin
 /** A table, and what was found on the way. */
 export interface MadeTable {
   readonly table: ServedTable;
-  /** By today's names of queues; exact, all epochs. */
-  readonly byQueue: Counts;
+  /** Exact, all epochs, columns by today's names of queues: those of merged queues stand side by side. */
+  readonly byQueue: CountsView;
   readonly contradictions: readonly ContradictedMessage[];
 }
 
@@ -66,13 +64,13 @@ export async function rebuild(
   desk: Desk,
   schema: Schema,
   from: Manifest,
-  counts: Counts,
+  counts: EncodedCounts,
   options: RebuildOptions,
 ): Promise<Rebuilt> {
   const { id } = options;
   checkCounts(counts, keys.bases + id);
   const madeTable = await makeTable(world, desk, schema, from, counts, options);
-  const [base, served] = [encodeCounts(counts), encodeTable(madeTable.table)];
+  const [base, served] = [counts.bytes, encodeTable(madeTable.table)];
   const absorbed = new Set([
     ...(await readAbsorbed(world, from.absorbed)),
     ...from.segments.map((s) => s.id),
@@ -123,11 +121,11 @@ export async function makeTable(
   desk: Desk,
   schema: Schema,
   from: Manifest,
-  counts: Counts,
+  counts: CountsView,
   { renames, fitModel }: Pick<RebuildOptions, 'renames' | 'fitModel'>,
 ): Promise<MadeTable> {
-  const names = new Map(counts.columns.map(({ queue }) => [queue, currentName(renames, queue)]));
-  const byQueue = renameQueues(counts, names);
+  const columns = counts.columns.map(({ queue, epoch }) => ({ queue: currentName(renames, queue), epoch }));
+  const byQueue: CountsView = { ...counts, columns };
   const { halfLifeDays } = desk;
   const last = renamedFit(await lastFit(world, schema, from), renames);
   if (fitModel === null)

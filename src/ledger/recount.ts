@@ -3,9 +3,9 @@ import type { Desk } from '../desk/desk.ts';
 import { type Fault, TallypostError } from '../errors.ts';
 import type { Features, Schema } from '../features/schema.ts';
 import { decodeFeatures, encodeFeatures } from '../model/codec-entries.ts';
-import type { CellDifference, Counts, Entry } from '../model/counts.ts';
+import type { CellDifference, EncodedCounts, Entry } from '../model/counts.ts';
 import { diffCounts } from '../model/difference.ts';
-import { emptyCounts, foldEntries, mergeCounts } from '../model/fold.ts';
+import { createTally } from '../model/tally.ts';
 import { createAbsorbedReader, type HasAbsorbed } from './absorbed.ts';
 import { readManifest } from './commit.ts';
 import { columnAsOf, type History, isTombstone, type Stored } from './history.ts';
@@ -74,7 +74,7 @@ async function recountUndisturbed(
     const isLastAttempt = attempt + 1 >= bounds.recountAttemptsMax;
     if ((isGone || isDisturbed) && !isLastAttempt) continue;
     const max = options.differencesMax ?? bounds.faultsListedMax;
-    const differences = table ? diffCounts(table, counts, max) : [];
+    const differences = table && !hasSameBytes(table, counts) ? diffCounts(table, counts, max) : [];
     const found = { version: manifest.version, messages, differences, fault, unread };
     const isRight = fault === null && differences.length === 0;
     if (!options.repair) return { ...found, repair: 'none' };
@@ -97,6 +97,11 @@ async function recountUndisturbed(
   }
 }
 
+/** Equal counts have equal bytes. */
+function hasSameBytes(a: EncodedCounts, b: EncodedCounts): boolean {
+  return Buffer.compare(a.bytes, b.bytes) === 0;
+}
+
 type Reread = NonNullable<RecountOptions['reread']>;
 
 /** What the histories say of the counts at `manifest`. `reread`: gives features to those that have none of this schema. */
@@ -105,10 +110,9 @@ async function countHistories(
   schema: Schema,
   manifest: Manifest,
   reread: Reread | null,
-): Promise<{ counts: Counts; messages: number; unread: number }> {
+): Promise<{ counts: EncodedCounts; messages: number; unread: number }> {
   const hasAbsorbed = await createAbsorbedReader(world)(manifest);
-  let counts = emptyCounts(schema);
-  let pending = emptyCounts(schema);
+  const tally = createTally(schema);
   let [messages, unread] = [0, 0];
   let chunk: string[] = [];
   const add = async () => {
@@ -122,24 +126,15 @@ async function countHistories(
     });
     const standing = entries.filter((e) => e !== null);
     messages += standing.length;
-    pending = foldEntries(pending, standing);
+    tally.add(standing);
     chunk = [];
-    // Merging costs the size of the sum: let the part grow before it is added.
-    if (sizeOf(pending) * 4 >= sizeOf(counts)) {
-      counts = mergeCounts(counts, pending);
-      pending = emptyCounts(schema);
-    }
   };
   for await (const message of listMessages(world)) {
     chunk.push(message);
     if (chunk.length >= bounds.recountChunkMax) await add();
   }
   await add();
-  return { counts: mergeCounts(counts, pending), messages, unread };
-}
-
-function sizeOf(counts: Counts): number {
-  return counts.regions.reduce((sum, r) => sum + r.column.length, 1);
+  return { counts: tally.sum(null, 'recount'), messages, unread };
 }
 
 function entryOf(
@@ -159,7 +154,7 @@ async function readTableCounts(
   world: World,
   schema: Schema,
   manifest: Manifest,
-): Promise<{ table: Counts | null; fault: Fault | null }> {
+): Promise<{ table: EncodedCounts | null; fault: Fault | null }> {
   try {
     return { table: await readCounts(world, schema, manifest), fault: null };
   } catch (error) {

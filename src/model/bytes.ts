@@ -3,8 +3,22 @@ import { TallypostError } from '../errors.ts';
 
 /** Grows as it is written to. Integers are unsigned LEB128: seven bits a byte, least first, top bit set on all but the last. */
 export class ByteWriter {
-  #bytes = new Uint8Array(1024);
+  #bytes: Uint8Array;
   #length = 0;
+
+  /** `capacity` bytes are set aside; the system gives room only to those that are written. */
+  constructor(capacity = 1024) {
+    this.#bytes = new Uint8Array(capacity);
+  }
+
+  get length(): number {
+    return this.#length;
+  }
+
+  /** Starts anew in the same room. */
+  clear(): void {
+    this.#length = 0;
+  }
 
   byte(value: number): void {
     if (this.#length === this.#bytes.length) this.#grow(1);
@@ -110,6 +124,15 @@ export class ByteReader {
     return this.#bytes.subarray(this.#at - length, this.#at);
   }
 
+  /** Where it stands. */
+  get at(): number {
+    return this.#at;
+  }
+
+  moveTo(at: number): void {
+    this.#at = at;
+  }
+
   /** Nothing may be left over. */
   end(): void {
     if (this.#at !== this.#bytes.length)
@@ -141,12 +164,28 @@ const tailBytes = 4;
  *  CRC-32 (IEEE 802.3) finds every burst of up to 32 bits, and other damage but for one case in 2^32. It guards against
  *  accidents; whoever may write to the store may also write a valid table. */
 export function seal(kind: SealedKind, schemaId: string, payload: Uint8Array): Uint8Array {
-  const sealed = new Uint8Array(headBytes + payload.length + tailBytes);
-  const view = new DataView(sealed.buffer);
+  const out = new ByteWriter(headBytes + payload.length + tailBytes);
+  out.raw(new Uint8Array(headBytes));
+  out.raw(payload);
+  return sealWritten(kind, schemaId, out);
+}
+
+/** A writer whose payload is sealed where it stands, without a copy: see `sealWritten`. */
+export function createSealedWriter(capacity: number): ByteWriter {
+  const out = new ByteWriter(headBytes + capacity + tailBytes);
+  out.raw(new Uint8Array(headBytes));
+  return out;
+}
+
+/** Seals what was written behind the head of a `createSealedWriter`. */
+export function sealWritten(kind: SealedKind, schemaId: string, out: ByteWriter): Uint8Array {
+  const payloadBytes = out.length - headBytes;
+  out.raw(new Uint8Array(tailBytes));
+  const sealed = out.written();
+  const view = new DataView(sealed.buffer, sealed.byteOffset, sealed.byteLength);
   sealed.set([...magic, kinds[kind], layoutVersion]);
-  view.setUint32(4, payload.length, true);
+  view.setUint32(4, payloadBytes, true);
   sealed.set(Buffer.from(schemaId, 'hex'), 8);
-  sealed.set(payload, headBytes);
   view.setUint32(sealed.length - tailBytes, crc32(sealed.subarray(0, -tailBytes)), true);
   return sealed;
 }

@@ -1,13 +1,14 @@
 import { TallypostError } from '../errors.ts';
 import { tokenHex } from '../features/schema.ts';
-import type { Counts, RegionCounts } from './counts.ts';
+import type { Counts, CountsView, EncodedRegion, RegionCounts } from './counts.ts';
 import { nameOf } from './fold.ts';
 import { recordBands } from './record.ts';
+import { rowsOf } from './rows.ts';
 
 /** Refuses a table that cannot have come from counting: Σ_v d_jc(v) = c_c for every slot j and column c, cells between 1
  *  and c_c, totals no smaller than the sum of their cells, everything ascending and finite.
  *  Throws TallypostError `identity-broken` or `counts-broken`, naming the cell. O(cells). */
-export function checkCounts(counts: Counts, place: string): void {
+export function checkCounts(counts: CountsView, place: string): void {
   const { schema, columns, messages } = counts;
   const broken = (cell: string, expected: string, got: string | number, code = 'counts-broken') =>
     new TallypostError({ code, place: `${place}, ${cell}`, expected, got: String(got) });
@@ -68,29 +69,28 @@ export function checkCounts(counts: Counts, place: string): void {
 
 type Broken = (cell: string, expected: string, got: string | number, code?: string) => TallypostError;
 
-function checkRegion(region: RegionCounts, counts: Counts, broken: Broken): void {
+function checkRegion(region: RegionCounts | EncodedRegion, counts: CountsView, broken: Broken): void {
   const { columns, messages } = counts;
-  const { tokens, start, column, count, total } = region;
-  if (start.length !== tokens.length + 1 || start[0] !== 0 || start[tokens.length] !== count.length) {
-    throw broken('rows', `${tokens.length} rows over ${count.length} cells`, start.length);
-  }
-  if (column.length !== count.length || total.length !== columns.length) {
-    throw broken('cells', `as many columns as counts, ${columns.length} totals`, column.length);
-  }
+  const { total } = region;
+  if (total.length !== columns.length)
+    throw broken('totals', `as many as columns, ${columns.length}`, total.length);
+  if (!('bytes' in region)) checkRows(region, broken);
   const sums = new Float64Array(columns.length);
-  for (let i = 0; i < tokens.length; i++) {
-    if (i > 0 && !(tokens[i - 1] < tokens[i]))
-      throw broken(`token ${tokenHex(tokens[i])}`, 'ascending tokens', 'disorder');
-    if (!(start[i] < start[i + 1])) throw broken(`token ${tokenHex(tokens[i])}`, 'at least one cell', 'none');
-    for (let p = start[i]; p < start[i + 1]; p++) {
-      const isOrdered = column[p] < columns.length && (p === start[i] || column[p - 1] < column[p]);
+  const rows = rowsOf(region);
+  const { column, count } = rows;
+  for (let previous = -1; rows.next(); previous = rows.token) {
+    const { token, from, to } = rows;
+    if (!(previous < token)) throw broken(`token ${tokenHex(token)}`, 'ascending tokens', 'disorder');
+    for (let p = from; p < to; p++) {
+      const c = column[p];
+      const isOrdered = c < columns.length && (p === from || column[p - 1] < c);
       if (!isOrdered)
-        throw broken(`token ${tokenHex(tokens[i])}`, `ascending columns below ${columns.length}`, column[p]);
-      if (!(count[p] > 0 && count[p] <= messages[column[p]])) {
-        const cell = `token ${tokenHex(tokens[i])}, column ${nameOf(columns[column[p]])}`;
-        throw broken(cell, `a count from 1 to the column's ${messages[column[p]]} messages`, count[p]);
+        throw broken(`token ${tokenHex(token)}`, `ascending columns below ${columns.length}`, c);
+      if (!(count[p] > 0 && count[p] <= messages[c])) {
+        const cell = `token ${tokenHex(token)}, column ${nameOf(columns[c])}`;
+        throw broken(cell, `a count from 1 to the column's ${messages[c]} messages`, count[p]);
       }
-      sums[column[p]] += count[p];
+      sums[c] += count[p];
     }
   }
   for (let c = 0; c < columns.length; c++) {
@@ -104,6 +104,15 @@ function checkRegion(region: RegionCounts, counts: Counts, broken: Broken): void
       );
     }
   }
+}
+
+/** Rows in memory: each is the stretch of cells between two starts, and none is empty. */
+function checkRows({ tokens, start, column, count }: RegionCounts, broken: Broken): void {
+  if (start.length !== tokens.length + 1 || start[0] !== 0 || start[tokens.length] !== count.length)
+    throw broken('rows', `${tokens.length} rows over ${count.length} cells`, start.length);
+  if (column.length !== count.length) throw broken('cells', `as many columns as counts`, column.length);
+  for (let i = 0; i < tokens.length; i++)
+    if (!(start[i] < start[i + 1])) throw broken(`token ${tokenHex(tokens[i])}`, 'at least one cell', 'none');
 }
 
 function isBefore(a: Counts['columns'][number], b: Counts['columns'][number]): boolean {

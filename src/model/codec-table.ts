@@ -3,7 +3,8 @@ import { ByteReader, ByteWriter, seal, unseal } from './bytes.ts';
 import { checkCounts } from './check-counts.ts';
 import { readCounts, readTokens, writeCounts, writeTokens } from './codec-counts.ts';
 import type { Fit } from './fit.ts';
-import { type ServedTable, weightUnit } from './served-table.ts';
+import { weightUnit } from './projection.ts';
+import type { ServedTable } from './served-table.ts';
 
 /** A served table as bytes: reference epoch, half-life, vocabulary, pruned tokens, fit as JSON, counts. Canonical. */
 export function encodeTable(table: ServedTable): Uint8Array {

@@ -38,6 +38,36 @@ export interface Counts {
   readonly record: Float64Array;
 }
 
+/** Counts of one region as they stand in bytes, see codec-counts; `rowsOf` reads them token by token. */
+export interface EncodedRegion {
+  readonly total: Float64Array;
+  /** Tokens and cells held. */
+  readonly rows: number;
+  readonly cells: number;
+  /** Of the region's columns. */
+  readonly columns: number;
+  readonly bytes: Uint8Array;
+  /** Where the tokens begin, and where the cells begin and end. */
+  readonly tokensAt: number;
+  readonly cellsAt: number;
+  readonly endAt: number;
+  /** Names the object in errors. */
+  readonly place: string;
+}
+
+/** Counts that are read token by token, in memory or in bytes: a million confirmations take 2 to 3 bytes a cell in bytes, and
+ *  20 in memory. */
+export interface CountsView extends Omit<Counts, 'regions'> {
+  readonly regions: readonly (RegionCounts | EncodedRegion)[];
+}
+
+/** The counts in bytes: canonical, so that equal counts have equal bytes. */
+export interface EncodedCounts extends CountsView {
+  readonly regions: readonly EncodedRegion[];
+  /** Sealed, as `decodeCounts` reads them. */
+  readonly bytes: Uint8Array;
+}
+
 /** What the router said about a message at routing time, kept for the reliability record. */
 export interface Said {
   readonly queue: string;

@@ -1,10 +1,11 @@
 import { tokenHex } from '../features/schema.ts';
-import type { CellDifference, Column, Counts, RegionCounts } from './counts.ts';
+import type { CellDifference, Column, CountsView } from './counts.ts';
 import { nameOf } from './fold.ts';
+import { type Rows, rowsOf } from './rows.ts';
 
 /** Where two tables of one schema differ, cell by cell, in the order of the table; at most `max` cells, so that two
  *  unrelated tables do not fill the memory. Empty when they are equal. */
-export function diffCounts(a: Counts, b: Counts, max: number): CellDifference[] {
+export function diffCounts(a: CountsView, b: CountsView, max: number): CellDifference[] {
   const found: CellDifference[] = [];
   const note = (cell: string, left: number, right: number) => {
     if (left !== right && found.length < max) found.push({ cell, left, right });
@@ -25,6 +26,7 @@ export function diffCounts(a: Counts, b: Counts, max: number): CellDifference[] 
     });
   }
   a.schema.regions.forEach(({ id }, g) => {
+    if (found.length >= max) return;
     diffRegion(a, b, g, (token, column, left, right) => {
       note(
         `region ${id}, token ${tokenHex(token)}, queue ${column.queue}, epoch ${column.epoch}`,
@@ -38,33 +40,50 @@ export function diffCounts(a: Counts, b: Counts, max: number): CellDifference[] 
   return found;
 }
 
-/** Calls `note` for every cell that either holds, until it answers false. */
+/** Calls `note` for every cell in which the two differ, until it answers false. */
 function diffRegion(
-  a: Counts,
-  b: Counts,
+  a: CountsView,
+  b: CountsView,
   g: number,
   note: (token: number, column: Column, left: number, right: number) => boolean,
 ): void {
-  const [left, right] = [a.regions[g], b.regions[g]];
-  for (let i = 0, j = 0; i < left.tokens.length || j < right.tokens.length; ) {
-    const token = Math.min(left.tokens[i] ?? Infinity, right.tokens[j] ?? Infinity);
-    const mine = left.tokens[i] === token ? rowOf(left, i++, a.columns) : new Map<string, [Column, number]>();
-    const other =
-      right.tokens[j] === token ? rowOf(right, j++, b.columns) : new Map<string, [Column, number]>();
-    for (const name of new Set([...mine.keys(), ...other.keys()])) {
-      const [column] = (mine.get(name) ?? other.get(name)) as [Column, number];
-      if (!note(token, column, mine.get(name)?.[1] ?? 0, other.get(name)?.[1] ?? 0)) return;
+  const [left, right] = [rowsOf(a.regions[g]), rowsOf(b.regions[g])];
+  const same = a.columns.length === b.columns.length && a.columns.every((c, i) => isSame(c, b.columns[i]));
+  let [hasLeft, hasRight] = [left.next(), right.next()];
+  while (hasLeft || hasRight) {
+    const token = Math.min(hasLeft ? left.token : Infinity, hasRight ? right.token : Infinity);
+    const [isMine, isOther] = [hasLeft && left.token === token, hasRight && right.token === token];
+    if (!(same && isMine && isOther && holdSame(left, right))) {
+      const mine = isMine ? cellsOf(left, a.columns) : new Map<string, [Column, number]>();
+      const other = isOther ? cellsOf(right, b.columns) : new Map<string, [Column, number]>();
+      for (const name of new Set([...mine.keys(), ...other.keys()])) {
+        const [column] = (mine.get(name) ?? other.get(name)) as [Column, number];
+        if (!note(token, column, mine.get(name)?.[1] ?? 0, other.get(name)?.[1] ?? 0)) return;
+      }
     }
+    if (isMine) hasLeft = left.next();
+    if (isOther) hasRight = right.next();
   }
 }
 
-function rowOf(region: RegionCounts, i: number, columns: readonly Column[]): Map<string, [Column, number]> {
-  const row = new Map<string, [Column, number]>();
-  for (let p = region.start[i]; p < region.start[i + 1]; p++) {
-    const column = columns[region.column[p]];
-    row.set(nameOf(column), [column, region.count[p]]);
+function isSame(a: Column, b: Column): boolean {
+  return a.queue === b.queue && a.epoch === b.epoch;
+}
+
+function holdSame(left: Rows, right: Rows): boolean {
+  if (left.to - left.from !== right.to - right.from) return false;
+  for (let p = left.from, q = right.from; p < left.to; p++, q++)
+    if (left.column[p] !== right.column[q] || left.count[p] !== right.count[q]) return false;
+  return true;
+}
+
+function cellsOf(rows: Rows, columns: readonly Column[]): Map<string, [Column, number]> {
+  const cells = new Map<string, [Column, number]>();
+  for (let p = rows.from; p < rows.to; p++) {
+    const column = columns[rows.column[p]];
+    cells.set(nameOf(column), [column, rows.count[p]]);
   }
-  return row;
+  return cells;
 }
 
 /** Columns of either table with their index in each, -1 where there is none. */

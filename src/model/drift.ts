@@ -1,5 +1,6 @@
 import { bounds } from '../bounds.ts';
-import type { Counts } from './counts.ts';
+import type { CountsView } from './counts.ts';
+import { rowsOf } from './rows.ts';
 import { logBetaBinomial } from './special.ts';
 
 /** Evidence that a queue's wording changed lately, by region. */
@@ -31,10 +32,10 @@ const priorMessages = 1;
  *
  *  Queues with fewer than `driftMessagesMin` messages on either side are left out. Largest first. O(cells).
  *  Bayes factors and their scale: Kass and Raftery, JASA 90 (1995), section 3. */
-export function findDrift(counts: Counts, recentEpochs: number): Drift[] {
+export function findDrift(counts: CountsView, recentEpochs: number): Drift[] {
   const newest = counts.columns.reduce((max, c) => Math.max(max, c.epoch), 0);
   const queues = [...new Set(counts.columns.map((c) => c.queue))];
-  const queueOf = counts.columns.map((c) => queues.indexOf(c.queue));
+  const queueOf = Uint32Array.from(counts.columns, (c) => queues.indexOf(c.queue));
   const isRecent = counts.columns.map((c) => c.epoch > newest - recentEpochs);
   const messages = queues.map(() => [0, 0]);
   counts.messages.forEach((c, i) => {
@@ -47,27 +48,39 @@ export function findDrift(counts: Counts, recentEpochs: number): Drift[] {
     .flatMap((region, g) => {
       const logFactor = new Float64Array(queues.length);
       const tokens = queues.map((): Drift['tokens'][number][] => []);
-      const held = queues.map(() => [0, 0]);
-      for (let i = 0; i < region.tokens.length; i++) {
+      const earlier = new Float64Array(queues.length);
+      const recent = new Float64Array(queues.length);
+      const touched = new Uint32Array(queues.length);
+      const factorOf = createFactors(messages, all);
+      const rows = rowsOf(region);
+      const { column, count } = rows;
+      while (rows.next()) {
         let seen = 0;
-        for (const pair of held) pair.fill(0);
-        for (let p = region.start[i]; p < region.start[i + 1]; p++) {
-          held[queueOf[region.column[p]]][isRecent[region.column[p]] ? 1 : 0] += region.count[p];
-          seen += region.count[p];
+        let length = 0;
+        for (let p = rows.from; p < rows.to; p++) {
+          const k = queueOf[column[p]];
+          seen += count[p];
+          if (!compared[k]) continue;
+          if (earlier[k] + recent[k] === 0) touched[length++] = k;
+          if (isRecent[column[p]]) recent[k] += count[p];
+          else earlier[k] += count[p];
         }
-        const m = (seen + 0.5) / (all + 1);
-        for (let k = 0; k < queues.length; k++) {
-          if (!compared[k] || held[k][0] + held[k][1] === 0) continue;
-          const factor = changeFactor(held[k], messages[k], m);
-          logFactor[k] += Math.log1p(changedShare * Math.expm1(Math.min(factor, 500)));
-          if (factor <= 0) continue;
-          const hasRisen = held[k][1] * messages[k][0] > held[k][0] * messages[k][1];
-          tokens[k].push({ token: region.tokens[i], logFactor: factor, hasRisen });
+        for (let i = 0; i < length; i++) {
+          const k = touched[i];
+          const { factor, share } = factorOf(k, earlier[k], recent[k], seen);
+          logFactor[k] += share;
+          if (factor > 0) {
+            const hasRisen = recent[k] * messages[k][0] > earlier[k] * messages[k][1];
+            tokens[k].push({ token: rows.token, logFactor: factor, hasRisen });
+            if (tokens[k].length >= 1000) keepStrongest(tokens[k]);
+          }
+          earlier[k] = 0;
+          recent[k] = 0;
         }
       }
       return queues.flatMap((queue, k): Drift[] => {
         if (!compared[k]) return [];
-        const strongest = tokens[k].sort((a, b) => b.logFactor - a.logFactor || a.token - b.token);
+        keepStrongest(tokens[k]);
         return [
           {
             queue,
@@ -75,12 +88,38 @@ export function findDrift(counts: Counts, recentEpochs: number): Drift[] {
             earlierMessages: messages[k][0],
             recentMessages: messages[k][1],
             logFactor: logFactor[k],
-            tokens: strongest.slice(0, bounds.driftTokensMax),
+            tokens: tokens[k],
           },
         ];
       });
     })
     .sort((a, b) => b.logFactor - a.logFactor);
+}
+
+function keepStrongest(tokens: Drift['tokens'][number][]): void {
+  tokens.sort((a, b) => b.logFactor - a.logFactor || a.token - b.token);
+  tokens.length = Math.min(tokens.length, bounds.driftTokensMax);
+}
+
+interface Factor {
+  readonly factor: number;
+  /** What the token adds to the queue's. */
+  readonly share: number;
+}
+
+/** The factor of a token by its counts. Those of rare tokens, nearly all, are remembered. */
+function createFactors(messages: readonly (readonly number[])[], all: number) {
+  const known = new Map<number, Factor>();
+  return (k: number, earlier: number, recent: number, seen: number): Factor => {
+    const isRare = seen < 64 && Number.isInteger(seen);
+    const key = ((k * 64 + earlier) * 64 + recent) * 64 + seen;
+    const held = isRare ? known.get(key) : undefined;
+    if (held) return held;
+    const factor = changeFactor([earlier, recent], messages[k], (seen + 0.5) / (all + 1));
+    const made = { factor, share: Math.log1p(changedShare * Math.expm1(Math.min(factor, 500))) };
+    if (isRare) known.set(key, made);
+    return made;
+  };
 }
 
 /** log Bayes factor of two rates, before and since, against one. */

@@ -1,15 +1,17 @@
 import type { Features } from '../features/schema.ts';
-import type { Counts } from './counts.ts';
+import type { CountsView } from './counts.ts';
 import type { Block, Fit } from './fit.ts';
 import { fitQueues, fitShared, type LabelledScores, meanLoss, type Shrinkage } from './fit-exponents.ts';
 import type { Own } from './hits.ts';
 import { type OwnMessage, scoreLeavingOut } from './leave-one-out.ts';
 import { normalise } from './posterior-of.ts';
 import { fitPriors } from './priors.ts';
+import { type Projection, projectionOf, vocabularyOf, weightOf } from './projection.ts';
 import { chooseHold, holdAll } from './prune.ts';
 import { learnReliability } from './reliability.ts';
+import { rowCount } from './rows.ts';
 import { createScorer } from './scorer.ts';
-import { project, serve, weightOf } from './served-table.ts';
+import { type ServedTable, serveTokens } from './served-table.ts';
 
 /** A confirmed message that stands in the counts. */
 export interface FoldedMessage {
@@ -47,7 +49,7 @@ const contradictedBelow = 0.01;
 
 /** All that is fitted from the counts, see `fitFindings`. */
 export function fitTable(
-  counts: Counts,
+  counts: CountsView,
   sample: readonly FoldedMessage[],
   previousFit: Fit,
   options: FitOptions = { halfLifeDays: null },
@@ -61,16 +63,18 @@ export function fitTable(
  *  `fitScoresMax`), evenly spread over the sample's order. Deterministic.
  *  Cost: O(messages · queues · (tokens + blocks²)). */
 export function fitFindings(
-  counts: Counts,
+  counts: CountsView,
   sample: readonly FoldedMessage[],
   previousFit: Fit,
   { halfLifeDays }: FitOptions,
 ): FitFindings {
-  const { projected, referenceEpoch } = project(counts, halfLifeDays);
-  const hold = chooseHold(counts, projected, previousFit, referenceEpoch);
+  const projection = projectionOf(counts, halfLifeDays);
+  const { head, referenceEpoch } = projection;
+  const vocabulary = vocabularyOf(counts, projection);
+  const hold = chooseHold(counts, projection, vocabulary, previousFit);
   const reliability = learnReliability(counts.record, previousFit.reliability);
-  const basis: Fit = { ...previousFit, ...fitPriors(projected), hold, reliability };
-  const queues = projected.columns.map((c) => c.queue);
+  const basis: Fit = { ...previousFit, ...fitPriors(head), hold, reliability };
+  const queues = head.columns.map((c) => c.queue);
   const messages = sample
     .map(({ features, queue, epoch }, index): OwnMessage => {
       return {
@@ -83,7 +87,7 @@ export function fitFindings(
     .filter(({ queue, weight }) => queue >= 0 && weight > 0);
   if (messages.length === 0 || queues.length < 2) return { fit: basis, contradictions: [] };
 
-  const table = serve(counts, { ...basis, hold: holdAll }, { halfLifeDays });
+  const table = tableFor(counts, projection, vocabulary, messages, { ...basis, hold: holdAll }, halfLifeDays);
   const seenMin = hold.sparesNew ? {} : hold.seenMin;
   const scorer = createScorer(table, [], queues, halfLifeDays, { isForFit: true, seenMin });
   const { active, own, scores } = scoreLeavingOut(scorer, messages);
@@ -102,8 +106,38 @@ export function fitFindings(
   const bias = Object.fromEntries(queues.map((queue, k) => [queue, rounded(byQueue.bias[k])]));
   const fit: Fit = { ...basis, blocks, bias, logLoss: meanLoss(scores, byQueue.logs), messages: own.length };
   // With nothing else in the queue, nothing else can say that a message does not belong there.
-  const isAlone = ({ queue, weight }: Own) => projected.messages[queue] - weight < 1;
+  const isAlone = ({ queue, weight }: Own) => head.messages[queue] - weight < 1;
   return { fit, contradictions: contradict(scores, byQueue.logs, queues, own, isAlone) };
+}
+
+/** A table that scores the messages as the whole one would: of a large base only with their own tokens. */
+function tableFor(
+  counts: CountsView,
+  projection: Projection,
+  vocabulary: readonly number[],
+  messages: readonly OwnMessage[],
+  fit: Fit,
+  halfLifeDays: number | null,
+): ServedTable {
+  const countsAbsent = fit.blocks.some(
+    (b) => b.kind === 'tokens' && b.draws === 'messages' && (b.part === 'all' || b.part === 'absent'),
+  );
+  const wanted = counts.regions.map((region, g) => {
+    const length = messages.reduce((sum, { features }) => sum + features.regions[g].length, 0);
+    return countsAbsent || length >= rowCount(region) ? null : tokensOf(messages, g, length);
+  });
+  return serveTokens(counts, projection, vocabulary, wanted, fit, halfLifeDays);
+}
+
+/** Tokens of a region in any of the messages, `length` with repetitions; ascending. */
+function tokensOf(messages: readonly OwnMessage[], g: number, length: number): Float64Array {
+  const tokens = new Float64Array(length);
+  let at = 0;
+  for (const { features } of messages) {
+    tokens.set(features.regions[g], at);
+    at += features.regions[g].length;
+  }
+  return tokens.sort();
 }
 
 function contradict(

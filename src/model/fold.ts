@@ -248,7 +248,7 @@ export function nameOf(column: Column): string {
 }
 
 /** Distinct columns of both lists, ascending by queue (UTF-16 code units), then epoch. */
-function unionOf(a: readonly Column[], b: readonly Column[]): Column[] {
+export function unionOf(a: readonly Column[], b: readonly Column[]): Column[] {
   const distinct = new Map<string, Column>();
   for (const list of [a, b])
     for (const c of list) distinct.set(nameOf(c), { queue: c.queue, epoch: c.epoch });
@@ -257,7 +257,7 @@ function unionOf(a: readonly Column[], b: readonly Column[]): Column[] {
   );
 }
 
-function indexOf(columns: readonly Column[]): Map<string, number> {
+export function indexOf(columns: readonly Column[]): Map<string, number> {
   return new Map(columns.map((c, i) => [nameOf(c), i]));
 }
 

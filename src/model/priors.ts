@@ -49,7 +49,7 @@ export function fitPseudoCount(draws: readonly ArrayLike<number>[], values: numb
 }
 
 /** Pseudo-counts of queues and of each slot's values, chosen by the evidence of the counts by queue. */
-export function fitPriors(projected: Counts): {
+export function fitPriors(projected: Pick<Counts, 'schema' | 'columns' | 'messages' | 'slots'>): {
   readonly alpha: number;
   readonly beta: Readonly<Record<string, number>>;
 } {

@@ -1,11 +1,17 @@
 import { bounds } from '../bounds.ts';
-import type { Counts, RegionCounts } from './counts.ts';
+import type { CountsView, RegionCounts } from './counts.ts';
 import type { Fit, Hold, Reading } from './fit.ts';
-import { createHits, kindOf, readHits } from './hits.ts';
+import { type Hits, kindOf } from './hits.ts';
+import { Numbers } from './numbers.ts';
+import { type Projection, projectRegion, visitRows } from './projection.ts';
 import { exposureOf, weighModels } from './rates.ts';
-import { pickTokens } from './sparse.ts';
 
 export const holdAll: Hold = { seenMin: {}, relevanceMin: 0, sparesNew: true };
+
+/** How often a token must have been seen, by rule: each step of the rules goes from one to the next. The last are for tables of a
+ *  million messages. */
+const seenSteps = [1, 2, 3, 4, 6, 8, 16, 32, 64, 128, 256, 512, 1024, 2048, 4096] as const;
+const relevanceSteps = [0, 0.2, 0.5] as const;
 
 /** Rules from lenient to strict. First go old tokens that were seen once or hardly depend on the queue; then tokens seen once,
  *  which are half of all and tell little, from the regions that hold most of them down to those that hold few; then ever
@@ -14,15 +20,8 @@ function* rules(regions: readonly string[]): Generator<Hold> {
   yield holdAll;
   const everywhere = (seenMin: number) => Object.fromEntries(regions.map((id) => [id, seenMin]));
   yield { seenMin: everywhere(2), relevanceMin: 0.2, sparesNew: true };
-  for (const [before, seenMin] of [
-    [1, 2],
-    [2, 3],
-    [3, 4],
-    [4, 6],
-    [6, 8],
-    [8, 16],
-    [16, 32],
-  ] as const) {
+  for (let step = 1; step < seenSteps.length; step++) {
+    const [before, seenMin] = [seenSteps[step - 1], seenSteps[step]];
     for (let n = 1; n <= regions.length; n++) {
       const raised = Object.fromEntries(regions.map((id, i) => [id, i < n ? seenMin : before]));
       yield { seenMin: raised, relevanceMin: seenMin < 3 ? 0.2 : 0.5, sparesNew: false };
@@ -30,105 +29,134 @@ function* rules(regions: readonly string[]): Generator<Hold> {
   }
 }
 
-/** What is known of each token of a region, by row. */
-interface Tokens {
-  /** D, by weight. */
-  readonly seen: Float64Array;
-  /** Largest posterior probability, over the readings, that its rate depends on the queue. */
-  readonly relevance: Float64Array;
-  /** Newest epoch in which it was seen. */
-  readonly lastSeen: Float64Array;
-}
+/** Largest posterior probability, over the readings, that a token's rate depends on the queue. */
+type Relevance = (hits: Hits) => number;
 
-/** The most lenient rule under which a table of these counts keeps to `tableBytesPerQueueMax`. `projected` are the counts by
- *  queue, `counts` the same by queue and epoch. O(cells). */
-export function chooseHold(counts: Counts, projected: Counts, fit: Fit, referenceEpoch: number): Hold {
-  const bytesMax = bounds.tableBytesPerQueueMax * Math.max(bounds.tableQueuesMin, projected.columns.length);
-  if (sum(projected.regions.map((region) => bytesOf(region, () => true))) <= bytesMax) return holdAll;
-  const ids = projected.schema.regions.map(({ id }) => id);
-  const bySize = [...ids.keys()].sort(
-    (a, b) => projected.regions[b].tokens.length - projected.regions[a].tokens.length,
-  );
-  const tokens = describeTokens(counts, projected, fit);
+/** The most lenient rule under which a table of these counts keeps to `tableBytesPerQueueMax`; `vocabulary` are the distinct tokens
+ *  of each region. Two looks at each token, O(cells). */
+export function chooseHold(
+  counts: CountsView,
+  projection: Projection,
+  vocabulary: readonly number[],
+  fit: Fit,
+): Hold {
+  const { regions } = counts.schema;
+  const bytesMax = tableBytesMax(projection);
+  let whole = 0;
+  for (const g of regions.keys())
+    visitRows(counts, projection, g, ({ hits }) => {
+      whole += bytesOf(hits);
+    });
+  if (whole <= bytesMax) return holdAll;
+  const sizes = regions.map((_, g) => sizesOf(counts, projection, g, vocabulary[g], fit));
+  const bySize = [...regions.keys()].sort((a, b) => vocabulary[b] - vocabulary[a]);
   let strictest = holdAll;
-  for (const hold of rules(bySize.map((g) => ids[g]))) {
+  for (const hold of rules(bySize.map((g) => regions[g].id))) {
     strictest = hold;
-    const bytes = projected.regions.map((r, g) =>
-      bytesOf(r, (i) => isHeld(hold, ids[g], tokens[g], i, referenceEpoch)),
-    );
-    if (sum(bytes) <= bytesMax) break;
+    const bytes = sizes.reduce((sum, sizeOf, g) => sum + sizeOf(hold, hold.seenMin[regions[g].id] ?? 0), 0);
+    if (bytes <= bytesMax) break;
   }
   return strictest;
 }
 
-/** The counts with only the tokens held; totals stay, so that rates stay what they were. `dropped` are frequent tokens that
- *  were dropped, ascending: a later entry must not take one for new. */
-export function applyHold(
-  counts: Counts,
-  projected: Counts,
+function tableBytesMax({ head }: Projection): number {
+  return bounds.tableBytesPerQueueMax * Math.max(bounds.tableQueuesMin, head.columns.length);
+}
+
+/** Bytes of a region's tokens that a rule holds, told from sums by how often they were seen, relevance and novelty. */
+function sizesOf(
+  counts: CountsView,
+  projection: Projection,
+  g: number,
+  vocabulary: number,
   fit: Fit,
-  referenceEpoch: number,
-): { readonly held: Counts; readonly dropped: readonly Float64Array[] } {
-  if (Object.keys(fit.hold.seenMin).length === 0 && fit.hold.relevanceMin === 0) {
-    return { held: projected, dropped: projected.regions.map(() => new Float64Array(0)) };
-  }
-  const tokens = describeTokens(counts, projected, fit);
-  const dropped: Float64Array[] = [];
-  const regions = projected.regions.map((region, g) => {
-    const kept: number[] = [];
-    const gone: number[] = [];
-    for (let i = 0; i < region.tokens.length; i++) {
-      if (isHeld(fit.hold, projected.schema.regions[g].id, tokens[g], i, referenceEpoch)) kept.push(i);
-      else if (tokens[g].seen[i] >= bounds.droppedSeenMin) gone.push(region.tokens[i]);
-    }
-    dropped.push(Float64Array.from(gone));
-    return pickTokens(region, kept);
+): (hold: Hold, seenMin: number) => number {
+  const relevanceOf = createRelevance(projection, g, vocabulary, fit);
+  const bytes = new Float64Array((seenSteps.length + 1) * relevanceSteps.length * 2);
+  const at = (seen: number, relevance: number, isNew: boolean) =>
+    (seen * relevanceSteps.length + relevance) * 2 + (isNew ? 1 : 0);
+  visitRows(counts, projection, g, ({ hits, lastSeen }) => {
+    let seen = 0;
+    while (seen < seenSteps.length && hits.seen >= seenSteps[seen]) seen++;
+    const relevance = relevanceOf(hits);
+    let step = 0;
+    while (step + 1 < relevanceSteps.length && relevance >= relevanceSteps[step + 1]) step++;
+    bytes[at(seen, step, isNew(projection, lastSeen))] += bytesOf(hits);
   });
-  return { held: { ...projected, regions }, dropped };
+  return ({ relevanceMin, sparesNew }, seenMin) => {
+    let sum = 0;
+    for (let seen = 0; seen <= seenSteps.length; seen++)
+      for (const [step, relevance] of relevanceSteps.entries())
+        for (const isFresh of [false, true]) {
+          const isSeen = (seen === 0 ? 0 : seenSteps[seen - 1]) >= seenMin;
+          if ((isSeen && relevance >= relevanceMin) || (sparesNew && isFresh))
+            sum += bytes[at(seen, step, isFresh)];
+        }
+    return sum;
+  };
 }
 
-function isHeld(
-  hold: Hold,
-  region: string,
-  { seen, relevance, lastSeen }: Tokens,
-  i: number,
-  referenceEpoch: number,
-): boolean {
-  if (seen[i] >= (hold.seenMin[region] ?? 0) && relevance[i] >= hold.relevanceMin) return true;
-  return hold.sparesNew && lastSeen[i] > referenceEpoch - bounds.newTokenEpochs;
+/** The projection's tokens that are held; totals stay, so that rates stay what they were. `dropped` are frequent tokens that were
+ *  dropped, ascending: a later entry must not take one for new. */
+export function applyHold(
+  counts: CountsView,
+  projection: Projection,
+  vocabulary: readonly number[],
+  fit: Fit,
+): { readonly regions: readonly RegionCounts[]; readonly dropped: readonly Float64Array[] } {
+  const { hold } = fit;
+  const holdsAll = Object.keys(hold.seenMin).length === 0 && hold.relevanceMin === 0;
+  const dropped: Float64Array[] = [];
+  const regions = counts.schema.regions.map(({ id }, g) => {
+    const relevanceOf = createRelevance(projection, g, vocabulary[g], fit);
+    const seenMin = hold.seenMin[id] ?? 0;
+    const [gone, goneSeen] = [new Numbers(Float64Array), new Numbers(Float64Array)];
+    const region = projectRegion(counts, projection, g, ({ token, hits, lastSeen }) => {
+      if (holdsAll || (hold.sparesNew && isNew(projection, lastSeen))) return true;
+      if (hits.seen >= seenMin && relevanceOf(hits) >= hold.relevanceMin) return true;
+      if (hits.seen >= bounds.droppedSeenMin) {
+        gone.push(token);
+        goneSeen.push(hits.seen);
+      }
+      return false;
+    });
+    // Half as many bytes as the tokens held may take, shared by the regions.
+    const listedMax = Math.floor(tableBytesMax(projection) / 2 / tokenBytes / counts.regions.length);
+    dropped.push(mostSeen(gone.taken(), goneSeen.taken(), listedMax));
+    return region;
+  });
+  return { regions, dropped };
 }
 
-function describeTokens(counts: Counts, projected: Counts, fit: Fit): Tokens[] {
-  return projected.regions.map((region, g) => ({
-    ...weighTokens(region, projected, readingsOf(fit, projected.schema.regions[g].id)),
-    lastSeen: newestEpochs(counts, g, region.tokens),
-  }));
-}
-
-/** D and relevance of each row. Rows of one kind are weighed once. */
-function weighTokens(
-  region: RegionCounts,
-  projected: Counts,
-  readings: readonly Reading[],
-): Pick<Tokens, 'seen' | 'relevance'> {
-  const queues = projected.columns.length;
-  const same = Int32Array.from({ length: queues }, (_, k) => k);
-  const exposures = readings.map((reading) =>
-    exposureOf(reading, reading.draws === 'tokens' ? region.total : projected.messages, region.tokens.length),
-  );
-  const hits = createHits(queues);
-  const seen = new Float64Array(region.tokens.length);
-  const relevance = new Float64Array(region.tokens.length);
-  const byKind = new Map<number, number>();
-  for (let i = 0; i < region.tokens.length; i++) {
-    readHits(region, same, i, null, hits);
-    seen[i] = hits.seen;
-    const kind = kindOf(hits, queues);
-    relevance[i] =
-      byKind.get(kind) ?? Math.max(0, ...exposures.map((e) => 1 - (weighModels(e, hits).at(-1) as number)));
-    if (kind >= 0) byKind.set(kind, relevance[i]);
+/** The tokens if they are at most `max`; else those seen twice as often as the rarest, four times and so on, until they are. */
+function mostSeen(tokens: Float64Array, seen: Float64Array, max: number): Float64Array {
+  for (let seenMin: number = bounds.droppedSeenMin; ; seenMin *= 2) {
+    const kept = seenMin === bounds.droppedSeenMin ? tokens : tokens.filter((_, i) => seen[i] >= seenMin);
+    if (kept.length <= max) return kept;
   }
-  return { seen, relevance };
+}
+
+function isNew({ referenceEpoch }: Projection, lastSeen: number): boolean {
+  return lastSeen > referenceEpoch - bounds.newTokenEpochs;
+}
+
+/** Tokens of one kind are weighed once. */
+function createRelevance({ head, totals }: Projection, g: number, vocabulary: number, fit: Fit): Relevance {
+  const queues = head.columns.length;
+  const exposures = readingsOf(fit, head.schema.regions[g].id).map((reading) =>
+    exposureOf(reading, reading.draws === 'tokens' ? totals[g] : head.messages, vocabulary),
+  );
+  const byKind = new Map<number, number>();
+  return (hits) => {
+    const kind = kindOf(hits, queues);
+    const known = byKind.get(kind);
+    if (known !== undefined) return known;
+    let relevance = 0;
+    for (const exposure of exposures)
+      relevance = Math.max(relevance, 1 - (weighModels(exposure, hits).at(-1) as number));
+    if (kind >= 0) byKind.set(kind, relevance);
+    return relevance;
+  };
 }
 
 function readingsOf(fit: Fit, region: string): Reading[] {
@@ -140,32 +168,13 @@ function readingsOf(fit: Fit, region: string): Reading[] {
   return [...distinct.values()];
 }
 
-/** Newest epoch of each of `tokens`, which are ascending and among the region's. */
-function newestEpochs(counts: Counts, g: number, tokens: Float64Array): Float64Array {
-  const { start, column, tokens: all } = counts.regions[g];
-  const newest = new Float64Array(tokens.length);
-  for (let i = 0, n = 0; n < tokens.length; i++) {
-    if (all[i] !== tokens[n]) continue;
-    for (let p = start[i]; p < start[i + 1]; p++)
-      newest[n] = Math.max(newest[n], counts.columns[column[p]].epoch);
-    n++;
-  }
-  return newest;
-}
+const tokenBytes = 4;
 
-/** About what the rows take when encoded (see codec-counts): 4 bytes a hash, as long as a region holds 4 thousand to 500
+/** About what a token takes when encoded (see codec-counts): 4 bytes of its hash, as long as a region holds 4 thousand to 500
  *  thousand; for each cell its column, and its count when that is not 1. */
-function bytesOf({ tokens, start, column, count }: RegionCounts, isKept: (row: number) => boolean): number {
-  let bytes = 0;
-  for (let i = 0; i < tokens.length; i++) {
-    if (!isKept(i)) continue;
-    bytes += 4;
-    for (let p = start[i]; p < start[i + 1]; p++)
-      bytes += (column[p] < 32 ? 1 : 2) + (count[p] === 1 ? 0 : Number.isInteger(count[p]) ? 1 : 2);
-  }
+function bytesOf({ queue, count, length }: Hits): number {
+  let bytes = tokenBytes;
+  for (let h = 0; h < length; h++)
+    bytes += (queue[h] < 32 ? 1 : 2) + (count[h] === 1 ? 0 : Number.isInteger(count[h]) ? 1 : 2);
   return bytes;
-}
-
-function sum(values: readonly number[]): number {
-  return values.reduce((a, b) => a + b, 0);
 }

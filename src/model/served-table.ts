@@ -1,7 +1,8 @@
 import type { Schema } from '../features/schema.ts';
-import type { Column, Counts } from './counts.ts';
+import type { Counts, CountsView } from './counts.ts';
 import { defaultFit, type Fit } from './fit.ts';
-import { emptyCounts, remapCounts } from './fold.ts';
+import { emptyCounts } from './fold.ts';
+import { type Projection, projectionOf, projectRegion, vocabularyOf } from './projection.ts';
 import { applyHold } from './prune.ts';
 
 /** What routers load: the counts by queue, aged to the newest epoch, with what was fitted from them. */
@@ -23,41 +24,45 @@ export interface ServeOptions {
   readonly halfLifeDays: number | null;
 }
 
-/** Aged counts are whole multiples of 1/weightUnit, so that they add exactly and Σ_v d = c holds exactly after ageing:
- *  every cell of a column is multiplied by the same whole number. Counts older than ten half-lives round to nothing. */
-export const weightUnit = 1024;
-
-/** Weight of an epoch: 2^(-(E - epoch)·7/halfLifeDays), a multiple of 1/weightUnit; 1 when nothing ages. */
-export function weightOf(epoch: number, referenceEpoch: number, halfLifeDays: number | null): number {
-  if (halfLifeDays === null) return 1;
-  return Math.round(weightUnit * 2 ** (((epoch - referenceEpoch) * 7) / halfLifeDays)) / weightUnit;
-}
-
 export function emptyTable(schema: Schema): ServedTable {
   return serve(emptyCounts(schema), defaultFit(schema), { halfLifeDays: null });
 }
 
 /** The table that routers load, made from the counts of all epochs, with the tokens that `fit.hold` holds. O(cells). */
-export function serve(counts: Counts, fit: Fit, { halfLifeDays }: ServeOptions): ServedTable {
-  const { projected, referenceEpoch } = project(counts, halfLifeDays);
-  const { held, dropped } = applyHold(counts, projected, fit, referenceEpoch);
+export function serve(counts: CountsView, fit: Fit, { halfLifeDays }: ServeOptions): ServedTable {
+  const projection = projectionOf(counts, halfLifeDays);
+  const vocabulary = vocabularyOf(counts, projection);
+  const { regions, dropped } = applyHold(counts, projection, vocabulary, fit);
+  const { referenceEpoch, head } = projection;
   return {
-    counts: held,
+    counts: { ...head, regions },
     referenceEpoch,
     halfLifeDays,
-    vocabulary: projected.regions.map((r) => r.tokens.length),
+    vocabulary,
     pruned: dropped,
     fit,
   };
 }
 
-/** Counts summed over epochs, each with its weight. */
-export function project(
-  counts: Counts,
+/** The same with only those tokens that are among `wanted` [regions][ascending; null: all], and nothing pruned: it scores messages made of
+ *  these as the whole table would, as long as no absent token counts. */
+export function serveTokens(
+  counts: CountsView,
+  projection: Projection,
+  vocabulary: readonly number[],
+  wanted: readonly (Float64Array | null)[],
+  fit: Fit,
   halfLifeDays: number | null,
-): { readonly projected: Counts; readonly referenceEpoch: number } {
-  const referenceEpoch = counts.columns.reduce((newest, c) => Math.max(newest, c.epoch), 0);
-  const weight = Float64Array.from(counts.columns, (c) => weightOf(c.epoch, referenceEpoch, halfLifeDays));
-  const target = counts.columns.map((c): Column => ({ queue: c.queue, epoch: 0 }));
-  return { projected: remapCounts(counts, target, weight), referenceEpoch };
+): ServedTable {
+  const regions = wanted.map((tokens, g) => {
+    let at = 0;
+    return projectRegion(counts, projection, g, ({ token }) => {
+      if (tokens === null) return true;
+      while (at < tokens.length && tokens[at] < token) at++;
+      return tokens[at] === token;
+    });
+  });
+  const { referenceEpoch, head } = projection;
+  const pruned = regions.map(() => new Float64Array(0));
+  return { counts: { ...head, regions }, referenceEpoch, halfLifeDays, vocabulary, pruned, fit };
 }

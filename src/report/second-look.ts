@@ -1,8 +1,8 @@
 import type { Features } from '../features/schema.ts';
 import { combine, normalise } from '../model/posterior-of.ts';
+import { weightOf } from '../model/projection.ts';
 import { blockScores } from '../model/score.ts';
 import type { Scorer } from '../model/scorer.ts';
-import { weightOf } from '../model/served-table.ts';
 import type { SecondLook } from './report-data.ts';
 
 /** A confirmed message that stands in the counts. */

@@ -4,6 +4,7 @@ import { readManifest } from '../../src/ledger/commit.ts';
 import { foldClaims } from '../../src/ledger/fold.ts';
 import { readCounts } from '../../src/ledger/objects.ts';
 import type { Claim, FoldOutcome, World } from '../../src/ledger/world.ts';
+import { decodeCounts } from '../../src/model/codec-counts.ts';
 import type { Counts, Said } from '../../src/model/counts.ts';
 import { createMemoryStore } from '../../src/store/memory.ts';
 import type { Store } from '../../src/store/store.ts';
@@ -104,7 +105,8 @@ export function fold(world: World, ...claims: Claim[]): Promise<FoldOutcome[]> {
 }
 
 export async function countsNow(world: World): Promise<Counts> {
-  return readCounts(world, schema, (await readManifest(world)).manifest);
+  const { bytes } = await readCounts(world, schema, (await readManifest(world)).manifest);
+  return decodeCounts(bytes, schema, 'counts');
 }
 
 /** Where each message stands, told from the table alone by the token that only it has: `billing`, or `billing+leaks`, or

@@ -7,6 +7,7 @@ import { emptyManifest, encodeManifest, type Manifest, withSegment } from '../..
 import { newBaseId, rebuild } from '../../../src/ledger/rebuild.ts';
 import type { World } from '../../../src/ledger/world.ts';
 import { encodeEntries, encodeFeatures } from '../../../src/model/codec-entries.ts';
+import { sumCounts } from '../../../src/model/sum-counts.ts';
 import { createDirectoryStore } from '../../../src/store/directory.ts';
 import { keys } from '../../../src/store/keys.ts';
 import type { Store } from '../../../src/store/store.ts';
@@ -44,7 +45,7 @@ async function prepare(): Promise<void> {
     segments: segmentIds.slice(0, inBase).map((id, s) => ({ id, version: s + 1 })),
   };
   await inner.put(keys.manifest, encodeManifest(from));
-  const counts = countsOf(generated, inBase * batch);
+  const counts = sumCounts(schema, [{ counts: countsOf(generated, inBase * batch), sign: 1 }], 'base');
   const id = newBaseId(world, from);
   const made = await rebuild(world, desk, schema, from, counts, { id, renames: {}, fitModel: null });
   if (!made.isCommitted) throw new Error('the base was not committed');
