@@ -27,7 +27,6 @@ export function createExtractor(desk: Desk, tokenKey: Uint8Array): Extractor {
   );
   const valueIndex = schema.slots.map((slot) => new Map(slot.values.map((value, index) => [value, index])));
   const readTokens = createTokenReader(createSipHash(tokenKey));
-  const scratch = new Float64Array(Math.max(...schema.regions.map((region) => region.tokensMax)));
 
   return {
     schema,
@@ -36,21 +35,26 @@ export function createExtractor(desk: Desk, tokenKey: Uint8Array): Extractor {
       const folded = [foldText(subject), foldText(body)] as const;
       const input = { message, text: body, foldedText: folded.join('\n') };
       const values = slots.map((slot, index) => valueIndex[index]!.get(slot.read(input)) ?? 1);
-      const { regions } = readTokens(...folded, false);
-      return {
-        schema: schema.id,
-        slots: values,
-        regions: regions.map((tokens) => sortTokens(tokens, scratch)),
-      };
+      const { regions, lengths } = readTokens(...folded, false);
+      // One piece of memory for all: each costs the time of some twenty tokens, and as much to give back.
+      const all = new Float64Array(lengths.reduce((sum, length) => sum + length, 0));
+      let from = 0;
+      const sorted = regions.map((tokens, region) => {
+        const length = lengths[region]!;
+        const own = all.subarray(from, from + length);
+        from += length;
+        return sortTokens(tokens, length, own);
+      });
+      return { schema: schema.id, slots: values, regions: sorted };
     },
     words(message) {
       const { subject, body } = textsOf(message, desk);
       const { regions, texts } = readTokens(foldText(subject), foldText(body), true);
       const words = new Map<string, string>();
-      regions.forEach((tokens, region) => {
+      texts.forEach((all, region) => {
         const { id } = schema.regions[region]!;
-        tokens.forEach((token, i) => {
-          words.set(`${id}:${tokenHex(token)}`, texts[region]![i]!);
+        all.forEach((text, i) => {
+          words.set(`${id}:${tokenHex(regions[region]![i]!)}`, text);
         });
       });
       return words;

@@ -116,16 +116,25 @@ function recipientOf(message: Message, aliases: ReadonlySet<string>): string {
   return 'other';
 }
 
+const rememberedDomainsMax = 1000;
+
 /** Own and declared classes, by domain. A declared domain covers its subdomains; an own domain also covers whatever
  *  shares its registrable domain (Public Suffix List, private section included, so that two customers of one shared
  *  host are not taken for one). */
 function senderClassIn(desk: Desk): (domain: string) => string {
   const own = new Set(desk.ownDomains.map((domain) => registrableOf(domain) ?? domain));
+  const classOf = (domain: string) => {
+    if (own.has(registrableOf(domain) ?? domain)) return 'own';
+    return desk.senderClasses.find((each) => each.domains.some((suffix) => isUnder(domain, suffix)))?.id;
+  };
+  // Much mail comes from few domains.
+  const known = new Map<string, string>();
   return (domain) => {
     if (domain === '') return 'missing';
-    if (own.has(registrableOf(domain) ?? domain)) return 'own';
-    const found = desk.senderClasses.find((each) => each.domains.some((suffix) => isUnder(domain, suffix)));
-    return found?.id ?? 'other';
+    const found = known.get(domain) ?? classOf(domain) ?? 'other';
+    if (known.size >= rememberedDomainsMax) known.clear();
+    known.set(domain, found);
+    return found;
   };
 }
 
@@ -156,6 +165,13 @@ interface DayAndHour {
   readonly hour: string;
 }
 
+/** Clocks are set forward and back at full quarters of an hour (Lord Howe Island's by half an hour). */
+const quarterMs = 15 * 60 * 1000;
+/** ECMA-262, section "Time Values and Time Range". */
+const timeMsMax = 8.64e15;
+/** Enough for a day and a half of waiting mail. */
+const rememberedQuartersMax = 150;
+
 /** Weekday and quarter of the day on the desk's own clock. */
 function dayAndHourIn(timeZone: string): (sentAtMs: number | null) => DayAndHour {
   const missing = { day: 'missing', hour: 'missing' };
@@ -165,18 +181,25 @@ function dayAndHourIn(timeZone: string): (sentAtMs: number | null) => DayAndHour
     hour: '2-digit',
     hourCycle: 'h23',
   });
-  // Two slots ask for one time.
-  let last = { sentAtMs: Number.NaN, found: missing };
-  return (sentAtMs) => {
-    if (sentAtMs === null || !(Math.abs(sentAtMs) <= 8.64e15)) return missing;
-    if (last.sentAtMs === sentAtMs) return last.found;
-    const parts = format.formatToParts(sentAtMs);
+  const read = (ms: number): DayAndHour => {
+    const parts = format.formatToParts(ms);
     const part = (type: string) => parts.find((each) => each.type === type)?.value ?? '';
-    const found = {
-      day: part('weekday').toLowerCase(),
-      hour: hourBands[Math.floor(Number(part('hour')) / 6)]!,
-    };
-    last = { sentAtMs, found };
-    return found;
+    return { day: part('weekday').toLowerCase(), hour: hourBands[Math.floor(Number(part('hour')) / 6)]! };
+  };
+  // Asking the clock of a zone takes as long as all other slots together, and mail that is routed was sent just now.
+  const byQuarter = new Map<number, DayAndHour | null>();
+  return (sentAtMs) => {
+    if (sentAtMs === null || !(Math.abs(sentAtMs) <= timeMsMax)) return missing;
+    const quarter = Math.floor(sentAtMs / quarterMs);
+    let known = byQuarter.get(quarter);
+    if (known === undefined) {
+      if (byQuarter.size >= rememberedQuartersMax) byQuarter.clear();
+      const first = read(quarter * quarterMs);
+      const last = read(Math.min((quarter + 1) * quarterMs - 1, timeMsMax));
+      // Old local times were off by minutes and seconds: such a quarter can belong to two hours, and is not remembered.
+      known = first.day === last.day && first.hour === last.hour ? first : null;
+      byQuarter.set(quarter, known);
+    }
+    return known ?? read(sentAtMs);
   };
 }

@@ -13,9 +13,12 @@ import {
   wordStride,
 } from './vocabulary.ts';
 
-/** The distinct tokens of a message by region, in reading order, with their texts when these were asked for. */
+/** The distinct tokens of a message by region, in reading order, with their texts when these were asked for. Good until the
+ *  next message is read. */
 export interface ReadTokens {
+  /** Longer than what was read: the tokens are the first `lengths[region]`. */
   readonly regions: readonly Float64Array[];
+  readonly lengths: readonly number[];
   readonly texts: readonly (readonly string[])[];
 }
 
@@ -96,6 +99,6 @@ export function createTokenReader(sipHash: SipHash): TokenReader {
     eachWord(subject, takeWord);
     eachWord(body, takeWord);
     takePair(previous, lastWord);
-    return { regions: taken.map((tokens, region) => tokens.slice(0, lengths[region])), texts: texts ?? [] };
+    return { regions: taken, lengths, texts: texts ?? [] };
   };
 }

@@ -176,6 +176,41 @@ describe('slots', () => {
     expect(slotsOf(mailOf(), tokyo)).toMatchObject({ day: 'mon', hour: 'evening' });
   });
 
+  it.each([
+    // Forward and back by half an hour: 4 October and 5 April 2026, 15:30 and 15:00 UTC.
+    ['Australia/Lord_Howe', Date.UTC(2026, 9, 3, 12), Date.UTC(2026, 9, 3, 19)],
+    ['Australia/Lord_Howe', Date.UTC(2026, 3, 4, 12), Date.UTC(2026, 3, 4, 19)],
+    // A quarter of an hour off the full hour; a day left out; a clock 44 minutes and 30 seconds behind.
+    ['Asia/Kathmandu', Date.UTC(2026, 6, 1), Date.UTC(2026, 6, 2)],
+    ['Pacific/Apia', Date.UTC(2011, 11, 29), Date.UTC(2011, 11, 31)],
+    ['Africa/Monrovia', Date.UTC(1971, 5, 1), Date.UTC(1971, 5, 2)],
+    ['Europe/London', Date.UTC(2026, 9, 24, 22), Date.UTC(2026, 9, 25, 4)],
+  ])('know weekday and hour in %s at every minute', (timeZone, fromMs, toMs) => {
+    const clock = new Intl.DateTimeFormat('en-US', {
+      timeZone,
+      weekday: 'short',
+      hour: 'numeric',
+      hourCycle: 'h23',
+    });
+    const extractor = createExtractor({ ...exampleDesk, timeZone }, exampleKey);
+    const at = (id: string) => extractor.schema.slots.findIndex((slot) => slot.id === id);
+    const valueAt = (slots: readonly number[], id: string) =>
+      extractor.schema.slots[at(id)]!.values[slots[at(id)]!];
+    for (let ms = fromMs; ms < toMs; ms += 59_800) {
+      const [, day, hour] = /([A-Z][a-z]{2})\D+(\d+)/.exec(clock.format(ms))!;
+      const { slots } = extractor.extract(mailOf({ sentAtMs: ms }));
+      expect(valueAt(slots, 'day')).toBe(day.toLowerCase());
+      expect(valueAt(slots, 'hour')).toBe(
+        ['night', 'morning', 'afternoon', 'evening'][Math.floor(Number(hour) / 6)],
+      );
+    }
+  });
+
+  it('take a time at the calendar’s very end', () => {
+    // 13 September 275760 is a Saturday; 00:00 UTC is 01:00 in Britain's summer.
+    expect(slotsOf(mailOf({ sentAtMs: 8.64e15 }))).toMatchObject({ day: 'sat', hour: 'night' });
+  });
+
   it('take a shared host’s customers for two senders, though they share its domain', () => {
     // github.io stands in the private section of the Public Suffix List.
     const desk = { ...exampleDesk, ownDomains: ['fenmark.github.io'] };

@@ -3,7 +3,7 @@ import { describe, expect, it } from 'vitest';
 import { sortTokens } from '../../src/features/sort-tokens.ts';
 
 const sorted = (tokens: readonly number[]) => [
-  ...sortTokens(Float64Array.from(tokens), new Float64Array(tokens.length)),
+  ...sortTokens(Float64Array.of(...tokens, 7, 7), tokens.length, new Float64Array(tokens.length)),
 ];
 
 describe('sorting tokens', () => {
