@@ -149,3 +149,15 @@ export function countingStore(inner: Store): { store: Store; calls: Record<strin
   });
   return { store, calls };
 }
+
+/** Runs `act` until it puts a key that starts so: its process dies there, that call never returns. */
+export function dieAt(inner: Store, prefix: string, act: (store: Store) => Promise<unknown>): Promise<void> {
+  return new Promise((died) => {
+    const put: Store['put'] = (key, body, options) => {
+      if (!key.startsWith(prefix)) return inner.put(key, body, options);
+      died();
+      return new Promise(() => {});
+    };
+    void act({ ...inner, put });
+  });
+}

@@ -8,7 +8,7 @@ import { restoreVersion } from '../../src/ledger/restore.ts';
 import { undoConfirmations } from '../../src/ledger/undo.ts';
 import { createMemoryStore } from '../../src/store/memory.ts';
 import type { Store } from '../../src/store/store.ts';
-import { claim, desk, fold, keysOf, schema, standings, testWorld, tokenOf } from './fixture.ts';
+import { claim, desk, dieAt, fold, keysOf, schema, standings, testWorld, tokenOf } from './fixture.ts';
 import { tokensIn } from './tokens-in.ts';
 
 /** Runs `act` once, just before the first put of a key that starts so. */
@@ -24,18 +24,6 @@ function before(inner: Store, prefix: string, act: () => Promise<void>): Store {
       return inner.put(key, body, options);
     },
   };
-}
-
-/** Runs `act` until it puts a key that starts so: its process dies there, that call never returns. */
-function dieAt(inner: Store, prefix: string, act: (store: Store) => Promise<unknown>): Promise<void> {
-  return new Promise((died) => {
-    const put: Store['put'] = (key, body, options) => {
-      if (!key.startsWith(prefix)) return inner.put(key, body, options);
-      died();
-      return new Promise(() => {});
-    };
-    void act({ ...inner, put });
-  });
 }
 
 const dayMs = 24 * 3600_000;

@@ -5,7 +5,7 @@ import { compact } from '../../src/ledger/compaction.ts';
 import { foldClaims } from '../../src/ledger/fold.ts';
 import { loadModel } from '../../src/ledger/load-model.ts';
 import { recount } from '../../src/ledger/recount.ts';
-import { claim, desk, featuresOf, fold, keysOf, schema, standings, testWorld } from './fixture.ts';
+import { claim, desk, dieAt, featuresOf, fold, keysOf, schema, standings, testWorld } from './fixture.ts';
 
 type TestWorld = ReturnType<typeof testWorld>;
 const messages = ['m1', 'm2', 'm3'];
@@ -167,6 +167,63 @@ describe('after a change of schema', () => {
       'late-8': 'moving',
     });
   });
+
+  it.each([
+    ['ends', null],
+    ['dies before its segment is put', 'model/segments/'],
+    ['dies before its commit', 'model/manifest.json'],
+  ] as const)(
+    'a fold under the old schema that %s between any two calls is counted once all the same',
+    async (_, deadAt) => {
+      const claims = [claim('m1', 'billing', 30), claim('m4', 'moving', 31)];
+      const widened = claims.map((c) => ({
+        ...c,
+        features: { ...c.features, schema: wider.id, slots: [...c.features.slots, 2] },
+      }));
+      let calls = 0;
+      for (let at = 0; at <= calls; at++) {
+        const world = await counted();
+        calls = 0;
+        const strike = async () => {
+          calls += 1;
+          if (calls - 1 !== at) return;
+          if (deadAt === null) await fold(world, ...claims);
+          else await dieAt(world.store, deadAt, (store) => fold({ ...world, store }, ...claims));
+        };
+        const { get, put, head } = world.store;
+        const store: TestWorld['store'] = {
+          ...world.store,
+          get: async (...given) => {
+            await strike();
+            return get(...given);
+          },
+          put: async (...given) => {
+            await strike();
+            return put(...given);
+          },
+          head: async (...given) => {
+            await strike();
+            return head(...given);
+          },
+        };
+        const repaired = await recount({ ...world, store }, desk, wider, { repair: true, reread });
+        expect(repaired.repair, `at call ${at}`).toBe('repaired');
+        // Delivered again, by a process that has the new schema.
+        world.clock.ms += 3_600_000;
+        const outcomes = await foldClaims(world, desk, wider, widened);
+        for (const { kind } of outcomes) expect(['folded', 'already'], `at call ${at}`).toContain(kind);
+        const { scorer } = await loadModel(world, desk, wider, null);
+        // m1 billing, m2 leaks, m4 moving; m3 could not be read.
+        expect([...scorer.messages], `at call ${at}`).toEqual([1, 1, 0, 1]);
+        expect(await recount(world, desk, wider)).toMatchObject({
+          differences: [],
+          fault: null,
+          messages: 3,
+        });
+      }
+      expect(calls).toBeGreaterThan(15);
+    },
+  );
 
   it('everything but that recount refuses to mix the two', async () => {
     const world = await counted();
