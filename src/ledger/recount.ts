@@ -6,6 +6,7 @@ import { decodeFeatures, encodeFeatures } from '../model/codec-entries.ts';
 import type { CellDifference, EncodedCounts, Entry } from '../model/counts.ts';
 import { diffCounts } from '../model/difference.ts';
 import { createTally } from '../model/tally.ts';
+import { keys } from '../store/keys.ts';
 import { createAbsorbedReader, type HasAbsorbed } from './absorbed.ts';
 import { readManifest } from './commit.ts';
 import { columnAsOf, type History, isTombstone, type Stored } from './history.ts';
@@ -33,7 +34,7 @@ export interface RecountResult {
   readonly messages: number;
   /** Cell by cell: `left` is the table, `right` the recount. */
   readonly differences: readonly CellDifference[];
-  /** Why the table could not be read; null when it could. */
+  /** Why the table could not be read or compared; null when it could. */
   readonly fault: Fault | null;
   /** Messages that are left out under the new schema, since their raw form is gone. */
   readonly unread: number;
@@ -72,7 +73,11 @@ async function recountUndisturbed(
     const isGone = fault?.code === 'object-missing' && after.version !== manifest.version;
     const isDisturbed = after.erasedAtVersion > manifest.version || isOutdated(after, manifest.version);
     const isLastAttempt = attempt + 1 >= bounds.recountAttemptsMax;
-    if ((isGone || isDisturbed) && !isLastAttempt) continue;
+    if (isGone || isDisturbed) {
+      if (!isLastAttempt) continue;
+      const found = { version: manifest.version, messages, differences: [], fault: disturbed, unread };
+      return { ...found, repair: options.repair ? 'lost-race' : 'none' };
+    }
     const max = options.differencesMax ?? bounds.faultsListedMax;
     const differences = table && !hasSameBytes(table, counts) ? diffCounts(table, counts, max) : [];
     const found = { version: manifest.version, messages, differences, fault, unread };
@@ -96,6 +101,14 @@ async function recountUndisturbed(
     }
   }
 }
+
+/** No pass went by without an erasure or a restore: nothing was compared, and nothing may be built on what was counted. */
+const disturbed: Fault = {
+  code: 'contended',
+  place: keys.manifest,
+  expected: 'one recount without an erasure or a restore',
+  got: `one during each of ${bounds.recountAttemptsMax}`,
+};
 
 /** Equal counts have equal bytes. */
 function hasSameBytes(a: EncodedCounts, b: EncodedCounts): boolean {

@@ -2,6 +2,7 @@ import { describe, expect, it } from 'vitest';
 import { bounds } from '../../src/bounds.ts';
 import type { Schema } from '../../src/features/schema.ts';
 import { compact } from '../../src/ledger/compaction.ts';
+import { eraseMessages } from '../../src/ledger/erase.ts';
 import { foldClaims } from '../../src/ledger/fold.ts';
 import { loadModel } from '../../src/ledger/load-model.ts';
 import { recount } from '../../src/ledger/recount.ts';
@@ -75,6 +76,36 @@ describe('a recount', () => {
     const [first, second] = await keysOf(world.store, 'model/segments/');
     await overwrite(world, second, first);
     expect((await recount(world, desk, schema)).differences).not.toEqual([]);
+  });
+
+  it('that is disturbed by an erasure in every pass compares nothing and repairs nothing', async () => {
+    const world = await counted();
+    const doomed = Array.from({ length: 2 * bounds.recountAttemptsMax }, (_, i) => `doomed-${i}`);
+    await fold(world, ...doomed.map((message) => claim(message, 'moving', 3)));
+    await compact(world, desk, schema);
+    const left = [...doomed];
+    const store: TestWorld['store'] = {
+      ...world.store,
+      list: async function* (prefix, options) {
+        // Once it has read which version to compare.
+        if (prefix === 'histories/') await eraseMessages(world, schema, [left.shift() as string]);
+        yield* world.store.list(prefix, options);
+      },
+    };
+    const contended = { fault: { code: 'contended' }, differences: [] };
+    expect(await recount({ ...world, store }, desk, schema)).toMatchObject({ ...contended, repair: 'none' });
+    expect(left.length).toBe(bounds.recountAttemptsMax);
+    expect(await recount({ ...world, store }, desk, schema, { repair: true })).toMatchObject({
+      ...contended,
+      repair: 'lost-race',
+    });
+    expect(left).toEqual([]);
+    expect(await recount(world, desk, schema)).toMatchObject({ fault: null, differences: [], messages: 3 });
+    expect(await standings(world, [...messages, ...doomed])).toEqual({
+      m1: 'leaks',
+      m2: 'leaks',
+      m3: 'leaks',
+    });
   });
 });
 

@@ -45,7 +45,9 @@ async function runRecount(flags: Flags): Promise<Answer> {
 function describe(result: RecountResult, isRight: boolean): string {
   const lines = [`counted ${plural(result.messages, 'message')} again, as of version ${result.version}`];
   if (isRight) lines.push('0 cells differ: the table is what its confirmations say');
-  if (result.fault !== null)
+  if (result.fault?.code === 'contended')
+    lines.push('not compared: messages were erased or a version restored during every pass; try again');
+  else if (result.fault !== null)
     lines.push(
       `the table cannot be read: ${result.fault.code} at ${result.fault.place}, expected ${result.fault.expected}, got ${result.fault.got}`,
     );
