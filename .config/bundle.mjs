@@ -1,6 +1,7 @@
 // Bundles the command line and the Lambda functions: one self-contained ES module each.
 //   node .config/bundle.mjs               everything, into dist/
 //   node .config/bundle.mjs --functions   only the functions, with a table of their sizes
+//   ... --only=NAME                       of them one
 //   ... --into=FOLDER                     instead of dist/
 import { existsSync, mkdirSync, readdirSync, rmSync } from 'node:fs';
 import { join, relative, resolve } from 'node:path';
@@ -76,8 +77,9 @@ async function bundleTool(out, from) {
 
 if (import.meta.url === pathToFileURL(process.argv[1]).href) {
   const isFunctionsOnly = process.argv.includes('--functions');
+  const only = process.argv.find((word) => word.startsWith('--only='))?.slice('--only='.length);
   const [sizes] = await Promise.all([
-    Promise.all(functions.map(bundleFunction)),
+    Promise.all(functions.filter((name) => only === undefined || name === only).map(bundleFunction)),
     ...(isFunctionsOnly ? [] : Object.entries(entries).map(([out, from]) => bundleTool(out, from))),
   ]);
   if (isFunctionsOnly) {

@@ -38,6 +38,8 @@ export interface Watched {
 /** A page on which everything unwanted is on record. `own`: what a URL of its own begins with. */
 export async function openWatched(context: BrowserContext, own: () => string): Promise<Watched> {
   const page = await context.newPage();
+  // A machine with other work to do takes its time; a test that hangs has a limit of its own.
+  page.setDefaultTimeout(120_000);
   const troubles: string[] = [];
   const outside: string[] = [];
   page.on('console', (message) => {

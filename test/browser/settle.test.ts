@@ -1,7 +1,7 @@
 import type { Browser, BrowserContext, Page } from 'playwright-core';
 import { afterAll, afterEach, beforeAll, beforeEach, describe, expect, it } from 'vitest';
 import { recount } from '../../src/ledger/recount.ts';
-import { weighMessage } from '../../src/settle/likelihood.ts';
+import { posteriorOf } from '../../src/model/posterior-of.ts';
 import { heldOf } from '../../src/settle/pending.ts';
 import { type SettleServer, startSettleServer } from '../../src/settle/settle-server.ts';
 import { ticketKeyOf } from '../../src/settle/ticket.ts';
@@ -18,6 +18,8 @@ import {
   screens,
   type Watched,
 } from './browser.ts';
+import { hostileIds, putHostileMail, takeHostileMail } from './hostile-mail.ts';
+import { comeIn, expectHostileMailTame, ready, settleByKey, shownId } from './settling.ts';
 
 const settled = 100;
 const routed = 420;
@@ -59,21 +61,8 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
     await context.close();
   });
 
-  async function comeIn(by: string): Promise<void> {
-    await page.goto(server.linkFor(by));
-    await ready('.door button:focus');
-    await page.keyboard.press('Enter');
-    await page.waitForURL(/\/message\?m=/);
-    await ready();
-  }
-
-  /** A key pressed before the page listens is lost, to a person as to a test. */
-  async function ready(selector = '#keys:not([hidden])'): Promise<void> {
-    await page.waitForSelector(selector, { state: 'attached' });
-  }
-
+  const enter = (by: string) => comeIn(page, server.linkFor(by));
   const waitingIds = async () => (await createWaitingList(desk.world).list()).map(({ message }) => message);
-  const shownId = () => new URL(page.url()).searchParams.get('m') as string;
 
   it.each(screens)(
     'is clean, whole and accessible at $width px, $colorScheme',
@@ -82,9 +71,11 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
       await page.emulateMedia({ colorScheme });
       const name = `${width}-${colorScheme}`;
       await page.goto(server.linkFor(`looker ${name}`));
+      await ready(page, '.door button:focus');
       await expectAccessible(page);
       await page.keyboard.press('Enter');
       await page.waitForURL(/\/message\?m=/);
+      await ready(page);
       await keepScreenshot(page, `settle-message-${name}`);
       await expectAccessible(page);
       await expectNoSideways(page);
@@ -105,7 +96,7 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
   );
 
   it('lets single keys be turned off, and works without them', async () => {
-    await comeIn('no keys');
+    await enter('no keys');
     await page.click('#keys');
     const here = page.url();
     await page.keyboard.press('2');
@@ -137,10 +128,11 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
     const again = await context.newPage();
     await again.goto(link);
     await page.bringToFront();
-    await ready('.door button:focus');
+    await ready(page, '.door button:focus');
     await page.keyboard.press('Enter');
     await page.waitForURL(/\/message\?m=/);
     await again.bringToFront();
+    await ready(again, '.door button:focus');
     await again.keyboard.press('Enter');
     await again.getByText('used before').waitFor();
     desk.setNow(Date.UTC(2026, 4, 8));
@@ -150,68 +142,12 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
   }, 60_000);
 
   it('runs, fetches and settles nothing that hostile mail asks for', async () => {
-    const long = 'w'.repeat(1_000_000);
-    const evils: Record<string, string> = {
-      html: [
-        'Content-Type: text/html; charset=utf-8',
-        '',
-        '<html><head><script>alert(1)</script><style>body{display:none}</style><base href="http://evil.example/"></head>',
-        '<body onload="alert(2)"><img src="http://evil.example/a.png" onerror="alert(3)">',
-        '<form action="/settle" method="post"><input name="queue" value="billing"><button autofocus>x</button></form>',
-        '<a href="javascript:alert(4)">please click 1</a><meta http-equiv="refresh" content="0;url=http://evil.example/"></body></html>',
-      ].join('\r\n'),
-      text: [
-        'Content-Type: text/plain; charset=utf-8',
-        '',
-        '</div></article><script>alert(5)</script><img src=http://evil.example/b.png onerror=alert(6)>',
-        '\u202egnp.exe \u2066\u2067 http://evil.example/ <iframe src=//evil.example></iframe>',
-        long,
-      ].join('\r\n'),
-    };
-    for (const [name, body] of Object.entries(evils)) {
-      const mail = `From: "<script>alert(7)</script>" <e@evil.example>\r\nTo: contact@fenmarkwater.example\r\nSubject: <script>alert(8)</script>\u202e\r\nMIME-Version: 1.0\r\n${body}`;
-      await desk.store.put(`${keys.inbound}mail/evil-${name}`, Buffer.from(mail), {
-        contentType: 'message/rfc822',
-        metadata: {
-          'tallypost-decision': 'held',
-          'tallypost-reason': 'unsure',
-          'tallypost-at': `2020-01-01T00:00:0${name.length}.000Z`,
-        },
-      });
-    }
-    const form = JSON.stringify({
-      form: 'contact',
-      fields: { '<b>name</b>': '<script>alert(9)</script>\u202e', message: `${'x '.repeat(50)}\u0000` },
-    });
-    await desk.store.put(`${keys.inbound}forms/evil.json`, Buffer.from(form), {
-      contentType: 'application/json',
-      metadata: {
-        'tallypost-decision': 'held',
-        'tallypost-reason': 'unsure',
-        'tallypost-at': '2020-01-01T00:00:09.000Z',
-      },
-    });
-    const ids = ['mail/evil-html', 'mail/evil-text', 'forms/evil.json'];
-    await comeIn('brave');
-    expect(ids).toContain(shownId());
-    for (const id of ids) {
-      await page.goto(`${server.origin}/message?m=${encodeURIComponent(id)}`);
-      expect(
-        await page
-          .locator(
-            'main script, main style, main img, main iframe, main form form, main a[href^="javascript"]',
-          )
-          .count(),
-      ).toBe(0);
-      expect(await page.locator('h2#where').isVisible()).toBe(true);
-      expect(await page.content()).not.toMatch(/[\u202a-\u202e\u2066-\u2069]/);
-      await page.setViewportSize({ width: 360, height: 700 });
-      await expectNoSideways(page);
-      await expectAccessible(page);
-      await keepScreenshot(page, `settle-hostile-${id.replace(/\W/g, '-')}`);
-    }
+    await putHostileMail(desk.store);
+    await enter('brave');
+    expect(hostileIds).toContain(shownId(page));
+    await expectHostileMailTame(page, server.origin);
     expect(await heldOf(desk.store, 'brave')).toBeNull();
-    for (const id of ids) await desk.store.delete(keys.inbound + id);
+    await takeHostileMail(desk.store);
   }, 120_000);
 
   it(`settles ${settled} messages by keyboard, which folds exactly ${settled} and makes the next ${next} better`, async () => {
@@ -220,31 +156,25 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
     );
     const later = desk.messages.slice(routed);
     const accuracy = async () => {
-      const bench = await desk.openBench();
+      const { model, extractor } = await desk.openBench();
       let right = 0;
       for (const each of later) {
-        const message = await desk.read(each);
-        if (weighMessage(bench, message).queues[0]?.queue === each.trueQueue) right += 1;
+        const { queues, probability } = posteriorOf(model.scorer, extractor.extract(await desk.read(each)));
+        const likeliest = probability.indexOf(Math.max(...probability));
+        if (queues[likeliest] === each.trueQueue) right += 1;
       }
       return right / later.length;
     };
     const before = await accuracy();
     const waitingBefore = await waitingIds();
     expect(waitingBefore.length).toBeGreaterThanOrEqual(settled);
-    await comeIn('keyboard');
+    await enter('keyboard');
     const done: string[] = [];
     while (done.length < settled) {
-      const id = shownId();
-      const queue = truth.get(id) as string;
-      const key = await page.locator(`.choices button[value="${queue}"]`).getAttribute('data-key');
-      if (key === 'none') {
-        for (let i = 0; i < 10; i += 1) await page.keyboard.press('ArrowDown');
-        await page.keyboard.press('Enter');
-      } else await page.keyboard.press(key as string);
-      await page.waitForURL((url) => url.searchParams.get('m') !== id, { waitUntil: 'domcontentloaded' });
+      const id = shownId(page);
+      await settleByKey(page, truth.get(id) as string);
       // The strip stands on the next message and on nothing that went wrong.
       expect(await page.locator('main').textContent()).toContain('Take it back');
-      await ready();
       done.push(id);
     }
     await keepScreenshot(page, 'settle-after-100');

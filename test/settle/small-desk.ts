@@ -1,14 +1,12 @@
-import { createExtractor } from '../../src/features/extractor.ts';
 import type { HandlerDeps, LogLine } from '../../src/handlers/handler-deps.ts';
 import { createDeskLoader } from '../../src/handlers/load-desk.ts';
 import { createLocalRunner } from '../../src/handlers/local-runner.ts';
 import { readMessage } from '../../src/handlers/read-message.ts';
-import { type LoadedModel, loadModel } from '../../src/ledger/load-model.ts';
+import { createBenchOpener } from '../../src/handlers/settle-bench.ts';
 import type { World } from '../../src/ledger/world.ts';
 import { parseForm } from '../../src/message/form.ts';
 import { parseMail } from '../../src/message/mail.ts';
 import type { Message } from '../../src/message/message.ts';
-import type { Bench } from '../../src/settle/likelihood.ts';
 import { keys } from '../../src/store/keys.ts';
 import { createMemoryStore } from '../../src/store/memory.ts';
 import type { Store } from '../../src/store/store.ts';
@@ -90,16 +88,6 @@ export async function playSmallDesk(
     readMessage: (key) => readParsed(world, key),
     read: async ({ bytes, contentType }) =>
       contentType === 'application/json' ? parseForm(bytes) : parseMail(bytes, { nowMs: world.nowMs }),
-  };
-}
-
-function createBenchOpener({ world, loadDesk, tokenKey }: HandlerDeps) {
-  let cached: LoadedModel | null = null;
-  return async (): Promise<Bench> => {
-    const file = await loadDesk();
-    const extractor = createExtractor(file, tokenKey);
-    cached = await loadModel(world, file, extractor.schema, cached);
-    return { desk: cached.desk, extractor, model: cached };
   };
 }
 
