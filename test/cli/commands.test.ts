@@ -234,6 +234,21 @@ describe('undo', () => {
     expect(await recountOf()).toMatchObject({ isRight: true, messages: 6 });
     expect((await runCli(...args)).json()).toMatchObject({ messages: 0 });
   });
+  it('says how what was right can be confirmed again, and it can', async () => {
+    await learn(3);
+    const period = ['--since', '2026-03-01', '--until', '2026-03-02'];
+    const undone = await runCli('undo', ...at, store, '--by', 'ann', ...period);
+    expect(undone.out).toContain('must be confirmed with a later time');
+    expect(await recountOf()).toMatchObject({ messages: 2 });
+    const confirm = (time: string) =>
+      runCli('confirm', ...at, store, 'm0.eml', 'billing', '--by', 'ann', '--at', time);
+    await confirm('2026-03-01T00:00:00.000Z');
+    await runCli('run', ...at, store);
+    expect(await recountOf()).toMatchObject({ messages: 2 });
+    await confirm('2026-03-01T00:00:01.000Z');
+    await runCli('run', ...at, store);
+    expect(await recountOf()).toMatchObject({ isRight: true, messages: 3 });
+  });
   it('leaves the confirmations of others', async () => {
     await learn(3);
     const ran = await runCli(

@@ -36,7 +36,10 @@ async function undo(flags: Flags): Promise<Answer> {
   const what = `${plural(result.confirmations, 'confirmation')} of ${flags.by} on ${plural(result.messages, 'message')}`;
   const text = {
     'dry-run': `${what} would be taken back`,
-    undone: `${what} taken back; each message counts for its newest confirmation that is left, if there is one`,
+    undone: [
+      `${what} taken back; each message counts for its newest confirmation that is left, if there is one`,
+      'delivered again they change nothing: what was right among them must be confirmed with a later time',
+    ].join('\n'),
     unfinished: `${what} taken back so far; the next compaction goes on, or run this again`,
   }[result.kind];
   return { json: result, text, exitCode: result.isDone ? exitCodes.done : exitCodes.failed };
