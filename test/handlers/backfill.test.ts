@@ -1,9 +1,12 @@
 import { describe, expect, it } from 'vitest';
 import type { Desk } from '../../src/desk/desk.ts';
 import { readDesk } from '../../src/desk/read-desk.ts';
+import { createExtractor } from '../../src/features/extractor.ts';
 import { createBackfillHandler } from '../../src/handlers/backfill.ts';
 import { createConfirmHandler } from '../../src/handlers/confirm.ts';
 import type { HandlerDeps } from '../../src/handlers/handler-deps.ts';
+import { loadModel } from '../../src/ledger/load-model.ts';
+import { recount } from '../../src/ledger/recount.ts';
 import { createMemoryStore } from '../../src/store/memory.ts';
 import type { Store } from '../../src/store/store.ts';
 
@@ -122,6 +125,126 @@ describe('backfill of labelled mail', () => {
     expect(results[0]!.resultCode).toBe('PermanentFailure');
     expect(results[0]!.resultString).toMatch(why);
     expect(await dropsOf(store)).toEqual([]);
+  });
+
+  // As documented: Amazon S3 User Guide, "Invoke AWS Lambda function", and AWS Lambda Developer Guide, "Invoke a Lambda function
+  // with Amazon S3 batch events".
+  it.each<[string, object, object]>([
+    [
+      '1.0',
+      { id: 'f3cc4f60-61f6-4a2b-8a21-d07600c373ce' },
+      { s3VersionId: '1', s3BucketArn: 'arn:aws:s3:::fenmark-mail' },
+    ],
+    [
+      '2.0',
+      { id: 'f3cc4f60-61f6-4a2b-8a21-d07600c373ce', userArguments: { queue: 'careers' } },
+      { s3VersionId: null, s3Bucket: 'fenmark-mail' },
+    ],
+  ])(
+    'takes an event of schema %s as it is documented, and answers in its form',
+    async (version, itsJob, more) => {
+      const store: Store = { ...createMemoryStore(), place: 's3://fenmark-mail' };
+      await store.put('inbound/archive/billing/1.eml', utf8.encode(mail));
+      const event = {
+        invocationSchemaVersion: version,
+        invocationId: 'YXNkbGZqYWRmaiBhc2RmdW9hZHNmZGpmaGFzbGtkaGZza2RmaAo',
+        job: itsJob,
+        tasks: [{ taskId: 'dGFza2lkZ29lc2hlcmUK', s3Key: 'inbound/archive/billing/1.eml', ...more }],
+      };
+      const answer = await createBackfillHandler(depsOf(store))(event as never);
+      expect(answer).toEqual({
+        invocationSchemaVersion: version,
+        treatMissingKeysAs: 'PermanentFailure',
+        invocationId: 'YXNkbGZqYWRmaiBhc2RmdW9hZHNmZGpmaGFzbGtkaGZza2RmaAo',
+        results: [
+          {
+            taskId: 'dGFza2lkZ29lc2hlcmUK',
+            resultCode: 'Succeeded',
+            resultString: version === '1.0' ? 'billing' : 'careers',
+          },
+        ],
+      });
+      const elsewhere = structuredClone(event);
+      Object.assign(
+        elsewhere.tasks[0]!,
+        version === '1.0' ? { s3BucketArn: 'arn:aws:s3:::other' } : { s3Bucket: 'other' },
+      );
+      const refused = await createBackfillHandler(depsOf(store))(elsewhere as never);
+      expect(refused.results[0]).toMatchObject({
+        resultCode: 'PermanentFailure',
+        resultString: 'expected a key of this desk’s bucket',
+      });
+    },
+  );
+
+  it('refuses an event of a schema that it does not know', async () => {
+    const { results } = await createBackfillHandler(depsOf(createMemoryStore()))({
+      ...job('inbound/archive/billing/x.eml'),
+      invocationSchemaVersion: '3.0',
+    });
+    expect(results).toEqual([
+      {
+        taskId: 'task-1',
+        resultCode: 'PermanentFailure',
+        resultString: 'expected invocation schema 1.0 or 2.0',
+      },
+    ]);
+  });
+
+  it('finds a key whose plus stands for itself as well as one whose plus stands for a space', async () => {
+    const store = createMemoryStore();
+    await store.put('inbound/archive/billing/a+b.eml', utf8.encode(mail));
+    await store.put('inbound/archive/billing/c d.eml', utf8.encode(mail));
+    const handle = createBackfillHandler(depsOf(store));
+    for (const key of ['a+b', 'a%2Bb', 'c+d', 'c%20d'])
+      expect((await handle(job(`inbound/archive/billing/${key}.eml`))).results[0]!.resultCode).toBe(
+        'Succeeded',
+      );
+    expect((await dropsOf(store)).map(({ value }) => (value as { message: string }).message).sort()).toEqual([
+      'archive/billing/a+b.eml',
+      'archive/billing/c d.eml',
+    ]);
+  });
+
+  it('counts each message once when a job is stopped, folded half, resumed from its start and run beside itself', async () => {
+    const store = createMemoryStore();
+    const keys = Array.from(
+      { length: 40 },
+      (_, i) => `inbound/archive/${i % 3 === 0 ? 'careers' : 'billing'}/${i}.eml`,
+    );
+    for (const [i, key] of keys.entries())
+      await store.put(key, utf8.encode(mail.replace('wrong', `wrong by ${i} pounds`)));
+    const deps = depsOf(store);
+    const handle = createBackfillHandler(deps);
+    const confirm = createConfirmHandler(deps);
+    const fold = async () => {
+      const drops = await dropsOf(store);
+      return confirm({
+        Records: drops.map(({ key }) => ({
+          eventSource: 'aws:s3',
+          eventVersion: '2.1',
+          eventName: 'ObjectCreated:Put',
+          s3: { object: { key } },
+        })),
+      });
+    };
+    const run = async (part: readonly string[]) => {
+      for (const key of part) expect((await handle(job(key))).results[0]!.resultCode).toBe('Succeeded');
+    };
+    await run(keys.slice(0, 17));
+    await fold();
+    await Promise.all([run(keys), run([...keys].reverse())]);
+    await fold();
+    await run(keys);
+    await fold();
+    expect(await dropsOf(store)).toEqual([]);
+    const extractor = createExtractor(desk, deps.tokenKey);
+    const counted = await recount(deps.world, desk, extractor.schema);
+    // 0, 3, ... 39 are 14 of 40.
+    expect([counted.messages, counted.differences]).toEqual([40, []]);
+    const { scorer } = await loadModel(deps.world, desk, extractor.schema, null);
+    expect([...scorer.messages].map(Math.round)).toEqual([26, 14]);
+    expect(scorer.queues).toEqual(['billing', 'careers']);
   });
 
   it('asks to be called again when the store fails', async () => {
