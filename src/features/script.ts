@@ -33,10 +33,15 @@ const sampleChars = 1024;
 /** Japanese text is rarely less than a third kana; a Chinese text with a Japanese name stays below this. */
 const kanaShareMin = 0.1;
 
+const notAscii = /[^\0-\x7f]/;
+const latinLetter = /[A-Za-z]/;
+
 /** The script that most letters of the text's beginning are written in; `missing` without letters of any. */
 export function scriptOf(text: string): string {
-  const counts = new Map<string, number>();
   const to = Math.min(text.length, sampleChars);
+  const sample = text.slice(0, to);
+  if (!notAscii.test(sample)) return latinLetter.test(sample) ? 'latin' : 'missing';
+  const counts = new Map<string, number>();
   let latin = 0;
   for (let i = 0; i < to; i++) {
     const unit = text.charCodeAt(i);

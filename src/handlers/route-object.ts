@@ -1,7 +1,7 @@
 import { bounds } from '../bounds.ts';
 import { decide } from '../decision/decide.ts';
 import type { Decision } from '../decision/decision.ts';
-import { createSipHash } from '../features/siphash.ts';
+import { createSipHash, type SipHash } from '../features/siphash.ts';
 import type { Message } from '../message/message.ts';
 import type { Posterior } from '../model/posterior.ts';
 import { posteriorOf } from '../model/posterior-of.ts';
@@ -96,10 +96,17 @@ export function decideMessage(
   message: Message,
 ): { readonly decision: Decision; readonly posterior: Posterior } {
   const posterior = posteriorOf(model.scorer, extractor.extract(message));
-  const draw =
-    Number.parseInt(createSipHash(tokenKey).fingerprint(`look ${key}`).slice(0, 13), 16) / 16 ** 13;
+  const draw = Number.parseInt(hashUnder(tokenKey).fingerprint(`look ${key}`).slice(0, 13), 16) / 16 ** 13;
   const decision = decide({ posterior, message, desk, modelKnows: !model.isEmpty, draw });
   const isForWantOfModel =
     decision.kind === 'held' && decision.reason === 'nothing-learned' && model.fault !== null;
   return { posterior, decision: isForWantOfModel ? { ...decision, reason: 'model-unusable' } : decision };
+}
+
+const hashes = new WeakMap<Uint8Array, SipHash>();
+
+function hashUnder(tokenKey: Uint8Array): SipHash {
+  const known = hashes.get(tokenKey) ?? createSipHash(tokenKey);
+  hashes.set(tokenKey, known);
+  return known;
 }

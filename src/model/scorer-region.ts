@@ -1,7 +1,7 @@
 import type { RegionCounts } from './counts.ts';
 import { type Hits, type Own, readHits } from './hits.ts';
 import { addRegions, pickTokens } from './sparse.ts';
-import { indexTokens, rowIn, type TokenIndex } from './token-index.ts';
+import { findRows, indexTokens, rowIn, type TokenIndex } from './token-index.ts';
 
 /** A region of a served table with the entries that came after it laid over it: nothing of the table is copied. Rows are those
  *  of the table, then one for each token that only the later entries hold. */
@@ -87,6 +87,14 @@ export function locate({ base, later }: ScorerRegion, token: number): number {
   if (row >= 0 || later === null) return row;
   const at = rowIn(later.only, token);
   return at < 0 ? -1 : base.tokens.length + at;
+}
+
+/** As `locate`, of many ascending tokens at once. */
+export function locateAll(region: ScorerRegion, tokens: Float64Array, rows: Int32Array): void {
+  const { base, later } = region;
+  findRows(base, tokens, rows);
+  if (later === null) return;
+  for (let i = 0; i < tokens.length; i++) if (rows[i] < 0) rows[i] = locate(region, tokens[i]);
 }
 
 /** Fills `hits` with a row's counts by open queue, those of a message left out. */

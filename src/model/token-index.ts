@@ -32,3 +32,30 @@ export function rowIn({ tokens, density, first }: TokenIndex, token: number): nu
     if (tokens[row] >= token) return tokens[row] === token ? row : -1;
   return -1;
 }
+
+/** What was read ahead; nobody asks for it, but reads whose result goes nowhere would not be made. */
+const readAhead = new Float64Array(1);
+
+/** Rows of many tokens, -1 where there is none; ascending tokens, `rows` at least as long. Each pass reads what the next one
+ *  needs: reads that do not wait for each other overlap, and a table lies far from the processor. */
+export function findRows(
+  { tokens, density, first }: TokenIndex,
+  asked: Float64Array,
+  rows: Int32Array,
+): void {
+  const last = tokens.length - 1;
+  for (let i = 0; i < asked.length; i++) rows[i] = first[Math.floor(asked[i] * density)];
+  if (last < 0) {
+    rows.fill(-1, 0, asked.length);
+    return;
+  }
+  let sum = 0;
+  for (let i = 0; i < asked.length; i++) sum += tokens[Math.min(rows[i], last)];
+  readAhead[0] = sum;
+  for (let i = 0; i < asked.length; i++) {
+    const token = asked[i];
+    let row = rows[i];
+    while (row < last && tokens[row] < token) row++;
+    rows[i] = row <= last && tokens[row] === token ? row : -1;
+  }
+}

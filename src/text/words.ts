@@ -14,11 +14,28 @@ const firstUnspaced = /[\u0e00-\u{3ffff}]/u;
 // The root locale: dictionaries are chosen by script, and no setting of the host may change a token.
 const segmenter = new Intl.Segmenter('und', { granularity: 'word' });
 
+/** The two texts folded last. */
+let last = { text: '', folded: '' };
+let older = { text: '', folded: '' };
+
 /** Text as tokens are made from it: compatibility forms unified (NFKC), invisible code points removed, case folded.
  *  Bounded by `featureChars`; the end of a longer text is not looked at.
  *  JavaScript has no full case folding: lower-casing differs from it in the two letters mended here (Unicode 15,
  *  CaseFolding.txt, statuses C and F), besides letters that NFKC or rarity takes out of play. */
 export function foldText(text: string): string {
+  // Features and guards ask for the same subject and body in turn.
+  if (text === last.text) return last.folded;
+  if (text !== older.text) {
+    older.text = text;
+    older.folded = fold(text);
+  }
+  const found = older;
+  older = last;
+  last = found;
+  return found.folded;
+}
+
+function fold(text: string): string {
   const bounded = text.length > bounds.featureCharsMax ? text.slice(0, bounds.featureCharsMax) : text;
   if (!notAscii.test(bounded)) return bounded.toLowerCase();
   const unified = bounded.replace(tooManyMarks, '$1').normalize('NFKC').replace(ignorable, '').toLowerCase();
