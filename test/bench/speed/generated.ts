@@ -1,8 +1,9 @@
 import type { Desk } from '../../../src/desk/desk.ts';
 import type { Features, Schema } from '../../../src/features/schema.ts';
+import { decodeCounts } from '../../../src/model/codec-counts.ts';
 import type { Counts, Entry } from '../../../src/model/counts.ts';
-import { emptyCounts, epochAt, foldEntries, mergeCounts } from '../../../src/model/fold.ts';
-import { type Chance, createChance } from '../../scenario/random.ts';
+import { epochAt } from '../../../src/model/fold.ts';
+import { createTally } from '../../../src/model/tally.ts';
 
 /** Confirmed messages made of numbers, as many as wanted, each the same whenever it is asked for. */
 export interface Generated {
@@ -38,6 +39,12 @@ export const ordinary: Pick<GeneratedOptions, 'tokens' | 'vocabularies'> = {
   vocabularies: [100_000, 300_000, 30_000_000, 300_000],
 };
 
+/** 150 tokens a message, as web forms and short mails have. */
+export const short: Pick<GeneratedOptions, 'tokens' | 'vocabularies'> = {
+  tokens: [4, 44, 46, 56],
+  vocabularies: ordinary.vocabularies,
+};
+
 export function createGenerated(options: GeneratedOptions): Generated {
   const queues = Array.from({ length: options.queues }, (_, k) => `queue-${k}`);
   const schema: Schema = {
@@ -70,12 +77,13 @@ export function createGenerated(options: GeneratedOptions): Generated {
     schema,
     queues,
     message(i) {
-      const chance = createChance((i + 1) * 2_654_435);
-      const k = chance.below(queues.length);
-      const slots = [2 + chance.below(2), 2 + chance.below(3)];
+      const next = createNext(i);
+      const below = (limit: number) => Math.floor(next() * limit);
+      const k = below(queues.length);
+      const slots = [2 + below(2), 2 + below(3)];
       const regions = options.tokens.map((count, g) => {
         const words = { own: options.ownWords ?? 400, all: options.vocabularies[g] };
-        return drawTokens(chance, count, g, k, words);
+        return drawTokens(next, count, g, k, words);
       });
       const atMs = startMs + Math.floor((i / options.messages) * options.weeks * weekMs);
       return { features: { schema: schema.id, slots, regions }, queue: queues[k], atMs };
@@ -83,9 +91,25 @@ export function createGenerated(options: GeneratedOptions): Generated {
   };
 }
 
+/** sfc32 (Chris Doty-Humphrey, PractRand, public domain) seeded by a message's number: 128 bits of state, so that a million
+ *  messages do not share stretches of one sequence. */
+function createNext(seed: number): () => number {
+  let [a, b, c, counter] = [0x9e3779b9, 0x243f6a88, seed | 0, 1];
+  const next = (): number => {
+    const sum = (a + b + counter) | 0;
+    counter = (counter + 1) | 0;
+    a = b ^ (b >>> 9);
+    b = (c + (c << 3)) | 0;
+    c = (((c << 21) | (c >>> 11)) + sum) | 0;
+    return (sum >>> 0) / 2 ** 32;
+  };
+  for (let i = 0; i < 12; i++) next();
+  return next;
+}
+
 /** Zipf's law with exponent 1: rank = V^u for uniform u. */
 function drawTokens(
-  chance: Chance,
+  next: () => number,
   count: number,
   region: number,
   queue: number,
@@ -93,8 +117,8 @@ function drawTokens(
 ): Float64Array {
   const found = new Set<number>();
   while (found.size < count) {
-    const isOwn = chance.next() < ownShare;
-    const rank = Math.floor((isOwn ? words.own : words.all) ** chance.next());
+    const isOwn = next() < ownShare;
+    const rank = Math.floor((isOwn ? words.own : words.all) ** next());
     found.add(scatter(rank, isOwn ? queue + 1 : 0, region));
   }
   return Float64Array.from(found).sort();
@@ -122,17 +146,7 @@ export function cellsOf(counts: Counts): number {
 
 /** Counts of the first `count` messages. */
 export function countsOf(generated: Generated, count: number): Counts {
-  let counts = emptyCounts(generated.schema);
-  let pending = counts;
-  for (let at = 0; at < count; at += 500) {
-    const size = Math.min(500, count - at);
-    pending = foldEntries(
-      pending,
-      Array.from({ length: size }, (_, j) => entryOf(generated, at + j)),
-    );
-    if (cellsOf(pending) * 4 < cellsOf(counts)) continue;
-    counts = mergeCounts(counts, pending);
-    pending = emptyCounts(generated.schema);
-  }
-  return mergeCounts(counts, pending);
+  const tally = createTally(generated.schema);
+  for (let i = 0; i < count; i++) tally.add([entryOf(generated, i)]);
+  return decodeCounts(tally.sum(null, 'generated').bytes, generated.schema, 'generated');
 }
