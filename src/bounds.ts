@@ -151,8 +151,8 @@ export const bounds = {
   phrasesMax: 500,
   phraseCharsMax: 200,
   sendersMax: 1000,
-  /** First words of phrases looked for by one expression: its time grows with their number. */
-  firstWordsMax: 64,
+  /** Phrases looked for by one expression: its time grows with their number. */
+  guardPhrasesMax: 64,
 
   // Ledger (src/ledger)
   /** Superseded objects stay this long: longer than any delivery is retried (SQS keeps a message 14 days at most). */

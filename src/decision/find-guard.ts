@@ -48,13 +48,16 @@ interface Branch {
 
 interface Phrases {
   readonly root: Branch;
-  /** Both find any phrase's first word, and the second only at a word's beginning, which takes it five times as long; null
-   *  when these are too many for one expression. A text without any of them, and most are, need not be cut into words. */
-  readonly firstWords: readonly [anywhere: RegExp, atBeginning: RegExp] | null;
+  /** Finds whatever may be a phrase, and more; null when phrases are too many for one expression. A text in which it finds
+   *  nothing, and most are, need not be cut into words. */
+  readonly candidates: RegExp | null;
   /** Phrases of scripts without spaces: where their words are cut depends on the text around, so they are looked for
    *  as they stand. */
   readonly asTheyStand: readonly { readonly folded: string; readonly guard: number }[];
 }
+
+/** Of longer words in a text only the beginning counts, and more letters follow it there. */
+const plainWord = new RegExp(`^[a-z0-9]{1,${bounds.wordCharsMax - 1}}$`);
 
 // A desk's phrases are folded once, not once a message.
 const prepared = new WeakMap<Desk, Phrases>();
@@ -71,7 +74,7 @@ function phrasesOf(desk: Desk): Phrases {
       else addPhrase(root, wordsOf(folded), guard);
     }
   });
-  const phrases = { root, firstWords: expressionsOf([...root.next.keys()]), asTheyStand };
+  const phrases = { root, candidates: candidatesOf(root), asTheyStand };
   prepared.set(desk, phrases);
   return phrases;
 }
@@ -89,15 +92,28 @@ function addPhrase(root: Branch, words: readonly string[], guard: number): void 
   branch.guard = Math.min(branch.guard, guard);
 }
 
-/** Words hold letters, marks and digits only: nothing in them means anything to an expression. */
-function expressionsOf(words: readonly string[]): readonly [RegExp, RegExp] | null {
-  if (words.length === 0 || words.length > bounds.firstWordsMax) return null;
-  const any = `(?:${words.join('|')})`;
-  return [new RegExp(any), new RegExp(`(?<![\\p{L}\\p{M}\\p{N}])${any}`, 'u')];
+/** The words of each phrase as letters in a row, between words anything but plain letters and digits. Words hold letters, marks
+ *  and digits only: nothing in them means anything to an expression. A phrase counts up to its first word with another letter,
+ *  since that would match what stands between words, and a search must not go back. */
+function candidatesOf(root: Branch): RegExp | null {
+  let phrases = 0;
+  const expressionOf = (branch: Branch): string => {
+    const tails = [...branch.next].filter(([word]) => plainWord.test(word));
+    const isOpen = branch.guard !== Number.POSITIVE_INFINITY || tails.length < branch.next.size;
+    if (isOpen || tails.length === 0) {
+      phrases += 1;
+      return '';
+    }
+    return `[^a-z0-9]+(?:${tails.map(([word, next]) => word + expressionOf(next)).join('|')})`;
+  };
+  const all = [...root.next].map(([word, next]) => word + (plainWord.test(word) ? expressionOf(next) : ''));
+  if (all.length === 0 || phrases > bounds.guardPhrasesMax || all.length > bounds.guardPhrasesMax)
+    return null;
+  return new RegExp(all.join('|'));
 }
 
 /** Index of the first guard whose phrase is in one of the texts; Infinity when there is none. */
-function phraseGuard(texts: readonly string[], { root, firstWords, asTheyStand }: Phrases): number {
+function phraseGuard(texts: readonly string[], { root, candidates, asTheyStand }: Phrases): number {
   let first = Number.POSITIVE_INFINITY;
   if (root.next.size === 0 && asTheyStand.length === 0) return first;
   for (const text of texts) {
@@ -105,8 +121,7 @@ function phraseGuard(texts: readonly string[], { root, firstWords, asTheyStand }
     for (const phrase of asTheyStand) {
       if (phrase.guard < first && folded.includes(phrase.folded)) first = phrase.guard;
     }
-    if (root.next.size === 0 || (firstWords !== null && !firstWords.every((each) => each.test(folded))))
-      continue;
+    if (root.next.size === 0 || (candidates !== null && !candidates.test(folded))) continue;
     const words = wordsOf(folded);
     for (let at = 0; at < words.length; at++) first = Math.min(first, guardAt(root, words, at));
   }

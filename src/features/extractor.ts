@@ -7,7 +7,7 @@ import { schemaFrom } from './schema-of.ts';
 import { createSipHash } from './siphash.ts';
 import { fieldValueOf, slotsOf } from './slots.ts';
 import { sortTokens } from './sort-tokens.ts';
-import { createTokenReader } from './tokens.ts';
+import { createTokenReader, type Texts } from './tokens.ts';
 
 export interface Extractor {
   readonly schema: Schema;
@@ -31,11 +31,11 @@ export function createExtractor(desk: Desk, tokenKey: Uint8Array): Extractor {
   return {
     schema,
     extract(message) {
-      const { subject, body } = textsOf(message, desk);
-      const folded = [foldText(subject), foldText(body)] as const;
-      const input = { message, text: body, foldedText: folded.join('\n') };
+      const { body } = textsOf(message, desk);
+      const folded = foldedTextsOf(message, desk);
+      const input = { message, text: body, foldedText: `${folded.subject}\n${folded.body}` };
       const values = slots.map((slot, index) => valueIndex[index]!.get(slot.read(input)) ?? 1);
-      const { regions, lengths } = readTokens(...folded, false);
+      const { regions, lengths } = readTokens(folded, false);
       // One piece of memory for all: each costs the time of some twenty tokens, and as much to give back.
       const all = new Float64Array(lengths.reduce((sum, length) => sum + length, 0));
       let from = 0;
@@ -48,8 +48,7 @@ export function createExtractor(desk: Desk, tokenKey: Uint8Array): Extractor {
       return { schema: schema.id, slots: values, regions: sorted };
     },
     words(message) {
-      const { subject, body } = textsOf(message, desk);
-      const { regions, texts } = readTokens(foldText(subject), foldText(body), true);
+      const { regions, texts } = readTokens(foldedTextsOf(message, desk), true);
       const words = new Map<string, string>();
       texts.forEach((all, region) => {
         const { id } = schema.regions[region]!;
@@ -62,7 +61,17 @@ export function createExtractor(desk: Desk, tokenKey: Uint8Array): Extractor {
   };
 }
 
-/** What tokens are drawn from: of a mail its subject and what this writer wrote; of a form every field that is not a
+function foldedTextsOf(message: Message, desk: Desk): Texts {
+  const { subject, body } = textsOf(message, desk);
+  const hasMore = message.form === null && message.text !== message.ownText;
+  return {
+    subject: foldText(subject),
+    body: foldText(body),
+    whole: hasMore ? foldText(message.text) : '',
+  };
+}
+
+/** What is this writer's: of a mail its subject and what was written anew; of a form every field that is not a
  *  declared choice (a choice outside the declared ones is somebody's own words). */
 export function textsOf(message: Message, desk: Desk): { subject: string; body: string } {
   const { form } = message;

@@ -5,9 +5,10 @@ import { createSipHash } from './siphash.ts';
 import { slotsOf } from './slots.ts';
 
 /** Raised whenever the same message would give other features under the same desk's file: old tables are refused then. */
-export const schemaVersion = 1;
+export const schemaVersion = 2;
 
-/** Where tokens are drawn from, in the order of every array of regions. */
+/** Where tokens are drawn from, in the order of every array of regions: words from all that there is to read, quoted and
+ *  forwarded text too; pairs and grams from what the writer wrote. */
 export const regionSchemas: readonly RegionSchema[] = [
   { id: 'subject', tokensMax: bounds.subjectTokensMax },
   { id: 'word', tokensMax: bounds.wordTokensMax },

@@ -9,6 +9,8 @@ export interface SipHash {
   textToken(text: string): number;
   /** Low 40 bits of the hash of two tokens, five bytes each, low byte first. */
   pairToken(left: number, right: number): number;
+  /** The leading 52 bits of the hash as a fraction of all: uniform in [0, 1). */
+  fraction(text: string): number;
   /** All 64 bits of the hash of the text's UTF-8 bytes, as 16 hex digits. */
   fingerprint(text: string): string;
 }
@@ -49,6 +51,10 @@ export function createSipHash(tokenKey: Uint8Array): SipHash {
       blocks[3] = 10 << 24;
       hashBlocks(key, 2);
       return token();
+    },
+    fraction(text) {
+      hashBlocks(key, putText(text));
+      return (blocks[1]! >>> 0) * 2 ** -32 + (blocks[0]! >>> 12) * 2 ** -52;
     },
     fingerprint(text) {
       hashBlocks(key, putText(text));

@@ -22,15 +22,24 @@ export interface ReadTokens {
   readonly texts: readonly (readonly string[])[];
 }
 
-/** Reads the tokens of every region from folded texts: those of the subject's words, then words, pairs and grams of subject
- *  and body in a row. */
-export type TokenReader = (subject: string, body: string, withTexts: boolean) => ReadTokens;
+/** Folded. */
+export interface Texts {
+  readonly subject: string;
+  /** What this writer wrote. */
+  readonly body: string;
+  /** All that there is to read, with what is quoted and forwarded; empty where that is nothing more. */
+  readonly whole: string;
+}
+
+/** Reads the tokens of every region: those of the subject's words; words, pairs and grams of subject and body in a row; last,
+ *  what words else stand in the whole text. */
+export type TokenReader = (texts: Texts, withTexts: boolean) => ReadTokens;
 
 /** Places of the regions in the schema. */
 const [subjectRegion, wordRegion, pairRegion, gramRegion] = [0, 1, 2, 3] as const;
 
 /** Of each region the first `tokensMax` in reading order are taken: a flood behind a message's beginning cannot push the
- *  beginning out. */
+ *  beginning out, nor can what is quoted push out what the writer wrote. */
 export function createTokenReader(sipHash: SipHash): TokenReader {
   const vocabulary = createVocabulary(sipHash);
   const { words, grams, gramFacts } = vocabulary;
@@ -89,7 +98,17 @@ export function createTokenReader(sipHash: SipHash): TokenReader {
     lengths[gramRegion] = length;
   }
 
-  return (subject, body, withTexts) => {
+  function takeQuotedWord(text: string, from: number, to: number): void {
+    if (!hasRoom(wordRegion)) return;
+    const word = vocabulary.word(text, from, to);
+    const at = word * wordStride;
+    if (words[at + seenOffset] === message) return;
+    words[at + seenOffset] = message;
+    take(wordRegion, words[at + tokenOffset]!);
+    texts?.[wordRegion]?.push(vocabulary.wordText(word));
+  }
+
+  return ({ subject, body, whole }, withTexts) => {
     message = vocabulary.begin();
     texts = withTexts ? taken.map(() => []) : null;
     lengths.fill(0);
@@ -99,6 +118,7 @@ export function createTokenReader(sipHash: SipHash): TokenReader {
     eachWord(subject, takeWord);
     eachWord(body, takeWord);
     takePair(previous, lastWord);
+    eachWord(whole, takeQuotedWord);
     return { regions: taken, lengths, texts: texts ?? [] };
   };
 }

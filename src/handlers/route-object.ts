@@ -96,7 +96,7 @@ export function decideMessage(
   message: Message,
 ): { readonly decision: Decision; readonly posterior: Posterior } {
   const posterior = posteriorOf(model.scorer, extractor.extract(message));
-  const draw = Number.parseInt(hashUnder(tokenKey).fingerprint(`look ${key}`).slice(0, 13), 16) / 16 ** 13;
+  const draw = hashUnder(tokenKey).fraction(`look ${key}`);
   const decision = decide({ posterior, message, desk, modelKnows: !model.isEmpty, draw });
   const isForWantOfModel =
     decision.kind === 'held' && decision.reason === 'nothing-learned' && model.fault !== null;

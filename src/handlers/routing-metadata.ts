@@ -16,35 +16,53 @@ export interface DecisionContext {
 }
 
 const own = 'tallypost-';
-const decisionName = `${own}decision`;
+/** Written out: names put together anew for every message took as long as a guard. */
+const names = {
+  decision: 'tallypost-decision',
+  queue: 'tallypost-queue',
+  posterior: 'tallypost-posterior',
+  reason: 'tallypost-reason',
+  audit: 'tallypost-audit',
+  runnerUp: 'tallypost-runner-up',
+  runnerUpPosterior: 'tallypost-runner-up-posterior',
+  model: 'tallypost-model',
+  schema: 'tallypost-schema',
+  at: 'tallypost-at',
+  trace: 'tallypost-trace',
+} as const;
 /** What goes first when an object has little room for metadata left: the decision, its queue and its posterior stay. */
-const dispensable = ['trace', 'schema', 'model', 'runner-up-posterior', 'runner-up', 'at'].map(
-  (name) => own + name,
-);
+const dispensable = [
+  names.trace,
+  names.schema,
+  names.model,
+  names.runnerUpPosterior,
+  names.runnerUp,
+  names.at,
+] as const;
 
 export function isDecided(metadata: Metadata): boolean {
-  return Object.hasOwn(metadata, decisionName);
+  return Object.hasOwn(metadata, names.decision);
 }
 
 /** What is written about a decision. All values are printable ASCII: ids of the desk's file, numbers, times. */
 export function metadataOf(decision: Decision, posterior: Posterior, context: DecisionContext): Metadata {
   const metadata: Record<string, string> = {};
   const put = (name: string, value: string) => {
-    if (value !== '') metadata[own + name] = value;
+    if (value !== '') metadata[name] = value;
   };
-  put('decision', decision.kind);
-  put('queue', decision.queue ?? '');
-  if (decision.queue !== null) put('posterior', decision.posterior.toFixed(6));
-  if (decision.kind === 'held') put('reason', decision.reason);
-  if (decision.kind === 'guarded') put('reason', decision.guard);
-  if (decision.kind === 'routed' && decision.isAudit) put('audit', 'yes');
+  put(names.decision, decision.kind);
+  put(names.queue, decision.queue ?? '');
+  if (decision.queue !== null) put(names.posterior, decision.posterior.toFixed(6));
+  if (decision.kind === 'held') put(names.reason, decision.reason);
+  if (decision.kind === 'guarded') put(names.reason, decision.guard);
+  if (decision.kind === 'routed' && decision.isAudit) put(names.audit, 'yes');
   const next = decision.queue === null ? -1 : runnerUp(posterior, decision.queue);
-  put('runner-up', posterior.queues[next] ?? '');
-  put('runner-up-posterior', posterior.probability[next]?.toFixed(6) ?? '');
-  put('model', String(context.modelVersion));
-  put('schema', context.schema);
-  put('at', new Date(context.atMs).toISOString());
-  put('trace', context.trace);
+  put(names.runnerUp, posterior.queues[next] ?? '');
+  put(names.runnerUpPosterior, posterior.probability[next]?.toFixed(6) ?? '');
+  put(names.model, String(context.modelVersion));
+  put(names.schema, context.schema);
+  put(names.at, new Date(context.atMs).toISOString());
+  put(names.trace, context.trace);
   return metadata;
 }
 
@@ -68,11 +86,11 @@ export function joinMetadata(others: Metadata, ours: Metadata, place: string): M
 
 /** What was said of the message when it was routed or held; null when nothing was, or a guard decided. */
 export function saidIn(metadata: Metadata): Said | null {
-  const kind = metadata[decisionName];
-  const queue = metadata[`${own}queue`];
-  const posterior = Number(metadata[`${own}posterior`] ?? Number.NaN);
+  const kind = metadata[names.decision];
+  const queue = metadata[names.queue];
+  const posterior = Number(metadata[names.posterior] ?? Number.NaN);
   if ((kind !== 'routed' && kind !== 'held') || !queue || !(posterior >= 0 && posterior <= 1)) return null;
-  return { queue, posterior, isAudit: metadata[`${own}audit`] === 'yes' };
+  return { queue, posterior, isAudit: metadata[names.audit] === 'yes' };
 }
 
 export function traceIn(metadata: Metadata): string {
@@ -88,8 +106,7 @@ function runnerUp({ queues, probability }: Posterior, queue: string): number {
 }
 
 function sizeOf(metadata: Metadata): number {
-  return Object.entries(metadata).reduce(
-    (sum, [name, value]) => sum + name.length + Buffer.byteLength(value),
-    0,
-  );
+  let bytes = 0;
+  for (const name of Object.keys(metadata)) bytes += name.length + Buffer.byteLength(metadata[name]!);
+  return bytes;
 }

@@ -1,3 +1,4 @@
+import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
 import { findGuard } from '../../src/decision/find-guard.ts';
 import type { Desk, Guard } from '../../src/desk/desk.ts';
@@ -54,6 +55,34 @@ describe('a phrase', () => {
     const many = guardOf('many', { phrases: Array.from({ length: 200 }, (_, i) => `word${i} now`) });
     expect(met(mailOf({ ownText: 'please word173 NOW!' }), many)).toBe('many');
     expect(met(mailOf({ ownText: 'please word173 later' }), many)).toBeNull();
+  });
+
+  it('is found where its words stand in a row, and nowhere else', () => {
+    const word = fc.constantFrom(
+      'gas',
+      'leak',
+      'eau',
+      'électrique',
+      '9',
+      'gasx',
+      'é',
+      'x'.repeat(40),
+      'x'.repeat(39),
+    );
+    const between = fc.constantFrom(' ', '\n', ' – ', '…', "'", '  ', '。');
+    const phrase = fc.array(word, { minLength: 1, maxLength: 3 });
+    const text = fc.array(fc.tuple(fc.oneof(word, fc.constant('x'.repeat(45))), between), { maxLength: 8 });
+    fc.assert(
+      fc.property(fc.array(phrase, { minLength: 1, maxLength: 3 }), text, (phrases, parts) => {
+        const guard = guardOf('guard', { phrases: phrases.map((words) => words.join(' ')) });
+        // Of a longer word the first 40 letters count.
+        const row = ` ${parts.map(([each]) => each.slice(0, 40)).join(' ')} `;
+        const isThere = phrases.some((words) => row.includes(` ${words.join(' ')} `));
+        const ownText = parts.map(([each, gap]) => each + gap).join('');
+        expect(met(mailOf({ subject: '', ownText }), guard)).toBe(isThere ? 'guard' : null);
+      }),
+      { seed: 20270, numRuns: 2000 },
+    );
   });
 
   it('is looked for in every field of a form, each by itself', () => {

@@ -4,6 +4,7 @@ import type { Desk } from '../../src/desk/desk.ts';
 import { createExtractor } from '../../src/features/extractor.ts';
 import { schemaOf } from '../../src/features/schema-of.ts';
 import { createSipHash } from '../../src/features/siphash.ts';
+import { parseMail } from '../../src/message/mail.ts';
 import type { Message } from '../../src/message/message.ts';
 import { exampleDesk, exampleKey, formOf, mailOf } from './example.ts';
 
@@ -256,8 +257,28 @@ describe('regions', () => {
     expect(tokensOf(formOf('contact', { topic: 'my pipe burst' }), 'word')).toEqual(['burst', 'my', 'pipe']);
   });
 
-  it('quoted history gives no token', () => {
-    expect(tokensOf(mailOf({ text: 'yes\n> secret', ownText: 'yes' }), 'word')).toEqual(['question', 'yes']);
+  it('quoted history gives its words, and neither pairs nor grams', () => {
+    const reply = mailOf({ text: 'yes please\n> the leak', ownText: 'yes please' });
+    expect(tokensOf(reply, 'word')).toEqual(['leak', 'please', 'question', 'the', 'yes']);
+    expect(tokensOf(reply, 'pair')).toEqual(['^ question', 'please $', 'question yes', 'yes please']);
+    expect(tokensOf(reply, 'gram')).not.toContain('leak');
+  });
+
+  it('quoted text, however long, takes no place from what the writer wrote', () => {
+    const quoted = Array.from({ length: 9000 }, (_, i) => `w${i.toString(36)}`).join(' ');
+    const reply = mailOf({ subject: '', text: `> ${quoted}\nstop the leak`, ownText: 'stop the leak' });
+    const words = tokensOf(reply, 'word');
+    expect(words).toHaveLength(1024);
+    expect(words).toEqual(expect.arrayContaining(['leak', 'stop', 'the']));
+  });
+
+  it('text that a reader of the mail does not see gives no token, quoted or not', async () => {
+    const html =
+      '<p>My bill</p><p style="display:none">burst</p>' +
+      '<blockquote><p>your letter</p><p hidden>flood</p></blockquote>';
+    const raw = `From: ana@home.test\r\nSubject: x\r\nContent-Type: text/html\r\n\r\n${html}\r\n`;
+    const message = await parseMail(Buffer.from(raw));
+    expect(tokensOf(message, 'word')).toEqual(['bill', 'letter', 'my', 'x', 'your']);
   });
 
   it('hold hashes ascending, each below 2^40', () => {

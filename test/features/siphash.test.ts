@@ -35,6 +35,11 @@ describe('SipHash-2-4', () => {
     expect(textToken(bytesText(15))).toBe(0x6149be45e5);
   });
 
+  it('gives the leading bits as a fraction', () => {
+    // a129ca6149be45e5 without its last 12 bits, over 2^52.
+    expect(createSipHash(exampleKey).fraction(bytesText(15))).toBe(0xa129ca6149be4 / 2 ** 52);
+  });
+
   it('hashes two tokens as ten bytes, low byte first', () => {
     const token = fc.nat({ max: 2 ** 31 - 1 }).map((n) => n * 512 + (n % 511));
     const five = (n: number) => [0, 8, 16, 24, 32].map((bits) => Math.floor(n / 2 ** bits) % 256);
