@@ -5,8 +5,22 @@ import { compact } from '../../src/ledger/compaction.ts';
 import { eraseMessages } from '../../src/ledger/erase.ts';
 import { foldClaims } from '../../src/ledger/fold.ts';
 import { loadModel } from '../../src/ledger/load-model.ts';
+import { renameQueue } from '../../src/ledger/queues.ts';
 import { recount } from '../../src/ledger/recount.ts';
-import { claim, desk, dieAt, featuresOf, fold, keysOf, schema, standings, testWorld } from './fixture.ts';
+import { restoreVersion } from '../../src/ledger/restore.ts';
+import { undoConfirmations } from '../../src/ledger/undo.ts';
+import {
+  claim,
+  desk,
+  dieAt,
+  featuresOf,
+  fold,
+  keysOf,
+  schema,
+  standings,
+  startMs,
+  testWorld,
+} from './fixture.ts';
 
 type TestWorld = ReturnType<typeof testWorld>;
 const messages = ['m1', 'm2', 'm3'];
@@ -17,6 +31,26 @@ async function counted(): Promise<TestWorld> {
   await compact(world, desk, schema);
   await fold(world, claim('m3', 'leaks', 1), claim('m1', 'leaks', 2));
   return world;
+}
+
+/** `inner` with `act` before each of its reads and writes. */
+function beforeEachCall(inner: TestWorld['store'], act: () => Promise<void>): TestWorld['store'] {
+  const { get, put, head } = inner;
+  return {
+    ...inner,
+    get: async (...given) => {
+      await act();
+      return get(...given);
+    },
+    put: async (...given) => {
+      await act();
+      return put(...given);
+    },
+    head: async (...given) => {
+      await act();
+      return head(...given);
+    },
+  };
 }
 
 /** Swaps two segments or bases behind the ledger's back. */
@@ -77,6 +111,58 @@ describe('a recount', () => {
     await overwrite(world, second, first);
     expect((await recount(world, desk, schema)).differences).not.toEqual([]);
   });
+
+  it.each([
+    [
+      'a fold',
+      (world) => fold(world, claim('m2', 'billing', 40)),
+      { m1: 'leaks', m2: 'billing', m3: 'leaks' },
+    ],
+    ['an erasure', (world) => eraseMessages(world, schema, ['m3']), { m1: 'leaks', m2: 'leaks' }],
+    [
+      'an undo',
+      (world) =>
+        undoConfirmations(world, schema, { by: 'ann', sinceMs: startMs + 60_000, untilMs: startMs + 1e9 }),
+      { m1: 'billing', m2: 'leaks' },
+    ],
+    ['a restore', (world) => restoreVersion(world, desk, schema, 1), { m1: 'billing', m2: 'leaks' }],
+    [
+      'a change of a queue',
+      (world) => renameQueue(world, desk, schema, { from: 'leaks', to: 'bursts' }),
+      { m1: 'leaks', m2: 'leaks', m3: 'leaks' },
+    ],
+    [
+      'another repair',
+      (world) => recount(world, desk, schema, { repair: true }),
+      { m1: 'leaks', m2: 'leaks', m3: 'leaks' },
+    ],
+  ] as [string, (world: TestWorld) => Promise<unknown>, Record<string, string>][])(
+    'repairs a lost base though %s comes between any two of its calls',
+    async (_, act, stands) => {
+      let calls = 0;
+      for (let at = 0; at <= calls; at++) {
+        const world = await counted();
+        const [base] = await keysOf(world.store, 'model/bases/');
+        await world.store.put(base, Buffer.from('damaged'));
+        calls = 0;
+        const store = beforeEachCall(world.store, async () => {
+          calls += 1;
+          // Where it needs the base, it says that it cannot read it.
+          if (calls - 1 === at) await act(world).catch((error) => expect(error.place).toBe(base));
+        });
+        const { repair } = await recount({ ...world, store }, desk, schema, { repair: true });
+        expect(['repaired', 'not-needed'], `at call ${at}`).toContain(repair);
+        // What could not be done without a base.
+        await act(world);
+        expect(await recount(world, desk, schema), `at call ${at}`).toMatchObject({
+          fault: null,
+          differences: [],
+        });
+        expect(await standings(world, messages), `at call ${at}`).toEqual(stands);
+      }
+      expect(calls).toBeGreaterThan(8);
+    },
+  );
 
   it('that is disturbed by an erasure in every pass compares nothing and repairs nothing', async () => {
     const world = await counted();
@@ -221,22 +307,7 @@ describe('after a change of schema', () => {
           if (deadAt === null) await fold(world, ...claims);
           else await dieAt(world.store, deadAt, (store) => fold({ ...world, store }, ...claims));
         };
-        const { get, put, head } = world.store;
-        const store: TestWorld['store'] = {
-          ...world.store,
-          get: async (...given) => {
-            await strike();
-            return get(...given);
-          },
-          put: async (...given) => {
-            await strike();
-            return put(...given);
-          },
-          head: async (...given) => {
-            await strike();
-            return head(...given);
-          },
-        };
+        const store = beforeEachCall(world.store, strike);
         const repaired = await recount({ ...world, store }, desk, wider, { repair: true, reread });
         expect(repaired.repair, `at call ${at}`).toBe('repaired');
         // Delivered again, by a process that has the new schema.
