@@ -149,10 +149,14 @@ export class ByteReader {
   }
 }
 
-/** What sealed bytes hold. Each has a layout of its own, with the version that it is written in. */
-const kinds = { counts: 1, table: 2, entries: 3, features: 4 } as const;
+/** What sealed bytes hold: each kind's number, and the version of the layout in which it is written; older ones are read. */
+const kinds = {
+  counts: { number: 1, layout: 1 },
+  table: { number: 2, layout: 2 },
+  entries: { number: 3, layout: 1 },
+  features: { number: 4, layout: 1 },
+} as const;
 export type SealedKind = keyof typeof kinds;
-const layoutVersion = 1;
 const magic = [0x54, 0x50]; // "TP"
 const headBytes = 16;
 const tailBytes = 4;
@@ -183,7 +187,7 @@ export function sealWritten(kind: SealedKind, schemaId: string, out: ByteWriter)
   out.raw(new Uint8Array(tailBytes));
   const sealed = out.written();
   const view = new DataView(sealed.buffer, sealed.byteOffset, sealed.byteLength);
-  sealed.set([...magic, kinds[kind], layoutVersion]);
+  sealed.set([...magic, kinds[kind].number, kinds[kind].layout]);
   view.setUint32(4, payloadBytes, true);
   sealed.set(Buffer.from(schemaId, 'hex'), 8);
   view.setUint32(sealed.length - tailBytes, crc32(sealed.subarray(0, -tailBytes)), true);
@@ -206,10 +210,12 @@ export function unseal(
   }
   const view = new DataView(sealed.buffer, sealed.byteOffset, sealed.byteLength);
   const head = sealed.subarray(0, 4);
-  if (head[0] !== magic[0] || head[1] !== magic[1] || head[2] !== kinds[kind] || head[3] !== layoutVersion) {
+  const { number, layout } = kinds[kind];
+  const isOurs = head[0] === magic[0] && head[1] === magic[1] && head[2] === number;
+  if (!isOurs || head[3] < 1 || head[3] > layout) {
     throw refuse(
       'format-unknown',
-      `${kind} in layout ${layoutVersion}`,
+      layout === 1 ? `${kind} in layout 1` : `${kind} in layout 1 to ${layout}`,
       `a file that starts with ${Buffer.from(head).toString('hex')}`,
     );
   }
@@ -225,4 +231,9 @@ export function unseal(
   if (schemaId !== null && id !== schemaId)
     throw refuse('schema-mismatch', `schema ${schemaId}`, `schema ${id}`);
   return sealed.subarray(headBytes, -tailBytes);
+}
+
+/** The version of the layout of sealed bytes. */
+export function layoutOf(sealed: Uint8Array): number {
+  return sealed[3];
 }

@@ -1,10 +1,14 @@
 import type { Schema } from '../features/schema.ts';
-import { ByteReader, ByteWriter, seal, unseal } from './bytes.ts';
+import { ByteReader, ByteWriter, layoutOf, seal, unseal } from './bytes.ts';
 import { checkCounts } from './check-counts.ts';
 import { readCounts, readTokens, writeCounts, writeTokens } from './codec-counts.ts';
 import type { Fit } from './fit.ts';
 import { weightUnit } from './projection.ts';
 import type { ServedTable } from './served-table.ts';
+
+/** A table of few queues packs its tokens (see codec-counts), most of which stand in one queue, once, and would take 5 bytes to say
+ *  so. With more queues than these there are more cells to share a token's bytes, and a table loads faster without. */
+const packedQueuesMax = 8;
 
 /** A served table as bytes: reference epoch, half-life, vocabulary, pruned tokens, fit as JSON, counts. Canonical. */
 export function encodeTable(table: ServedTable): Uint8Array {
@@ -14,11 +18,12 @@ export function encodeTable(table: ServedTable): Uint8Array {
   for (const size of table.vocabulary) out.varint(size);
   for (const tokens of table.pruned) writeTokens(out, tokens);
   out.text(JSON.stringify(table.fit));
-  writeCounts(out, table.counts, scaleOf(table.halfLifeDays));
+  const isPacked = table.counts.columns.length <= packedQueuesMax;
+  writeCounts(out, table.counts, scaleOf(table.halfLifeDays), isPacked);
   return seal('table', table.counts.schema.id, out.written());
 }
 
-/** Reads what encodeTable wrote and checks the counts whole. Throws TallypostError as decodeCounts does. */
+/** Reads what encodeTable wrote, now or in the first layout, and checks the counts whole. Throws TallypostError as decodeCounts does. */
 export function decodeTable(bytes: Uint8Array, schema: Schema, place: string): ServedTable {
   const reader = new ByteReader(unseal('table', bytes, schema.id, place), place);
   const referenceEpoch = reader.varint();
@@ -27,7 +32,8 @@ export function decodeTable(bytes: Uint8Array, schema: Schema, place: string): S
   const vocabulary = schema.regions.map(() => reader.varint());
   const pruned = schema.regions.map(() => readTokens(reader));
   const fit = readFit(reader);
-  const counts = readCounts(reader, schema, scaleOf(halfLifeDays));
+  const packedMax = layoutOf(bytes) === 1 ? -1 : packedQueuesMax;
+  const counts = readCounts(reader, schema, scaleOf(halfLifeDays), packedMax);
   reader.end();
   checkCounts(counts, place);
   return { counts, referenceEpoch, halfLifeDays, vocabulary, pruned, fit };

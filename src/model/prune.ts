@@ -170,7 +170,7 @@ function readingsOf(fit: Fit, region: string): Reading[] {
 
 const tokenBytes = 4;
 
-/** About what a token takes when encoded (see codec-counts): 4 bytes of its hash, as long as a region holds 4 thousand to 500
+/** About what a token takes when encoded and not packed (see codec-counts), which is how the time to load grows: 4 bytes of its hash, as long as a region holds 4 thousand to 500
  *  thousand; for each cell its column, and its count when that is not 1. */
 function bytesOf({ queue, count, length }: Hits): number {
   let bytes = tokenBytes;

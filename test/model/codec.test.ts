@@ -65,6 +65,46 @@ describe('encode, then decode, is the identity', () => {
     );
   });
 
+  test('of a served table in the first layout, to which tables of up to 8 queues were written otherwise', () => {
+    // What this version of the project wrote before cells were packed, for these three messages.
+    const bytes = Buffer.from(
+      '545002015601000000112233445566aadf160000000000000000020200000000c9017b2276657273696f6e223a312c22626c6f636b73223a5b5d2c22' +
+        '62696173223a7b7d2c22616c706861223a312c2262657461223a7b226368616e6e656c223a312c22686f7572223a317d2c22686f6c64223a7b227365' +
+        '656e4d696e223a7b7d2c2272656c6576616e63654d696e223a302c227370617265734e6577223a747275657d2c2272656c696162696c697479223a7b' +
+        '226c6f674f646473223a6e756c6c2c2273696e6365223a5b5d7d2c226c6f674c6f7373223a6e756c6c2c226d65737361676573223a307d020762696c' +
+        '6c696e67056c65616b7302000001000102000000000102000000000000010201020207010300020602020203010400020002' +
+        '00'.repeat(68) +
+        '677db86c',
+      'hex',
+    );
+    const features = {
+      schema: schema.id,
+      slots: [2, 2],
+      regions: [Float64Array.of(7), Float64Array.of(3, 5), new Float64Array(0)],
+    };
+    const short = { ...features, regions: [Float64Array.of(9), new Float64Array(0), new Float64Array(0)] };
+    const entryOf = (f: typeof features, queue: string, epoch: number): Entry => ({
+      features: f,
+      said: null,
+      minus: null,
+      plus: { queue, epoch },
+    });
+    const counts = foldEntries(empty, [
+      entryOf(features, 'leaks', 2911),
+      entryOf(features, 'billing', 2910),
+      entryOf(short, 'leaks', 2911),
+    ]);
+    const fit = { ...defaultFit(schema), blocks: [] };
+    const table = serve(counts, fit, { halfLifeDays: null });
+    expect(decodeTable(bytes, schema, 'table')).toEqual(table);
+    const packed = encodeTable(table);
+    // Two tokens a region: 38 low bits, then 0, or 1 and 0; whether there is one cell; its column. Subjects 7 (in both queues)
+    // and 9 (in one): 40 + 41 bits are 11 bytes for 2 and the byte of 9's cell. Words 3 and 5 (both in both): 40 + 40 bits are
+    // 10 bytes for 2.
+    expect(packed.length).toBe(bytes.length + (11 - 3) + (10 - 2));
+    expect(decodeTable(packed, schema, 'table')).toEqual(table);
+  });
+
   test('of whole numbers up to 2^53 - 1', () => {
     fc.assert(
       fc.property(fc.array(fc.oneof(fc.nat(300), fc.maxSafeNat())), (numbers) => {
