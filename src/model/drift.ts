@@ -48,6 +48,7 @@ export function findDrift(counts: CountsView, recentEpochs: number): Drift[] {
     .flatMap((region, g) => {
       const logFactor = new Float64Array(queues.length);
       const tokens = queues.map((): Drift['tokens'][number][] => []);
+      const weakest = new Float64Array(queues.length);
       const earlier = new Float64Array(queues.length);
       const recent = new Float64Array(queues.length);
       const touched = new Uint32Array(queues.length);
@@ -69,10 +70,10 @@ export function findDrift(counts: CountsView, recentEpochs: number): Drift[] {
           const k = touched[i];
           const { factor, share } = factorOf(k, earlier[k], recent[k], seen);
           logFactor[k] += share;
-          if (factor > 0) {
+          if (factor > weakest[k]) {
             const hasRisen = recent[k] * messages[k][0] > earlier[k] * messages[k][1];
             tokens[k].push({ token: rows.token, logFactor: factor, hasRisen });
-            if (tokens[k].length >= 1000) keepStrongest(tokens[k]);
+            if (tokens[k].length >= 1000) weakest[k] = keepStrongest(tokens[k]);
           }
           earlier[k] = 0;
           recent[k] = 0;
@@ -96,9 +97,11 @@ export function findDrift(counts: CountsView, recentEpochs: number): Drift[] {
     .sort((a, b) => b.logFactor - a.logFactor);
 }
 
-function keepStrongest(tokens: Drift['tokens'][number][]): void {
+/** Answers the factor that a later token must exceed: of equal ones the smaller token is kept. */
+function keepStrongest(tokens: Drift['tokens'][number][]): number {
   tokens.sort((a, b) => b.logFactor - a.logFactor || a.token - b.token);
   tokens.length = Math.min(tokens.length, bounds.driftTokensMax);
+  return tokens.at(-1)?.logFactor ?? 0;
 }
 
 interface Factor {

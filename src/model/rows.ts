@@ -67,6 +67,7 @@ class EncodedRows implements Rows {
   #cells = 0;
   #tokenAt: number;
   #at: number;
+  #behind = 0;
 
   constructor(region: EncodedRegion) {
     this.#region = region;
@@ -84,42 +85,60 @@ class EncodedRows implements Rows {
       return false;
     }
     this.#row++;
-    const cellAt = this.#at;
-    this.#at = this.#tokenAt;
-    this.token += this.#varint() + 1;
-    this.#tokenAt = this.#at;
-    this.#at = cellAt;
+    const bytes = this.#bytes;
+    const end = this.#region.endAt;
+    this.token += this.#varint(this.#tokenAt) + 1;
+    this.#tokenAt = this.#behind;
     if (this.token >= 2 ** tokenBits) throw this.#broken(`tokens below 2^${tokenBits}`, String(this.token));
+    let at = this.#at;
     let column = 0;
     let n = 0;
+    // Nearly all numbers are of one byte: these are read here, without a call.
     for (;;) {
-      const code = this.#varint();
-      column += Math.floor(code / 4);
+      if (at >= end) throw this.#broken('more bytes', 'the end');
+      let code = bytes[at++];
+      if (code >= 0x80) {
+        code = this.#varint(at - 1);
+        at = this.#behind;
+      }
+      column += code < 0x80 ? code >> 2 : Math.floor(code / 4);
       if (column >= columns) throw this.#broken(`a column below ${columns}`, String(column));
       this.column[n] = column++;
-      this.count[n++] = code & 1 ? this.#varint() + 2 : 1;
+      let count = 1;
+      if ((code & 1) !== 0) {
+        if (at >= end) throw this.#broken('more bytes', 'the end');
+        count = bytes[at++];
+        if (count >= 0x80) {
+          count = this.#varint(at - 1);
+          at = this.#behind;
+        }
+        count += 2;
+      }
+      this.count[n++] = count;
       if ((code & 2) !== 0) break;
     }
+    this.#at = at;
     this.to = n;
     this.#cells += n;
     return true;
   }
 
-  #varint(): number {
+  /** The number at a place; what follows it is `#behind`. */
+  #varint(start: number): number {
     const bytes = this.#bytes;
     const end = this.#region.endAt;
-    if (this.#at >= end) throw this.#broken('more bytes', 'the end');
-    let byte = bytes[this.#at++];
-    if (byte < 0x80) return byte;
-    let value = byte & 0x7f;
-    let scale = 0x80;
-    do {
-      if (this.#at >= end) throw this.#broken('more bytes', 'the end');
-      byte = bytes[this.#at++];
+    let at = start;
+    let value = 0;
+    let scale = 1;
+    for (;;) {
+      if (at >= end) throw this.#broken('more bytes', 'the end');
+      const byte = bytes[at++];
       value += (byte & 0x7f) * scale;
+      if (byte < 0x80) break;
       scale *= 0x80;
       if (value > Number.MAX_SAFE_INTEGER) throw this.#broken('a whole number below 2^53', 'a larger one');
-    } while (byte >= 0x80);
+    }
+    this.#behind = at;
     return value;
   }
 
