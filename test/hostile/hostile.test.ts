@@ -1,71 +1,21 @@
-import { spawn } from 'node:child_process';
-import { mkdtempSync, rmSync } from 'node:fs';
-import { tmpdir } from 'node:os';
-import { join } from 'node:path';
-import { createInterface } from 'node:readline';
-import { build } from 'esbuild';
-import { afterAll, beforeAll, describe, expect, test } from 'vitest';
+import { beforeAll, describe, expect, test } from 'vitest';
 import { bounds } from '../../src/bounds.ts';
 import { defectKinds } from '../../src/message/defects.ts';
+import { type Report, runInChild } from './child.ts';
 import { hostileInputs } from './hostile-inputs.ts';
 import type { HostileResult } from './run-hostile.ts';
 
-/** Silence after which the process is taken to hang: far above the deadline, whatever else the machine does. */
-const silenceMsMax = 180_000;
+let report: Report<HostileResult>;
 
-interface Report {
-  readonly results: ReadonlyMap<string, HostileResult>;
-  /** The input that was being parsed when the process ended or was stopped too early; null when all were. */
-  readonly stuckAt: string | null;
-}
-
-let folder = '';
-let report: Report;
-
-/** All inputs are parsed once, in one process of their own: time and memory are those of parsing alone. */
+/** All inputs are parsed once, in one process of their own. */
 beforeAll(async () => {
-  folder = mkdtempSync(join(tmpdir(), 'tallypost-hostile-'));
-  const bundle = join(folder, 'run-hostile.mjs');
-  await build({
-    entryPoints: [new URL('./run-hostile.ts', import.meta.url).pathname],
-    outfile: bundle,
-    bundle: true,
-    platform: 'node',
-    format: 'esm',
-    mainFields: ['module', 'main'],
-    banner: {
-      js: "import { createRequire as __c } from 'node:module'; const require = __c(import.meta.url);",
-    },
-    logLevel: 'error',
-  });
-  report = await runIn(bundle);
+  report = await runInChild<HostileResult>('./run-hostile.ts');
   const all = [...report.results.values()];
   const slowest = all.reduce((a, b) => (b.cpuMs > a.cpuMs ? b : a));
   console.log(
     `hostile inputs: ${all.length}; slowest ${slowest.cpuMs.toFixed(0)} ms of CPU (${slowest.name}); peak memory ${Math.max(...all.map(({ peakMb }) => peakMb)).toFixed(0)} MB`,
   );
 }, 600_000);
-
-afterAll(() => rmSync(folder, { recursive: true, force: true }));
-
-async function runIn(bundle: string): Promise<Report> {
-  const child = spawn(process.execPath, [bundle], { stdio: ['ignore', 'pipe', 'inherit'] });
-  const results = new Map<string, HostileResult>();
-  let current: string | null = null;
-  let watch = setTimeout(() => child.kill('SIGKILL'), silenceMsMax);
-  for await (const line of createInterface({ input: child.stdout })) {
-    clearTimeout(watch);
-    watch = setTimeout(() => child.kill('SIGKILL'), silenceMsMax);
-    const said = JSON.parse(line) as HostileResult | { starting: string };
-    if ('starting' in said) current = said.starting;
-    else {
-      results.set(said.name, said);
-      current = null;
-    }
-  }
-  clearTimeout(watch);
-  return { results, stuckAt: current };
-}
 
 describe('hostile inputs', () => {
   test('none of them ends or stalls the process', () => {

@@ -3,7 +3,12 @@
 import { pathToFileURL } from 'node:url';
 
 const api = `http://${process.env.AWS_LAMBDA_RUNTIME_API}/2018-06-01/runtime`;
-const post = (path, body) => fetch(`${api}${path}`, { method: 'POST', body });
+const post = (path, body) =>
+  fetch(`${api}${path}`, {
+    method: 'POST',
+    body,
+    headers: { 'x-peak-mb': String(process.resourceUsage().maxRSS / 1024) },
+  });
 const described = (error) => JSON.stringify({ errorType: error?.name ?? 'Error', errorMessage: String(error?.message ?? error) });
 
 const startedMs = performance.now();

@@ -15,6 +15,8 @@ export interface StartedFunction {
   /** Of the initialisation, as the function's process measured it when it asked for its first event. */
   readonly init: { readonly wallMs: number; readonly cpuMs: number; readonly residentMb: number };
   invoke(event: unknown): Promise<Answer>;
+  /** Largest resident size of the function's process until its last answer, in MB of 2^20 bytes. */
+  readonly peakMb: () => number;
   /** Everything written to stdout and stderr so far. */
   readonly output: () => string;
   stop(): Promise<void>;
@@ -38,6 +40,7 @@ export async function startFunction(
     settleInit = { resolve, reject };
   });
   let count = 0;
+  let peakMb = 0;
 
   function handOut(): void {
     if (asking === null) return;
@@ -68,6 +71,7 @@ export async function startFunction(
         return;
       }
       response.writeHead(202).end();
+      peakMb = Number(request.headers['x-peak-mb'] ?? 0);
       if (what === 'init') settleInit?.reject(new Error(text));
       else
         answers.get(id as string)?.({
@@ -124,6 +128,7 @@ export async function startFunction(
   return {
     init,
     output: () => output,
+    peakMb: () => peakMb,
     stop,
     invoke(event) {
       count += 1;
