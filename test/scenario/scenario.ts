@@ -30,6 +30,8 @@ export interface ScenarioMessage {
   readonly contentType: string;
   readonly arrivesAtMs: number;
   readonly trueQueue: QueueId;
+  /** Of a person's letter; null: a machine wrote it. */
+  readonly language: Language | null;
   /** In order of time: usually one; two when the first was wrong; none where nobody ever says. */
   readonly confirmations: readonly ScenarioConfirmation[];
 }
@@ -74,7 +76,10 @@ function messageAt(atMs: number, chance: Chance): ScenarioMessage {
   const id = `${stamp}-${chance.hex(8)}`;
   if (chance.isTrue(shares.machine)) {
     const { queue, bytes } = machineMail(person, atMs, chance);
-    return finished(`inbound/mail/${id}`, bytes, 'message/rfc822', atMs, queue, chance);
+    return {
+      ...finished(`inbound/mail/${id}`, bytes, 'message/rfc822', atMs, queue, chance),
+      language: null,
+    };
   }
   const book = bookAt(person.language, dayOf(atMs));
   const { topic, queue } = topicAt(book, dayOf(atMs), chance);
@@ -83,7 +88,7 @@ function messageAt(atMs: number, chance: Chance): ScenarioMessage {
   const bytes = isForm ? formOf(letter, atMs, chance) : mailOf(letter, book, atMs, chance);
   const key = isForm ? `inbound/forms/${id}.json` : `inbound/mail/${id}`;
   const type = isForm ? 'application/json' : 'message/rfc822';
-  const done = finished(key, bytes, type, atMs, queue, chance);
+  const done = { ...finished(key, bytes, type, atMs, queue, chance), language: person.language };
   return topic.id === 'visit-request' ? { ...done, confirmations: [] } : done;
 }
 
@@ -111,7 +116,7 @@ function finished(
   arrivesAtMs: number,
   trueQueue: QueueId,
   chance: Chance,
-): ScenarioMessage {
+): Omit<ScenarioMessage, 'language'> {
   return {
     key,
     bytes,
