@@ -129,7 +129,7 @@ function lastStrip({ base }: Frame, { confirmation, title, subject, learned, tok
   return html`<form class="last" method="post" action="${base}/undo"><p role="status">You put <em>${subject}</em> to <strong>${title}</strong>.${
     learned !== null &&
     html` ${title} was thought ${percent(learned.before)} likely for it; with this one counted it would be <strong>${percent(learned.after)}</strong>.`
-  }</p><input type="hidden" name="message" value="${confirmation.message}"><input type="hidden" name="token" value="${token}">
+  } <span class="quiet">It is passed on with your next one, or after ten minutes.</span></p><input type="hidden" name="message" value="${confirmation.message}"><input type="hidden" name="token" value="${token}">
 <button data-key="u">Take it back <kbd>u</kbd></button></form>`;
 }
 
