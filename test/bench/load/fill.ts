@@ -18,6 +18,7 @@ export interface Filled {
 const routeBatch = 10;
 const confirmBatch = 50;
 const repeatedShare = 0.05;
+const putsAtOnce = 16;
 
 /** Puts a desk, `count` messages and their confirmations; every twentieth confirmation a second time under another key. */
 export async function fill(store: Store, count: number, seed: number): Promise<Filled> {
@@ -33,14 +34,22 @@ export async function fill(store: Store, count: number, seed: number): Promise<F
     const times = chance.isTrue(repeatedShare) ? 2 : 1;
     for (let i = 0; i < times && batch.length > 0; i++) orders.push({ kind, keys: batch });
   };
+  // Several at once: a store over a network takes its time for each.
+  let puts: Promise<unknown>[] = [];
+  const put = async (...given: Parameters<Store['put']>) => {
+    puts.push(store.put(...given));
+    if (puts.length < putsAtOnce) return;
+    await Promise.all(puts);
+    puts = [];
+  };
   const drop = async (value: object) => {
     const key = `${keys.confirmations}${String(drops).padStart(6, '0')}.json`;
     drops += 1;
-    await store.put(key, Buffer.from(JSON.stringify(value)));
+    await put(key, Buffer.from(JSON.stringify(value)));
     confirmed.push(key);
   };
   for (const message of scenario.messages) {
-    await store.put(message.key, message.bytes, { contentType: message.contentType });
+    await put(message.key, message.bytes, { contentType: message.contentType });
     routed.push(message.key);
     if (routed.length >= routeBatch) {
       flush('route', routed);
@@ -59,6 +68,7 @@ export async function fill(store: Store, count: number, seed: number): Promise<F
       confirmed = [];
     }
   }
+  await Promise.all(puts);
   flush('route', routed);
   flush('confirm', confirmed);
   return { messages: scenario.messages.map(({ key }) => key), drops, orders, standing };
