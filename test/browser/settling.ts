@@ -3,8 +3,7 @@ import { expect } from 'vitest';
 import { expectAccessible, expectNoSideways, keepScreenshot } from './browser.ts';
 import { hostileIds } from './hostile-mail.ts';
 
-/** A key pressed before the page listens, or before it is drawn, is lost, to a person as to a test: Chromium throws away what
- *  is typed between the arrival of a page and its first picture. */
+/** A key pressed before the page listens is lost, to a person as to a test; and nobody presses one before there is a picture. */
 export async function ready(page: Page, selector = '#keys:not([hidden])'): Promise<void> {
   await page.waitForSelector(selector, { state: 'attached' });
   await page.evaluate('new Promise((go) => requestAnimationFrame(() => requestAnimationFrame(go)))');
