@@ -21,6 +21,19 @@ export const bounds = {
   driftMessagesMin: 10,
   /** Tokens named for each finding of drift: enough to tell what happened. */
   driftTokensMax: 10,
+  /** Of messages that hardly differ, under one queue in one week, this many count for routing: enough to learn them by, too few to
+   *  drown what the queue was. */
+  burstCountedMax: 20,
+  /** Share of tokens in common that makes two messages one burst's: of 200, one word changed changes about 7. */
+  burstLikenessMin: 0.8,
+  /** Messages of fewer tokens ("please cancel my account") are alike without anybody's doing. */
+  burstTokensMin: 40,
+  /** Groups of alike messages looked for at once, a few KB each. */
+  burstGroupsMax: 2_000,
+  /** Groups at the cap kept from one night to the next. */
+  burstGroupsKeptMax: 50,
+  /** Different messages beyond the cap, some 30 bytes each in the table; more than these count after all. */
+  burstMembersMax: 5_000,
   /** Scores that a scorer remembers for each region, 8 bytes each: 8 MB; the tokens that make up most of all mail. */
   rememberedScoresMax: 1_000_000,
   /** Ratios remembered for each queue and reading while a fit scores that queue's messages without themselves: 2 MB. */
@@ -246,6 +259,8 @@ export const bounds = {
   /** Held messages compared pair by pair for a new queue: 20,000 pairs, about a second. */
   groupedMessagesMax: 200,
   newQueuesListedMax: 5,
+  /** Messages larger than this are not opened for their words: sixteen are read at a time, in the memory of one function. */
+  reportReadBytesMax: 4 * 1024 * 1024,
   /** Messages read to find the words behind the hashes of one queue. */
   wordsReadMax: 40,
 
@@ -264,6 +279,8 @@ export const bounds = {
   settleBodyBytesMax: 8 * 1024,
   /** Messages listed on the page; whoever settles these sees the next ones. */
   settleListedMax: 200,
+  /** Messages up to this size are read sixteen at a time for their titles; larger ones one by one, at up to 125 MB of memory. */
+  settleSmallBytesMax: 1024 * 1024,
   /** Marks of waiting messages looked at for one page, of which the first may be settled long since: two seconds of reads. */
   settleMarksReadMax: 2_000,
   /** Marks of used tokens taken away at a time, so that nobody waits for it. */

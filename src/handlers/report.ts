@@ -1,5 +1,7 @@
+import { bounds } from '../bounds.ts';
 import { measureReport } from '../metrics/measurement.ts';
 import { writeReport } from '../report/write-report.ts';
+import type { ObjectHead } from '../store/store.ts';
 import type { HandlerDeps } from './handler-deps.ts';
 import { faultMembers } from './log-fault.ts';
 import { readMessage } from './read-message.ts';
@@ -11,6 +13,11 @@ export interface ReportResult {
   readonly pageBytes: number;
 }
 
+/** Whether a message is opened for its words. */
+export function isOpened({ bytes }: Pick<ObjectHead, 'bytes'>): boolean {
+  return bytes <= bounds.reportReadBytesMax;
+}
+
 /** Writes the report of now, whatever the event: made for a schedule after the compaction's. A function of its own, since
  *  it alone draws. Throws what stopped it, so that the schedule's retries and alarms see it. */
 export function createReportHandler(deps: HandlerDeps): (event: unknown) => Promise<ReportResult> {
@@ -20,7 +27,7 @@ export function createReportHandler(deps: HandlerDeps): (event: unknown) => Prom
     try {
       const { desk, extractor } = await openDesk();
       const { page, numbers, pageBytes } = await writeReport(deps.world, desk, extractor, {
-        readMessage: async (key) => (await readMessage(deps.world, key, () => true))?.message ?? null,
+        readMessage: async (key) => (await readMessage(deps.world, key, isOpened))?.message ?? null,
       });
       const result = { page, numbers, pageBytes };
       deps.measure?.(measureReport());

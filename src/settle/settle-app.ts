@@ -198,17 +198,16 @@ async function showList(visit: Visit): Promise<SettleReply> {
   const { deps, frame, bench, nowMs } = visit;
   await dropLeft(deps.world.store, nowMs, bounds.settleUndoMs, deps.onDropped);
   const all = await waitingFor(visit);
-  const shown = await Promise.all(
-    all.slice(0, bounds.settleListedMax).map(async (each) => {
-      const message = await deps.readMessage(keys.inbound + each.message);
-      const subject = messageTitle(message, 90);
-      return {
-        ...each,
-        subject,
-        whyWords: whyWords(each, (queue) => titleIn(bench.desk, queue)),
-      };
-    }),
-  );
+  const listed = all.slice(0, bounds.settleListedMax);
+  // A large message takes memory for itself alone; of small ones many are read at a time.
+  const small = listed.filter(({ bytes }) => bytes <= bounds.settleSmallBytesMax);
+  const titles = new Map(await mapBounded(small, (each) => titleOf(deps, each)));
+  for (const each of listed) if (!titles.has(each.message)) titles.set(...(await titleOf(deps, each)));
+  const shown = listed.map((each) => ({
+    ...each,
+    subject: titles.get(each.message) as string,
+    whyWords: whyWords(each, (queue) => titleIn(bench.desk, queue)),
+  }));
   return reply(200, listPage(frame, shown, totalOf(visit, all), await lastOf(visit), nowMs));
 }
 
@@ -216,6 +215,10 @@ async function showList(visit: Visit): Promise<SettleReply> {
 async function waitingFor({ deps, by }: Visit): Promise<Waiting[]> {
   const held = await heldOf(deps.world.store, by);
   return (await deps.waiting.list()).filter(({ message }) => message !== held?.message);
+}
+
+async function titleOf({ readMessage }: SettleDeps, { message }: Waiting): Promise<[string, string]> {
+  return [message, messageTitle(await readMessage(keys.inbound + message), 90)];
 }
 
 function totalOf({ deps }: Visit, listed: readonly Waiting[]): number {

@@ -30,7 +30,7 @@ export function createMarkedWaitingList({ store }: World): WaitingList {
     const head = await store.head(keys.inbound + message);
     // The router is about to write its decision.
     if (head !== null && head.metadata['tallypost-decision'] === undefined) return null;
-    const waiting = head && waitingOf(head.key, head.metadata, head.modifiedAtMs);
+    const waiting = head && waitingOf(head);
     const isSettled = waiting === null || (await store.head(historyKey(message))) !== null;
     if (isSettled) await store.delete(key, { ifMatch: etag });
     return isSettled || onTheWay.has(messageMark(message)) ? null : waiting;

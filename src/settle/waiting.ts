@@ -3,6 +3,7 @@ import { historyKey } from '../ledger/history-store.ts';
 import { mapBounded } from '../ledger/pace.ts';
 import type { World } from '../ledger/world.ts';
 import { keys } from '../store/keys.ts';
+import type { ObjectHead } from '../store/store.ts';
 import { messageMark, settledOnTheWay } from './pending.ts';
 
 /** A message that a person must look at: held, or routed and drawn at random for a look. */
@@ -13,6 +14,8 @@ export interface Waiting {
   /** Likeliest queue at routing time, or where it went; null when nothing was known. */
   readonly queue: string | null;
   readonly posterior: number;
+  /** Of the message as it came. */
+  readonly bytes: number;
 }
 
 export interface WaitingList {
@@ -43,7 +46,7 @@ export function createWaitingList(world: World): WaitingList {
         const head = await store.head(key);
         // Without a decision it is not waiting yet, and is looked at again.
         if (head?.metadata['tallypost-decision'] === undefined) return;
-        known.set(key, { version, waiting: waitingOf(key, head.metadata, head.modifiedAtMs) });
+        known.set(key, { version, waiting: waitingOf(head) });
       });
       const onTheWay = await settledOnTheWay(store);
       const waiting = [...known.values()].filter((each) => each.waiting !== null);
@@ -60,11 +63,7 @@ export function createWaitingList(world: World): WaitingList {
 }
 
 /** What the head of a message says: whether a person must look at it, and why. */
-export function waitingOf(
-  key: string,
-  metadata: Readonly<Record<string, string>>,
-  modifiedAtMs: number,
-): Waiting | null {
+export function waitingOf({ key, metadata, modifiedAtMs, bytes }: ObjectHead): Waiting | null {
   const isHeld = metadata['tallypost-decision'] === 'held';
   if (!isHeld && metadata['tallypost-audit'] !== 'yes') return null;
   const atMs = Date.parse(metadata['tallypost-at'] ?? '');
@@ -74,5 +73,6 @@ export function waitingOf(
     why: isHeld ? ((metadata['tallypost-reason'] ?? 'unsure') as HoldReason) : 'look',
     queue: metadata['tallypost-queue'] ?? null,
     posterior: Number(metadata['tallypost-posterior'] ?? 0),
+    bytes,
   };
 }

@@ -5,6 +5,7 @@ import { linkTo } from '../../src/settle/link.ts';
 import { heldOf } from '../../src/settle/pending.ts';
 import { readSettleSecret } from '../../src/settle/secret.ts';
 import { createMarkedWaitingList } from '../../src/settle/waiting-marks.ts';
+import type { Store } from '../../src/store/store.ts';
 import { openStation, type Station, teach } from '../handlers/station.ts';
 
 const secret = Buffer.from('a secret of more than 32 characters');
@@ -234,6 +235,45 @@ describe('the page behind a function URL', () => {
       status: 503,
       code: 'desk-not-json',
     });
+  });
+
+  it('reads large messages one at a time for the list, and small ones not all at once', async () => {
+    const cookie = await comeIn('jo');
+    const route = createRouteHandler({ ...station.deps, isMarkingWaiting: true });
+    const large = `zebra ${'x'.repeat(1_100_000)}`;
+    for (let i = 0; i < 40; i++)
+      await station.feed(
+        route,
+        await station.putMail(`mail/more-${i}`, `Subject ${i}`, i < 4 ? large : `zebra ${i}`),
+      );
+    let [open, openLarge, most, mostLarge] = [0, 0, 0, 0];
+    const store: Store = {
+      ...station.store,
+      async stream(key) {
+        const found = await station.store.stream(key);
+        const isLarge = (found?.head.bytes ?? 0) > 1_048_576;
+        open += 1;
+        if (isLarge) openLarge += 1;
+        most = Math.max(most, open);
+        mostLarge = Math.max(mostLarge, openLarge);
+        return (
+          found && {
+            head: found.head,
+            chunks: (async function* () {
+              await new Promise((go) => setTimeout(go, 2));
+              yield* found.chunks;
+              open -= 1;
+              if (isLarge) openLarge -= 1;
+            })(),
+          }
+        );
+      },
+    };
+    const watched = createSettleHandler({ ...station.deps, world: { ...station.world, store } }, secret);
+    const list = (await watched(request('GET', '/', { cookie }))) as SettleUrlResult;
+    expect(list.body).toContain('Subject 0');
+    expect(list.body).toContain('Subject 39');
+    expect([mostLarge, most > 1, most <= 16]).toEqual([1, true, true]);
   });
 
   it('sends what keeps a page to itself, with every answer', async () => {

@@ -2,6 +2,7 @@ import { join, resolve } from 'node:path';
 import { pathToFileURL } from 'node:url';
 import type { Command } from 'commander';
 import { readMessage } from '../../handlers/read-message.ts';
+import { isOpened } from '../../handlers/report.ts';
 import { writeReport } from '../../report/write-report.ts';
 import { size } from '../layout.ts';
 import { openSession, type StoreFlags, withStore } from '../store-session.ts';
@@ -18,7 +19,7 @@ export function addReport(program: Command, terminal: Terminal, end: (code: numb
 async function report(flags: StoreFlags): Promise<Answer> {
   const { world, desk, extractor } = await openSession(flags.store);
   const { data, page, numbers, pageBytes } = await writeReport(world, desk, extractor, {
-    readMessage: async (key) => (await readMessage(world, key, () => true))?.message ?? null,
+    readMessage: async (key) => (await readMessage(world, key, isOpened))?.message ?? null,
   });
   const isDirectory = !/^[a-z0-9]+:\/\//i.test(flags.store);
   const place = isDirectory ? pathToFileURL(resolve(join(flags.store, page))).href : `${flags.store}/${page}`;
