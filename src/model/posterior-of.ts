@@ -25,9 +25,11 @@ export function posteriorOf(scorer: Scorer, features: Features): Posterior {
   });
   let tokens = 0;
   let knownTokens = 0;
+  // One for all regions: small arrays cost more to make and to give back than to fill.
+  const all = new Float64Array(queues);
   features.regions.forEach((present, g) => {
     tokens += present.length;
-    const all = scorer.absentScores[g].slice();
+    all.set(scorer.absentScores[g]);
     knownTokens += addTokens(scorer, g, present, all);
     const scale = lengthScale(present.length);
     for (let k = 0; k < queues; k++) sum[k] += scale * all[k];
@@ -49,28 +51,58 @@ export function combine(scorer: Scorer, scores: Float64Array): Float64Array {
 
 /** Subtracts log Σ exp, so that exp sums to 1; the largest is taken out first, so that nothing overflows. */
 export function normalise(logs: Float64Array): Float64Array {
-  const top = logs.reduce((a, b) => Math.max(a, b), -Infinity);
-  const whole = top + Math.log(logs.reduce((sum, x) => sum + Math.exp(x - top), 0));
+  const top = greatest(logs);
+  let sum = 0;
+  for (let k = 0; k < logs.length; k++) sum += Math.exp(logs[k] - top);
+  const whole = top + Math.log(sum);
   return logs.map((x) => x - whole);
+}
+
+function greatest(values: Float64Array): number {
+  let top = -Infinity;
+  for (let k = 0; k < values.length; k++) top = Math.max(top, values[k]);
+  return top;
 }
 
 /** The posterior made to come true: its largest entry is set to what statements like it came to, by raising the whole to a power,
  *  so that it still sums to 1 and keeps its order; [queues]. */
 export function correct(logProb: Float64Array, reliability: Reliability): Float64Array {
-  const top = logProb.reduce((a, b) => Math.max(a, b), -Infinity);
+  const top = greatest(logProb);
   const said = top - Math.log(-Math.expm1(top));
-  const target = 1 / (1 + Math.exp(-correctedLogOdds(reliability, said)));
   if (reliability.logOdds === null || said === Infinity) return logProb.map(Math.exp);
-  const raised = (power: number) => normalise(logProb.map((x) => x * power)).map(Math.exp);
+  const power = powerFor(logProb, correctedLogOdds(reliability, said));
+  return normalise(logProb.map((x) => x * power)).map(Math.exp);
+}
+
+/** The power p, 1e-3 to 1e3, by which the largest entry of a distribution gets these log odds when all is normalised again: the
+ *  others' sum over it, Σ exp(p · (log − top)), is then exp(−logOdds). Its logarithm falls with p and bends little: Newton's steps
+ *  take some five rounds, and halving the range of log p goes on where they leave it. */
+function powerFor(logProb: Float64Array, logOdds: number): number {
+  const largest = logProb.indexOf(greatest(logProb));
   let low = 1e-3;
   let high = 1e3;
-  // The largest entry rises with the power; 50 halvings of the range of its logarithm leave 1e-14 of it.
-  for (let i = 0; i < 50; i++) {
-    const power = Math.sqrt(low * high);
-    if (raised(power).reduce((a, b) => Math.max(a, b)) < target) low = power;
+  let power = 1;
+  for (let round = 0; round < 60; round++) {
+    let others = 0;
+    let slope = 0;
+    for (let k = 0; k < logProb.length; k++) {
+      if (k === largest) continue;
+      const below = logProb[k] - logProb[largest];
+      const share = Math.exp(power * below);
+      others += share;
+      slope += below * share;
+    }
+    const excess = Math.log(others) + logOdds;
+    if (excess > 0) low = power;
     else high = power;
+    const step = power - (excess * others) / slope;
+    const isInside = step > low && step < high;
+    const next = isInside ? step : Math.sqrt(low * high);
+    // The error is squared with each of Newton's steps: behind one so small nothing is left of it.
+    if (Math.abs(next - power) <= (isInside ? 1e-9 : 1e-14) * power) return next;
+    power = next;
   }
-  return raised(Math.sqrt(low * high));
+  return power;
 }
 
 /** The addends of the log posterior before normalisation: prior, slots, tokens by region, and per region the tokens that
