@@ -16,12 +16,17 @@ export interface Case {
   readonly note?: string;
 }
 
-/** Runs all cases in turn, round after round, so that whatever else the machine does meets them alike. The first round
- *  only warms up. */
+const warmUpRounds = 3;
+
+/** Runs all cases in turn, round after round, so that whatever else the machine does meets them alike; each round begins with
+ *  another case, so that what comes at regular distances, as the collection of garbage, does not always meet the same one.
+ *  The first rounds only warm up. */
 export async function sideBySide(cases: readonly Case[], rounds: number, against?: string): Promise<Row[]> {
   const taken = cases.map((): number[] => []);
-  for (let round = -1; round < rounds; round++) {
-    for (const [i, each] of cases.entries()) {
+  for (let round = -warmUpRounds; round < rounds; round++) {
+    for (let turn = 0; turn < cases.length; turn++) {
+      const i = (turn + round + warmUpRounds) % cases.length;
+      const each = cases[i];
       const before = process.cpuUsage();
       await each.run();
       const { user, system } = process.cpuUsage(before);
