@@ -1,4 +1,4 @@
-import { exponentOf } from './fit.ts';
+import { exponentOf, type SlotsBlock } from './fit.ts';
 import type { Own } from './hits.ts';
 import type { Scorer } from './scorer.ts';
 
@@ -12,15 +12,31 @@ export function priorScore(scorer: Counted, own: Own | null): Float64Array {
   return c.map((n) => Math.log((alpha + n) / whole));
 }
 
-/** log (β + d_jk(v))/(N_j β + c_k), the posterior predictive of slot j's value v under a symmetric Dirichlet prior; [queues].
- *  Source: Murphy, Machine Learning (2012), section 3.4. */
-export function slotScore(scorer: Counted, slot: number, value: number, own: Own | null): Float64Array {
+/** log (β_j(v) + d_jk(v))/(N_j β_j + c_k), the posterior predictive of slot j's value v under a Dirichlet prior; [queues]. With an
+ *  even base β_j(v) = β_j. With the pooled one β_j(v) = N_j β_j m_v, m_v the value's share among all messages: a queue
+ *  that holds nothing yet is then taken to be like the desk, and not like a list.
+ *  Source: Murphy, Machine Learning (2012), section 3.4; Minka, Estimating a Dirichlet distribution (2000), section 1. */
+export function slotScore(
+  scorer: Counted,
+  slot: number,
+  value: number,
+  own: Own | null,
+  base: SlotsBlock['base'],
+): Float64Array {
   const queues = scorer.queues.length;
   const { id, values } = scorer.schema.slots[slot];
-  const beta = scorer.fit.beta[id] ?? 1;
+  const whole = values.length * (scorer.fit.beta[id] ?? 1);
   const d = countsWithout(scorer.slots[slot].subarray(value * queues, (value + 1) * queues), own);
   const c = countsWithout(scorer.messages, own);
-  return d.map((n, k) => Math.log((beta + n) / (values.length * beta + c[k])));
+  const share = base === 'pooled' ? pooledShare(d, c, values.length) : 1 / values.length;
+  return d.map((n, k) => Math.log((whole * share + n) / (whole + c[k])));
+}
+
+/** m_v = (D_v + ½)/(n + ½N). */
+export function pooledShare(held: ArrayLike<number>, messages: ArrayLike<number>, values: number): number {
+  const sum = (counts: ArrayLike<number>) =>
+    Array.prototype.reduce.call(counts, (a, b) => (a as number) + (b as number), 0) as number;
+  return (sum(held) + 0.5) / (sum(messages) + 0.5 * values);
 }
 
 function countsWithout(counts: Float64Array, own: Own | null): Float64Array {
@@ -45,7 +61,7 @@ export function closedScores(scorer: Counted): Pick<Scorer, 'priorScores' | 'slo
     schema.slots.forEach((slot, j) => {
       if (slot.group !== block.group) return;
       for (let v = 0; v < slot.values.length; v++) {
-        add(slotScores[j], v * queues.length, exponents, slotScore(scorer, j, v, null));
+        add(slotScores[j], v * queues.length, exponents, slotScore(scorer, j, v, null, block.base));
       }
     });
   }

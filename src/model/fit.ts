@@ -18,6 +18,8 @@ export interface PriorBlock extends Weighted {
 export interface SlotsBlock extends Weighted {
   readonly kind: 'slots';
   readonly group: string;
+  /** Centre of the prior of each slot's values: `pooled` as all queues hold them, else evenly over the list. */
+  readonly base?: 'pooled';
 }
 
 /** One reading of one region's tokens, or a part of it. */
@@ -65,7 +67,7 @@ export interface Fit {
   readonly bias: Readonly<Record<string, number>>;
   /** Pseudo-count of each queue. */
   readonly alpha: number;
-  /** Pseudo-count of each value, by slot id. */
+  /** Pseudo-count of a value, on average over the slot's list, by slot id. */
   readonly beta: Readonly<Record<string, number>>;
   /** Chosen for the table's size; the exponents were fitted without the tokens that fail it. */
   readonly hold: Hold;
@@ -98,7 +100,15 @@ export function defaultFit(schema: Schema): Fit {
     version: 1,
     blocks: [
       { kind: 'prior', exponent: 0.5, byQueue: {} },
-      ...groups.map((group): SlotsBlock => ({ kind: 'slots', group, exponent: 0.5, byQueue: {} })),
+      ...groups.map(
+        (group): SlotsBlock => ({
+          kind: 'slots',
+          group,
+          base: 'pooled',
+          exponent: 0.5,
+          byQueue: {},
+        }),
+      ),
       ...schema.regions.flatMap(({ id }) => {
         const [tokensFor, tokensAgainst, messagesFor, messagesAgainst] = regionDefaults[id] ?? [
           0.5, 0.4, 0.3, 0.25,

@@ -119,7 +119,7 @@ export function explainParts(scorer: Scorer, features: Features): EvidencePart[]
     if (block.kind !== 'slots') continue;
     schema.slots.forEach((slot, j) => {
       if (slot.group !== block.group) return;
-      const score = weighed(block, slotScore(scorer, j, features.slots[j], null));
+      const score = weighed(block, slotScore(scorer, j, features.slots[j], null, block.base));
       parts.push({ kind: 'slot', place: slot.id, value: slot.values[features.slots[j]], score });
     });
   }

@@ -1,18 +1,26 @@
+import gammaln from '@stdlib/math-base-special-gammaln';
+import { pooledShare } from './closed-scores.ts';
 import type { Counts } from './counts.ts';
-import { logGamma } from './special.ts';
 
-/** log evidence of counts drawn from a symmetric Dirichlet-multinomial over `values` values, the order of draws known:
- *  log Γ(Na)/Γ(Na + n) Π_v Γ(a + n_v)/Γ(a), nats. Zero counts need not be listed.
+/** log evidence of counts drawn from a Dirichlet-multinomial over `values` values, the order of draws known:
+ *  log Γ(Na)/Γ(Na + n) Π_v Γ(a_v + n_v)/Γ(a_v) with a_v = N a m_v, nats; `base` m is even when it is not given. Zero counts
+ *  need not be listed.
  *  Source: Minka, Estimating a Dirichlet distribution (2000), section 3. */
-export function logDirichletEvidence(counts: ArrayLike<number>, values: number, a: number): number {
+export function logDirichletEvidence(
+  counts: ArrayLike<number>,
+  values: number,
+  a: number,
+  base: ArrayLike<number> | null = null,
+): number {
   let total = 0;
   let log = 0;
   for (let v = 0; v < counts.length; v++) {
     if (counts[v] === 0) continue;
     total += counts[v];
-    log += logGamma(a + counts[v]) - logGamma(a);
+    const own = base === null ? a : values * a * base[v];
+    log += gammaln(own + counts[v]) - gammaln(own);
   }
-  return log + logGamma(values * a) - logGamma(values * a + total);
+  return log + gammaln(values * a) - gammaln(values * a + total);
 }
 
 /** Where the evidence is flat, any value does; beyond these ends a prior no longer acts as one. */
@@ -24,10 +32,14 @@ const alphaMax = 10;
 /** The pseudo-count that maximises the summed evidence of several draws from symmetric Dirichlet-multinomials over the same
  *  values, between 0.01 and 100, by golden-section search of its logarithm: 30 evaluations to four digits. (Minka's fixed
  *  point has the same solution, see the test, but creeps where the evidence is flat.) 1 where there are no counts. */
-export function fitPseudoCount(draws: readonly ArrayLike<number>[], values: number): number {
+export function fitPseudoCount(
+  draws: readonly ArrayLike<number>[],
+  values: number,
+  base: ArrayLike<number> | null = null,
+): number {
   if (draws.every((counts) => Array.prototype.every.call(counts, (n) => n === 0))) return 1;
   const evidence = (logA: number) =>
-    draws.reduce((sum, counts) => sum + logDirichletEvidence(counts, values, Math.exp(logA)), 0);
+    draws.reduce((sum, counts) => sum + logDirichletEvidence(counts, values, Math.exp(logA), base), 0);
   const golden = (Math.sqrt(5) - 1) / 2;
   let low = Math.log(least);
   let high = Math.log(most);
@@ -48,7 +60,7 @@ export function fitPseudoCount(draws: readonly ArrayLike<number>[], values: numb
   return Math.exp((low + high) / 2);
 }
 
-/** Pseudo-counts of queues and of each slot's values, chosen by the evidence of the counts by queue. */
+/** Pseudo-counts of queues and of each slot's values about the values' shares, chosen by the evidence of the counts by queue. */
 export function fitPriors(projected: Pick<Counts, 'schema' | 'columns' | 'messages' | 'slots'>): {
   readonly alpha: number;
   readonly beta: Readonly<Record<string, number>>;
@@ -59,7 +71,14 @@ export function fitPriors(projected: Pick<Counts, 'schema' | 'columns' | 'messag
     const draws = Array.from({ length: columns }, (_, k) =>
       Float64Array.from(values, (_, v) => projected.slots[j][v * columns + k]),
     );
-    return [id, rounded(fitPseudoCount(draws, values.length))] as const;
+    const base = values.map((_, v) =>
+      pooledShare(
+        draws.map((counts) => counts[v]),
+        projected.messages,
+        values.length,
+      ),
+    );
+    return [id, rounded(fitPseudoCount(draws, values.length, base))] as const;
   });
   return { alpha: rounded(alpha), beta: Object.fromEntries(beta) };
 }

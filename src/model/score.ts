@@ -22,7 +22,7 @@ export function blockScores(scorer: Scorer, features: Features, own: Own | null 
     if (block.kind === 'prior') add(b, priorScore(scorer, own));
     if (block.kind !== 'slots') return;
     scorer.schema.slots.forEach((slot, j) => {
-      if (slot.group === block.group) add(b, slotScore(scorer, j, features.slots[j], own));
+      if (slot.group === block.group) add(b, slotScore(scorer, j, features.slots[j], own, block.base));
     });
   });
   scorer.readings.forEach((readings, g) => {

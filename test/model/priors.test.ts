@@ -105,3 +105,9 @@ describe('the pseudo-count of most evidence', () => {
     expect(fitPseudoCount([[0, 0]], 2)).toBe(1);
   });
 });
+
+test('a base of shares draws each value by its own pseudo-count', () => {
+  // Shares 3/4 and 1/4 of 2·1 pseudo-counts: 1.5 and 0.5. Urn of two of the first, one of the second:
+  // 1.5/2 · 2.5/3 · 0.5/4 = 5/64.
+  expect(logDirichletEvidence([2, 1], 2, 1, [0.75, 0.25])).toBeCloseTo(Math.log(5 / 64), 12);
+});

@@ -3,7 +3,7 @@ import { describe, expect, test } from 'vitest';
 import type { Features } from '../../src/features/schema.ts';
 import { encodeCounts } from '../../src/model/codec-counts.ts';
 import type { Entry } from '../../src/model/counts.ts';
-import { defaultFit, type Fit, type TokensBlock } from '../../src/model/fit.ts';
+import { type Block, defaultFit, type Fit, type TokensBlock } from '../../src/model/fit.ts';
 import { emptyCounts, foldEntries } from '../../src/model/fold.ts';
 import { combine, explainParts, normalise, posteriorOf } from '../../src/model/posterior-of.ts';
 import { blockScores } from '../../src/model/score.ts';
@@ -216,17 +216,33 @@ describe('by hand', () => {
       '0.333333',
       '0.166667',
     ]);
+    // channel = mail, β = 1 of 4 values about its share m = (3 + ½)/(3 + 2) = 0.7: (2.8 + 2)/(4 + 2), (2.8 + 1)/(4 + 1), 2.8/4.
+    expect([...scores.subarray(3, 6)].map(Math.exp).map((p) => p.toFixed(6))).toEqual([
+      '0.800000',
+      '0.760000',
+      '0.700000',
+    ]);
+    // hour = missing, never seen, of 3 values, m = ½/(3 + 1½) = 1/9: ⅓/(3 + 2), ⅓/(3 + 1), ⅓/3.
+    expect([...scores.subarray(6, 9)].map(Math.exp).map((p) => p.toFixed(6))).toEqual([
+      '0.066667',
+      '0.083333',
+      '0.111111',
+    ]);
+  });
+
+  test('a slot about an even base follows the textbook', () => {
+    const blocks = everyBlock.blocks.map((block): Block => {
+      if (block.kind !== 'slots') return block;
+      const { base: _, ...even } = block;
+      return even;
+    });
+    const entries = [confirm('billing', []), confirm('billing', []), confirm('leaks', [])];
+    const scores = blockScores(scorerOf(entries, { ...everyBlock, blocks }), message([], [2, 0]));
     // channel = mail, β = 1 of 4 values: (1 + 2)/(4 + 2), (1 + 1)/(4 + 1), 1/4.
     expect([...scores.subarray(3, 6)].map(Math.exp).map((p) => p.toFixed(6))).toEqual([
       '0.500000',
       '0.400000',
       '0.250000',
-    ]);
-    // hour = missing, never seen, of 3 values: 1/(3 + 2), 1/(3 + 1), 1/3.
-    expect([...scores.subarray(6, 9)].map(Math.exp).map((p) => p.toFixed(6))).toEqual([
-      '0.200000',
-      '0.250000',
-      '0.333333',
     ]);
   });
 
