@@ -146,14 +146,19 @@ export async function followWaiting(deps: HandlerDeps, options: FollowOptions): 
     } catch (error) {
       deps.log({ level: 'error', event: 'round-failed', ...faultMembers(error) });
     }
-    await Promise.race([deps.world.sleep(intervalMs), aborted(signal)]);
+    if (!signal.aborted) await pause(deps, intervalMs, signal);
   }
 }
 
-function aborted(signal: AbortSignal): Promise<void> {
-  return new Promise((resolve) => {
-    if (signal.aborted) resolve();
-    else signal.addEventListener('abort', () => resolve(), { once: true });
+/** Leaves nothing behind on the signal: it outlives as many pauses as there are rounds. */
+function pause({ world }: HandlerDeps, ms: number, signal: AbortSignal): Promise<void> {
+  return new Promise((resolve, reject) => {
+    const end = () => {
+      signal.removeEventListener('abort', end);
+      resolve();
+    };
+    signal.addEventListener('abort', end);
+    world.sleep(ms).then(end, reject);
   });
 }
 

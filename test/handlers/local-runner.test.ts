@@ -1,3 +1,4 @@
+import { getEventListeners } from 'node:events';
 import { describe, expect, it } from 'vitest';
 import {
   createLocalRunner,
@@ -125,6 +126,33 @@ describe('the local runner', () => {
       level: 'error',
       error: 'Error',
     });
+  });
+
+  it('leaves nothing behind on the signal, however many rounds there are, and ends in the middle of a pause', async () => {
+    const station = await openStation();
+    const control = new AbortController();
+    const listeners: number[] = [];
+    let rounds = 0;
+    const world = {
+      ...station.world,
+      sleep: (): Promise<void> => {
+        listeners.push(getEventListeners(control.signal, 'abort').length);
+        if (rounds < 30) return Promise.resolve();
+        control.abort();
+        return new Promise(() => {});
+      },
+    };
+    await followWaiting(
+      { ...station.deps, world },
+      {
+        signal: control.signal,
+        onRound: () => {
+          rounds += 1;
+        },
+      },
+    );
+    expect(rounds).toBe(30);
+    expect(listeners).toEqual(Array.from({ length: 30 }, () => 1));
   });
 
   it('makes events as S3 and SQS do', () => {
