@@ -1,6 +1,7 @@
 import { bounds } from '../bounds.ts';
 import type { Desk } from '../desk/desk.ts';
 import type { Schema } from '../features/schema.ts';
+import { excessOf } from '../model/bursts.ts';
 import type { CountsView } from '../model/counts.ts';
 import { findDrift } from '../model/drift.ts';
 import { fitFindings } from '../model/fit-table.ts';
@@ -9,7 +10,7 @@ import { readManifest } from './commit.ts';
 import { deleteUnnamed } from './deletion.ts';
 import { finishOrders } from './finish-orders.ts';
 import { checkSchema, isPurgeDue } from './manifest.ts';
-import { readCounts, withFresh } from './objects.ts';
+import { readCapped, withFresh } from './objects.ts';
 import { type ContradictedMessage, type FitModel, type MadeTable, newBaseId, rebuild } from './rebuild.ts';
 import type { World } from './world.ts';
 
@@ -47,6 +48,9 @@ export interface CompactionResult {
   readonly fit: { readonly messages: number; readonly logLoss: number | null } | null;
   /** Distinct tokens counted, and those held by the table that routers load. */
   readonly tokens: { readonly counted: number; readonly held: number };
+  /** Messages that hardly differ, over `burstCountedMax` of them under one queue in one week: how many such bursts may go on, and how
+   *  many messages stand in the base and not in the table that routers load. */
+  readonly bursts: { readonly groups: number; readonly uncounted: number };
   /** Confirmations that everything else contradicts, least likely first. */
   readonly contradictions: readonly ContradictedMessage[];
   /** Queues whose wording changed lately, strongest evidence first. */
@@ -91,12 +95,13 @@ async function compactOnce(
   const segments = manifest.segments.length;
   const isDue = segments > 0 || isPurgeDue(manifest) || (options.force === true && manifest.base !== null);
   if (!isDue) return { kind: 'nothing-new', version, ...nothing };
-  const counts = await readCounts(world, schema, manifest);
+  const { counts, bursts } = await readCapped(world, schema, manifest);
   const measured = { ...nothing, version, segments, ...measure(counts) };
   if (options.dryRun) return { kind: 'dry-run', ...measured };
   const rebuilt = await rebuild(world, desk, schema, manifest, counts, {
     id,
     renames: manifest.renames,
+    bursts,
     fitModel: options.fitModel ?? fitFindings,
   });
   return {
@@ -118,6 +123,7 @@ const nothing = {
   tableBytes: 0,
   fit: null,
   tokens: { counted: 0, held: 0 },
+  bursts: { groups: 0, uncounted: 0 },
   contradictions: [],
   drift: [],
 };
@@ -134,7 +140,7 @@ function findingsOf({
   table,
   byQueue,
   contradictions,
-}: MadeTable): Pick<Made, 'fit' | 'tokens' | 'contradictions' | 'drift'> {
+}: MadeTable): Pick<Made, 'fit' | 'tokens' | 'bursts' | 'contradictions' | 'drift'> {
   const { messages, logLoss } = table.fit;
   const drift = findDrift(byQueue, bounds.driftRecentEpochs).filter((d) => d.logFactor > 0);
   return {
@@ -143,6 +149,7 @@ function findingsOf({
       counted: table.vocabulary.reduce((sum, tokens) => sum + tokens, 0),
       held: table.counts.regions.reduce((sum, r) => sum + r.tokens.length, 0),
     },
+    bursts: { groups: table.bursts.groups.length, uncounted: excessOf(table.bursts) },
     contradictions: contradictions.slice(0, bounds.findingsListedMax),
     drift: drift.slice(0, bounds.findingsListedMax).map(({ tokens: _, ...changed }): ChangedQueue => changed),
   };

@@ -2,6 +2,7 @@ import { bounds } from '../bounds.ts';
 import type { Desk } from '../desk/desk.ts';
 import type { Fault } from '../errors.ts';
 import type { Schema } from '../features/schema.ts';
+import { createBurstGuard } from '../model/bursts.ts';
 import type { Entry } from '../model/counts.ts';
 import { createScorer, type Scorer } from '../model/scorer.ts';
 import { emptyTable, type ServedTable } from '../model/served-table.ts';
@@ -109,7 +110,8 @@ function build(parts: LoadedParts, schema: Schema): LoadedModel {
   const { renames } = manifest;
   const desk = currentDesk(parts.desk, renames);
   const queues = desk.queues.map((q) => q.id);
-  const overlay = [...segments.values()].flat().map((entry) => renamed(entry, renames));
+  const guard = createBurstGuard(table.value.bursts);
+  const overlay = [...segments.values()].flat().map((entry) => renamed(guard.admit(entry), renames));
   // The half-life that the table was made with: another one in the desk's file holds from the next compaction on.
   const scorer = createScorer(table.value, overlay, queues, table.value.halfLifeDays);
   const isOther = manifest.schema !== '' && manifest.schema !== schema.id;

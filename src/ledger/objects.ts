@@ -1,6 +1,7 @@
 import { bounds } from '../bounds.ts';
 import { TallypostError } from '../errors.ts';
 import type { Schema } from '../features/schema.ts';
+import { type Bursts, createBurstGuard, noBursts } from '../model/bursts.ts';
 import { decodeEntries } from '../model/codec-entries.ts';
 import { decodeTable } from '../model/codec-table.ts';
 import type { EncodedCounts, Entry } from '../model/counts.ts';
@@ -31,11 +32,12 @@ export async function readSegment(world: World, schema: Schema, id: string): Pro
 }
 
 /** The counts as a manifest has them: its base with all its segments. Exact, all epochs, the names that were confirmed. Takes the
- *  room of two bases, however many the segments: they are read some at a time. */
+ *  room of two bases, however many the segments: they are read some at a time. `see` is called for each entry, in order. */
 export async function readCounts(
   world: World,
   schema: Schema,
   { base, segments }: Pick<Manifest, 'base' | 'segments'>,
+  see: (entry: Entry) => void = () => {},
 ): Promise<EncodedCounts> {
   const counts = await readBase(world, schema, base);
   if (segments.length === 0) return counts;
@@ -43,9 +45,25 @@ export async function readCounts(
   for (let at = 0; at < segments.length; at += bounds.requestsAtOnceMax) {
     const some = segments.slice(at, at + bounds.requestsAtOnceMax);
     const read = await mapBounded(some, ({ id }) => readSegment(world, schema, id));
-    for (const entries of read) tally.add(entries);
+    for (const entries of read) {
+      tally.add(entries);
+      entries.forEach(see);
+    }
   }
   return tally.sum(counts, `base ${base ?? 'none'} with ${segments.length} segments`);
+}
+
+/** The counts as a manifest has them, and what of them is a burst's excess: the last table's, led on by the segments. */
+export async function readCapped(
+  world: World,
+  schema: Schema,
+  manifest: Manifest,
+): Promise<{ readonly counts: EncodedCounts; readonly bursts: Bursts }> {
+  const isSame = manifest.schema === schema.id;
+  const before = isSame ? (await readTable(world, schema, manifest.table)).bursts : noBursts(schema);
+  const guard = createBurstGuard(before);
+  const counts = await readCounts(world, schema, manifest, (entry) => guard.admit(entry));
+  return { counts, bursts: guard.bursts() };
 }
 
 async function readBytes(world: World, key: string): Promise<Uint8Array> {

@@ -5,7 +5,7 @@ import type { Schema } from '../features/schema.ts';
 import { keys } from '../store/keys.ts';
 import { commit, readManifest } from './commit.ts';
 import { checkSchema, type Manifest, type Renames, successor } from './manifest.ts';
-import { readCounts, withFresh } from './objects.ts';
+import { readCapped, readCounts, withFresh } from './objects.ts';
 import { pause } from './pace.ts';
 import { currentDesk, currentName } from './queue-names.ts';
 import { archive, newBaseId, rebuild } from './rebuild.ts';
@@ -177,8 +177,8 @@ async function commitRenames(
   { id, renames }: { readonly id: string; readonly renames: Renames },
 ): Promise<{ isCommitted: boolean; version: number }> {
   if (manifest.schema !== '') {
-    const counts = await readCounts(world, schema, manifest);
-    return rebuild(world, desk, schema, manifest, counts, { id, renames, fitModel: null });
+    const { counts, bursts } = await readCapped(world, schema, manifest);
+    return rebuild(world, desk, schema, manifest, counts, { id, renames, bursts, fitModel: null });
   }
   const committed = await commit<boolean>(world, async (now) => {
     if (JSON.stringify(now.renames) === JSON.stringify(renames)) return { kind: 'settled', value: true };

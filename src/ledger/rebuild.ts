@@ -1,11 +1,13 @@
 import type { Desk } from '../desk/desk.ts';
 import type { Schema } from '../features/schema.ts';
+import { type Bursts, memberKey } from '../model/bursts.ts';
 import { checkCounts } from '../model/check-counts.ts';
 import { encodeTable } from '../model/codec-table.ts';
 import type { CountsView, EncodedCounts } from '../model/counts.ts';
 import { defaultFit, type Fit } from '../model/fit.ts';
 import type { FitFindings, fitFindings } from '../model/fit-table.ts';
 import { type ServedTable, serve } from '../model/served-table.ts';
+import { sumCounts } from '../model/sum-counts.ts';
 import { keys } from '../store/keys.ts';
 import { encodeAbsorbed, readAbsorbed } from './absorbed.ts';
 import { commit } from './commit.ts';
@@ -14,7 +16,7 @@ import { encodeManifest, isNamed, isPurgeDue, type Manifest, type Renames, succe
 import { putNew, readTable } from './objects.ts';
 import { isOfStore } from './pace.ts';
 import { currentName } from './queue-names.ts';
-import { sampleHistories } from './sample.ts';
+import { type SampledMessage, sampleHistories } from './sample.ts';
 import type { World } from './world.ts';
 
 /** Fits what routers load from the counts by queue, a sample of the messages in them, and the last fit. */
@@ -44,6 +46,8 @@ export interface RebuildOptions {
   readonly renames: Renames;
   /** Null: keep the last fit. */
   readonly fitModel: FitModel | null;
+  /** Of the counts: what routers are not to count. */
+  readonly bursts: Bursts;
   /** Lands only on the very version that was read: nothing may land meanwhile. */
   readonly isExclusive?: boolean;
 }
@@ -122,25 +126,52 @@ export async function makeTable(
   schema: Schema,
   from: Manifest,
   counts: CountsView,
-  { renames, fitModel }: Pick<RebuildOptions, 'renames' | 'fitModel'>,
+  { renames, fitModel, bursts }: Pick<RebuildOptions, 'renames' | 'fitModel' | 'bursts'>,
 ): Promise<MadeTable> {
-  const columns = counts.columns.map(({ queue, epoch }) => ({ queue: currentName(renames, queue), epoch }));
-  const byQueue: CountsView = { ...counts, columns };
+  const capped = withoutExcess(schema, counts, bursts);
+  const columns = capped.columns.map(({ queue, epoch }) => ({ queue: currentName(renames, queue), epoch }));
+  const byQueue: CountsView = { ...capped, columns };
   const { halfLifeDays } = desk;
   const last = renamedFit(await lastFit(world, schema, from), renames);
   if (fitModel === null)
-    return { table: serve(byQueue, last, { halfLifeDays }), byQueue, contradictions: [] };
-  const sample = await sampleHistories(world, schema, from, renames);
+    return { table: serve(byQueue, last, { halfLifeDays, bursts }), byQueue, contradictions: [] };
+  const drawn = await sampleHistories(world, schema, from, renames);
+  const sample = bursts.members.size === 0 ? drawn : drawn.filter(isCounted(bursts, renames));
   const fitted = fitModel(byQueue, sample, last, { halfLifeDays });
   const { fit, contradictions } = 'fit' in fitted ? fitted : { fit: fitted, contradictions: [] };
   return {
-    table: serve(byQueue, fit, { halfLifeDays }),
+    table: serve(byQueue, fit, { halfLifeDays, bursts }),
     byQueue,
     contradictions: contradictions.map(({ index, ...rest }) => {
       const { message, queue } = sample[index];
       return { message, queue, ...rest };
     }),
   };
+}
+
+/** The counts without the bursts' excess. It was put in and can be taken out, cell by cell; what a base from elsewhere does not
+ *  hold (a recount, say) is refused as `counts-negative`. */
+function withoutExcess(schema: Schema, counts: CountsView, { excess }: Bursts): CountsView {
+  if (excess.columns.length === 0) return counts;
+  return sumCounts(
+    schema,
+    [
+      { counts, sign: 1 },
+      { counts: excess, sign: -1 },
+    ],
+    'counts without the excess of bursts',
+  );
+}
+
+/** Whether a message of the sample stands in the counts without the excess. */
+function isCounted({ members }: Bursts, renames: Renames): (message: SampledMessage) => boolean {
+  const named = new Set(
+    [...members.keys()].map((key) => {
+      const [, held, queue, epoch] = /^(\S+) (.*)@(\d+)$/.exec(key) as RegExpExecArray;
+      return `${held} ${currentName(renames, queue)}@${epoch}`;
+    }),
+  );
+  return ({ features, queue, epoch }) => !named.has(memberKey(features, { queue, epoch }));
 }
 
 async function lastFit(world: World, schema: Schema, from: Manifest): Promise<Fit> {

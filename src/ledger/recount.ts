@@ -2,6 +2,7 @@ import { bounds } from '../bounds.ts';
 import type { Desk } from '../desk/desk.ts';
 import { type Fault, TallypostError } from '../errors.ts';
 import type { Features, Schema } from '../features/schema.ts';
+import { type Bursts, createBurstGuard, noBursts } from '../model/bursts.ts';
 import { decodeFeatures, encodeFeatures } from '../model/codec-entries.ts';
 import type { CellDifference, EncodedCounts, Entry } from '../model/counts.ts';
 import { diffCounts } from '../model/difference.ts';
@@ -65,7 +66,13 @@ async function recountUndisturbed(
     const id = newBaseId(world, manifest);
     const isMigration = manifest.schema !== '' && manifest.schema !== schema.id;
     const reread = isMigration && options.repair ? (options.reread ?? (async () => null)) : null;
-    const { counts, messages, unread } = await countHistories(world, schema, manifest, reread);
+    const { counts, bursts, messages, unread } = await countHistories(
+      world,
+      schema,
+      manifest,
+      reread,
+      options.repair ?? false,
+    );
     const { table, fault } = await readTableCounts(world, schema, manifest);
     const { manifest: after } = await readManifest(world);
     // An erasure or a restore meanwhile changed what the histories say of the version compared; a compaction may have deleted
@@ -94,6 +101,7 @@ async function recountUndisturbed(
       const rebuilt = await rebuild(world, desk, schema, manifest, counts, {
         id,
         renames: manifest.renames,
+        bursts,
         fitModel: options.fitModel ?? null,
         isExclusive: isMigration,
       });
@@ -123,9 +131,11 @@ async function countHistories(
   schema: Schema,
   manifest: Manifest,
   reread: Reread | null,
-): Promise<{ counts: EncodedCounts; messages: number; unread: number }> {
+  isForRepair: boolean,
+): Promise<{ counts: EncodedCounts; bursts: Bursts; messages: number; unread: number }> {
   const hasAbsorbed = await createAbsorbedReader(world)(manifest);
   const tally = createTally(schema);
+  const guard = isForRepair ? createBurstGuard(noBursts(schema)) : null;
   let [messages, unread] = [0, 0];
   let chunk: string[] = [];
   const add = async () => {
@@ -140,6 +150,7 @@ async function countHistories(
     const standing = entries.filter((e) => e !== null);
     messages += standing.length;
     tally.add(standing);
+    if (guard !== null) for (const entry of standing) guard.admit(entry);
     chunk = [];
   };
   for await (const message of listMessages(world)) {
@@ -147,7 +158,12 @@ async function countHistories(
     if (chunk.length >= bounds.recountChunkMax) await add();
   }
   await add();
-  return { counts: tally.sum(null, 'recount'), messages, unread };
+  return {
+    counts: tally.sum(null, 'recount'),
+    bursts: guard?.bursts() ?? noBursts(schema),
+    messages,
+    unread,
+  };
 }
 
 function entryOf(

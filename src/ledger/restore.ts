@@ -7,7 +7,7 @@ import { keys } from '../store/keys.ts';
 import { readAbsorbed } from './absorbed.ts';
 import { commit, readManifest } from './commit.ts';
 import { checkSchema, decodeManifest, type Manifest, successor } from './manifest.ts';
-import { putNew, readBase } from './objects.ts';
+import { putNew, readBase, readTable } from './objects.ts';
 import { closeOrder, placeOrder } from './orders.ts';
 import { archive, makeTable, newBaseId } from './rebuild.ts';
 import { sweepHistories } from './sweep.ts';
@@ -127,6 +127,7 @@ async function tableFor(
   const { table } = await makeTable(world, desk, schema, target, counts, {
     renames: now.renames,
     fitModel: null,
+    bursts: (await readTable(world, schema, target.table)).bursts,
   });
   await putNew(world, keys.tables + id, encodeTable(table));
   return id;

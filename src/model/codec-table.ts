@@ -1,7 +1,15 @@
 import type { Schema } from '../features/schema.ts';
+import { type BurstGroup, type Bursts, noBursts } from './bursts.ts';
 import { ByteReader, ByteWriter, layoutOf, seal, unseal } from './bytes.ts';
 import { checkCounts } from './check-counts.ts';
-import { readCounts, readTokens, writeCounts, writeTokens } from './codec-counts.ts';
+import {
+  readColumns,
+  readCounts,
+  readTokens,
+  writeColumns,
+  writeCounts,
+  writeTokens,
+} from './codec-counts.ts';
 import type { Fit } from './fit.ts';
 import { weightUnit } from './projection.ts';
 import type { ServedTable } from './served-table.ts';
@@ -10,7 +18,7 @@ import type { ServedTable } from './served-table.ts';
  *  so. With more queues than these there are more cells to share a token's bytes, and a table loads faster without. */
 const packedQueuesMax = 8;
 
-/** A served table as bytes: reference epoch, half-life, vocabulary, pruned tokens, fit as JSON, counts. Canonical. */
+/** A served table as bytes: reference epoch, half-life, vocabulary, pruned tokens, fit as JSON, counts, bursts. Canonical. */
 export function encodeTable(table: ServedTable): Uint8Array {
   const out = new ByteWriter();
   out.varint(table.referenceEpoch);
@@ -20,6 +28,7 @@ export function encodeTable(table: ServedTable): Uint8Array {
   out.text(JSON.stringify(table.fit));
   const isPacked = table.counts.columns.length <= packedQueuesMax;
   writeCounts(out, table.counts, scaleOf(table.halfLifeDays), isPacked);
+  writeBursts(out, table.bursts);
   return seal('table', table.counts.schema.id, out.written());
 }
 
@@ -34,9 +43,37 @@ export function decodeTable(bytes: Uint8Array, schema: Schema, place: string): S
   const fit = readFit(reader);
   const packedMax = layoutOf(bytes) === 1 ? -1 : packedQueuesMax;
   const counts = readCounts(reader, schema, scaleOf(halfLifeDays), packedMax);
+  const bursts = layoutOf(bytes) === 1 ? noBursts(schema) : readBursts(reader, schema);
   reader.end();
   checkCounts(counts, place);
-  return { counts, referenceEpoch, halfLifeDays, vocabulary, pruned, fit };
+  checkCounts(bursts.excess, place);
+  return { counts, referenceEpoch, halfLifeDays, vocabulary, pruned, fit, bursts };
+}
+
+function writeBursts(out: ByteWriter, { groups, excess, members }: Bursts): void {
+  out.varint(groups.length);
+  writeColumns(
+    out,
+    groups.map((g) => g.column),
+  );
+  for (const { regions, counted } of groups) {
+    out.varint(counted);
+    for (const tokens of regions) writeTokens(out, tokens);
+  }
+  writeCounts(out, excess, 1);
+  out.text(JSON.stringify([...members]));
+}
+
+function readBursts(reader: ByteReader, schema: Schema): Bursts {
+  const length = reader.length();
+  const columns = readColumns(reader);
+  if (columns.length !== length) throw reader.broken(`${length} columns`, String(columns.length));
+  const groups = columns.map((column): BurstGroup => {
+    const counted = reader.varint();
+    return { column, counted, regions: schema.regions.map(({ tokensMax }) => readTokens(reader, tokensMax)) };
+  });
+  const excess = readCounts(reader, schema, 1);
+  return { groups, excess, members: new Map(JSON.parse(reader.text()) as [string, number][]) };
 }
 
 function scaleOf(halfLifeDays: number | null): number {

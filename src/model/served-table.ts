@@ -1,4 +1,5 @@
 import type { Schema } from '../features/schema.ts';
+import { type Bursts, noBursts } from './bursts.ts';
 import type { Counts, CountsView } from './counts.ts';
 import { defaultFit, type Fit } from './fit.ts';
 import { emptyCounts } from './fold.ts';
@@ -18,10 +19,14 @@ export interface ServedTable {
    *  taken for new when a later entry holds them. */
   readonly pruned: readonly Float64Array[];
   readonly fit: Fit;
+  /** What was left out of the counts, so that no burst of one sender outweighs the rest. */
+  readonly bursts: Bursts;
 }
 
 export interface ServeOptions {
   readonly halfLifeDays: number | null;
+  /** What the counts were made without. */
+  readonly bursts?: Bursts;
 }
 
 export function emptyTable(schema: Schema): ServedTable {
@@ -29,7 +34,7 @@ export function emptyTable(schema: Schema): ServedTable {
 }
 
 /** The table that routers load, made from the counts of all epochs, with the tokens that `fit.hold` holds. O(cells). */
-export function serve(counts: CountsView, fit: Fit, { halfLifeDays }: ServeOptions): ServedTable {
+export function serve(counts: CountsView, fit: Fit, { halfLifeDays, bursts }: ServeOptions): ServedTable {
   const projection = projectionOf(counts, halfLifeDays);
   const vocabulary = vocabularyOf(counts, projection);
   const { regions, dropped } = applyHold(counts, projection, vocabulary, fit);
@@ -41,6 +46,7 @@ export function serve(counts: CountsView, fit: Fit, { halfLifeDays }: ServeOptio
     vocabulary,
     pruned: dropped,
     fit,
+    bursts: bursts ?? noBursts(counts.schema),
   };
 }
 
@@ -64,5 +70,13 @@ export function serveTokens(
   });
   const { referenceEpoch, head } = projection;
   const pruned = regions.map(() => new Float64Array(0));
-  return { counts: { ...head, regions }, referenceEpoch, halfLifeDays, vocabulary, pruned, fit };
+  return {
+    counts: { ...head, regions },
+    referenceEpoch,
+    halfLifeDays,
+    vocabulary,
+    pruned,
+    fit,
+    bursts: noBursts(counts.schema),
+  };
 }

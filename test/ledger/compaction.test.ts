@@ -1,7 +1,9 @@
 import { describe, expect, it } from 'vitest';
 import { bounds } from '../../src/bounds.ts';
 import { compact } from '../../src/ledger/compaction.ts';
+import { loadModel } from '../../src/ledger/load-model.ts';
 import { recount } from '../../src/ledger/recount.ts';
+import { undoConfirmations } from '../../src/ledger/undo.ts';
 import { createMemoryStore } from '../../src/store/memory.ts';
 import type { Store } from '../../src/store/store.ts';
 import { claim, countsNow, desk, fold, keysOf, schema, standings, testWorld } from './fixture.ts';
@@ -159,6 +161,43 @@ describe('the result of a compaction', () => {
       { message: 'odd', queue: 'leaks', likelier: 'billing' },
     ]);
     expect(contradictions[0].probability).toBeLessThan(0.01);
+  });
+
+  it('states a burst of alike messages, which count up to a cap for routing and in full in the base', async () => {
+    const world = testWorld();
+    const alike = (i: number) => {
+      const one = claim(`burst${i}`, 'billing', 0, 'helper');
+      const tokens = Float64Array.from({ length: 50 }, (_, t) => (t < 49 ? 5000 + t : 9000 + i));
+      return { ...one, features: { ...one.features, regions: [tokens] } };
+    };
+    const others = ['a', 'b', 'c'].map((id) => claim(id, 'leaks'));
+    await fold(world, ...others, ...Array.from({ length: 30 }, (_, i) => alike(i)));
+    const messagesServed = async () => {
+      const { scorer } = await loadModel(world, desk, schema, null);
+      return scorer.messages[scorer.queues.indexOf('billing')];
+    };
+    expect(await messagesServed()).toBe(bounds.burstCountedMax);
+    expect(await compact(world, desk, schema)).toMatchObject({
+      messages: 33,
+      bursts: { groups: 1, uncounted: 10 },
+    });
+    expect(await messagesServed()).toBe(20);
+    // The next night: more of them, none counts.
+    await fold(world, alike(31), alike(32));
+    expect(await messagesServed()).toBe(20);
+    expect((await compact(world, desk, schema)).bursts).toEqual({ groups: 1, uncounted: 12 });
+    expect(await messagesServed()).toBe(20);
+    expect((await recount(world, desk, schema)).differences).toEqual([]);
+    const [from, until] = [0, world.clock.ms + 1e9];
+    await undoConfirmations(world, schema, { by: 'helper', sinceMs: from, untilMs: until });
+    expect(await messagesServed()).toBe(0);
+    expect(await compact(world, desk, schema)).toMatchObject({
+      messages: 3,
+      bursts: { groups: 0, uncounted: 0 },
+    });
+    const fresh = testWorld(2);
+    await fold(fresh, ...others);
+    expect(await countsNow(world)).toEqual(await countsNow(fresh));
   });
 
   it('says which queue changed its wording lately', async () => {

@@ -8,7 +8,13 @@ export function tokensIn(key: string, body: Uint8Array): number[] {
   if (key.startsWith('model/bases/')) return [...decodeCounts(body, schema, key).regions[0].tokens];
   if (key.startsWith('model/tables/')) {
     const table = decodeTable(body, schema, key);
-    return [...table.counts.regions[0].tokens, ...table.pruned.flatMap((p) => [...p])];
+    const { groups, excess } = table.bursts;
+    return [
+      ...table.counts.regions[0].tokens,
+      ...table.pruned.flatMap((p) => [...p]),
+      ...excess.regions[0].tokens,
+      ...groups.flatMap((g) => g.regions.flatMap((tokens) => [...tokens])),
+    ];
   }
   if (key.startsWith('model/segments/'))
     return decodeEntries(body, schema, key).flatMap(({ features }) => [...features.regions[0]]);

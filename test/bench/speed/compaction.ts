@@ -7,6 +7,7 @@ import { emptyManifest, encodeManifest, type Manifest, withSegment } from '../..
 import { newBaseId, rebuild } from '../../../src/ledger/rebuild.ts';
 import { recount } from '../../../src/ledger/recount.ts';
 import type { World } from '../../../src/ledger/world.ts';
+import { noBursts } from '../../../src/model/bursts.ts';
 import { encodeEntries, encodeFeatures } from '../../../src/model/codec-entries.ts';
 import { fitTable } from '../../../src/model/fit-table.ts';
 import { createTally } from '../../../src/model/tally.ts';
@@ -74,6 +75,7 @@ async function prepare() {
   const made = await rebuild(world, desk, schema, from, counted.counts, {
     id,
     renames: {},
+    bursts: noBursts(schema),
     fitModel: fitTable,
   });
   if (!made.isCommitted) throw new Error('the base was not committed');
