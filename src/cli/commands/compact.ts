@@ -1,4 +1,5 @@
 import type { Command } from 'commander';
+import { bounds } from '../../bounds.ts';
 import { createCompactHandler } from '../../handlers/compact.ts';
 import { type CompactionResult, compact } from '../../ledger/compaction.ts';
 import { columns, count, plural, size } from '../layout.ts';
@@ -55,6 +56,11 @@ function describe(done: CompactionResult): string {
     rows.push([
       'log loss, each left out',
       `${done.fit.logLoss.toFixed(4)} nats over ${plural(done.fit.messages, 'message')}`,
+    ]);
+  if (done.bursts.uncounted > 0)
+    rows.push([
+      `alike messages, not routed by beyond ${bounds.burstCountedMax}`,
+      count(done.bursts.uncounted),
     ]);
   if (done.deletedObjects > 0) rows.push(['old objects deleted', count(done.deletedObjects)]);
   return columns(rows);

@@ -27,8 +27,8 @@ describe('capacity', () => {
     const demand = demandOf(traffic, costs);
     // 4 messages: each received and marked; 2 confirmations: drop, mark and history; 0.02 folds: segment and manifest.
     expect(demand.s3Writes).toBeCloseTo(4 * 2 + 2 * 3 + 0.02 * 2, 9);
-    // 4 messages: head, body and the manifest; 2 confirmations: the mark and four of the fold's; 0.02 folds of three.
-    expect(demand.s3Reads).toBeCloseTo(4 * 3 + 2 * 5 + 0.02 * 3, 9);
+    // 4 messages: head, body and the manifest; 2 confirmations: the mark and three of the fold's; 0.02 folds of three.
+    expect(demand.s3Reads).toBeCloseTo(4 * 3 + 2 * 4 + 0.02 * 3, 9);
     // 0.02 folds · 0.05 s / 0.5
     expect(demand.commits).toBeCloseTo(0.002, 9);
     // 2,592,000 · 0.5 · 2 = 2,592,000 kept: 10 + 25.92
