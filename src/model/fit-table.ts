@@ -8,7 +8,7 @@ import { normalise } from './posterior-of.ts';
 import { fitPriors } from './priors.ts';
 import { type Projection, projectionOf, vocabularyOf, weightOf } from './projection.ts';
 import { chooseHold, holdAll } from './prune.ts';
-import { learnReliability } from './reliability.ts';
+import { learnReliability, renewReliability } from './reliability.ts';
 import { rowCount } from './rows.ts';
 import { createScorer } from './scorer.ts';
 import { type ServedTable, serveTokens } from './served-table.ts';
@@ -104,7 +104,14 @@ export function fitFindings(
     return { ...block, exponent, byQueue: Object.fromEntries(differing.filter(([, w]) => w !== exponent)) };
   });
   const bias = Object.fromEntries(queues.map((queue, k) => [queue, rounded(byQueue.bias[k])]));
-  const fit: Fit = { ...basis, blocks, bias, logLoss: meanLoss(scores, byQueue.logs), messages: own.length };
+  const fit: Fit = {
+    ...basis,
+    blocks,
+    bias,
+    reliability: renewReliability(counts.record, previousFit.reliability, own.length),
+    logLoss: meanLoss(scores, byQueue.logs),
+    messages: own.length,
+  };
   // With nothing else in the queue, nothing else can say that a message does not belong there.
   const isAlone = ({ queue, weight }: Own) => head.messages[queue] - weight < 1;
   return { fit, contradictions: contradict(scores, byQueue.logs, queues, own, isAlone) };

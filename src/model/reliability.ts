@@ -65,9 +65,19 @@ export function learnReliability(record: Float64Array, last: Reliability): Relia
   ).map(logOddsOf);
   const before = last.logOdds ?? residual.map((_, b) => bandMiddleLogOdds(b));
   return {
+    ...last,
     logOdds: rising(before.map((x) => interpolate(residual, x))),
     since: [...record].map((n, i) => (isBiased[Math.floor(i / 4 / groupBands)] ? n : (last.since[i] ?? 0))),
   };
+}
+
+/** The correction beside exponents that were just fitted to `messages`. What was said under an empty desk's exponents tells nothing
+ *  of fitted ones, and of a fit to half as many messages little: the record begins anew with the first fit, then whenever the
+ *  fitted messages have doubled, a correction learned meanwhile staying in force. A record that goes on is learned from. */
+export function renewReliability(record: Float64Array, last: Reliability, messages: number): Reliability {
+  if (last.fitted === undefined) return { logOdds: null, since: [...record], fitted: messages };
+  if (messages >= 2 * last.fitted) return { ...last, since: [...record], fitted: messages };
+  return learnReliability(record, last);
 }
 
 /** At least a little higher from band to band: of two messages the surer one stays the surer one where bands were pooled. */

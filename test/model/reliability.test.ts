@@ -2,7 +2,13 @@ import fc from 'fast-check';
 import { describe, expect, test } from 'vitest';
 import { correct } from '../../src/model/posterior-of.ts';
 import { bandMiddleLogOdds, bandOf, recordBands } from '../../src/model/record.ts';
-import { biasEvidence, countBands, isotonic, learnReliability } from '../../src/model/reliability.ts';
+import {
+  biasEvidence,
+  countBands,
+  isotonic,
+  learnReliability,
+  renewReliability,
+} from '../../src/model/reliability.ts';
 
 const nothing = { logOdds: null, since: [] };
 const odds = (logOdds: number) => 1 / (1 + Math.exp(-logOdds));
@@ -127,5 +133,25 @@ describe('isotonic regression', () => {
         },
       ),
     );
+  });
+});
+
+describe('beside exponents just fitted', () => {
+  const record = recordOf(400, (said) => 0.2 + 0.6 * said);
+
+  test('what was said before the first fit is no news', () => {
+    const first = renewReliability(record, learnReliability(record, nothing), 40);
+    expect(first).toEqual({ logOdds: null, since: [...record], fitted: 40 });
+    expect(renewReliability(record, first, 50)).toBe(first);
+  });
+
+  test('what was said since is, until the fitted messages have doubled', () => {
+    const first = { logOdds: null, since: [], fitted: 400 };
+    const learned = renewReliability(record, first, 799);
+    expect(learned.logOdds?.[10]).toBeCloseTo(1.41403, 4);
+    expect(learned.fitted).toBe(400);
+    // Doubled: the correction stays, the record begins anew.
+    expect(renewReliability(record, first, 800)).toEqual({ logOdds: null, since: [...record], fitted: 800 });
+    expect(renewReliability(record, learned, 800)).toEqual({ ...learned, fitted: 800 });
   });
 });
