@@ -150,13 +150,13 @@ export function tasksOf(data: ReportData): Task[] {
     health.faults.length > 0 && {
       anchor: 'health',
       text: 'Repair the table before anything else: it cannot be trusted as it is.',
-      command: 'tallypost recount --repair',
+      command: 'tallypost recount --repair --store STORE',
     },
     waiting.messages > 0 &&
       waiting.oldestAt !== null && {
         anchor: 'volume',
         text: `Settle ${plural(waiting.messages, 'held message')}; the oldest has waited ${ago(waiting.oldestAt, madeAt)}.`,
-        command: 'tallypost settle',
+        command: 'tallypost settle --store STORE',
       },
     newQueues.length > 0 && {
       anchor: 'new-queue',

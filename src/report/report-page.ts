@@ -199,7 +199,7 @@ function secondLook(data: ReportData): Markup {
             each,
           ) => html`<tr><th scope="row"><code>${plainLine(each.message, 80)}</code></th><td>${answers.titleOf(data, each.confirmed)}</td>
 <td>${answers.titleOf(data, each.likelier)} (${inHundred(each.likelierProbability)})</td><td>${plainLine(each.by, 40)}, ${shortDay(each.at)}</td></tr>`,
-        )}</tbody></table></div><p class="quiet">To see why: <code>tallypost explain MESSAGE</code>. To put it right: confirm it again.</p>`,
+        )}</tbody></table></div><p class="quiet">To see why: <code>tallypost explain MESSAGE --store STORE</code>. To put it right: confirm it again.</p>`,
   );
 }
 
@@ -214,7 +214,7 @@ function newQueues(data: ReportData): Markup {
           (group, i) => html`<h3>Group ${i + 1}: ${plural(group.messages.length, 'message')}</h3>
 <p>${group.words.length > 0 ? html`Typical words: <span class="words">${group.words.map((word) => plainLine(word, 40)).join(', ')}</span>.` : 'None of these messages is left to read.'}
 A queue of their own is ${surely(group.decibans)} the better account of them.</p>
-<p class="quiet">To open one and confirm these messages for it: <code>tallypost queue open ID --title TITLE --proposal ${i + 1}</code></p>
+<p class="quiet">To open one and confirm these messages for it: <code>tallypost queue open ID --title TITLE --proposal ${i + 1} --store STORE</code></p>
 <details><summary>The messages</summary><ul>${group.messages.map((message) => html`<li><code>${plainLine(message, 80)}</code></li>`)}</ul></details>`,
         ),
   );
@@ -231,7 +231,7 @@ function health(data: ReportData): Markup {
 <dt>Size</dt><dd>${size(state.tableBytes)}</dd><dt>Compacted</dt><dd>${state.compactedAt === null ? 'not yet' : day(state.compactedAt)}</dd>
 <dt>Batches since</dt><dd>${count(state.segments)}</dd>
 <dt>Tuned on</dt><dd>${state.fit.messages === 0 ? 'nothing yet: it works with what it started with' : plural(state.fit.messages, 'message')}</dd></dl>
-<h3>What counts how much</h3><p class="quiet">Tuned on what was confirmed: 1 is full weight, 0 none.</p><ul class="bars">${state.weights
+<h3>What counts how much</h3><p class="quiet">Tuned on what was confirmed: 0 counts for nothing, 1 at face value, 2 doubly.</p><ul class="bars">${state.weights
       .filter((each) => each.exponent > 0.005)
       .map(
         (each) =>

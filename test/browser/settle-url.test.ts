@@ -122,7 +122,7 @@ describe.runIf(certificate !== null)('the deployed page for held messages in a b
       by: 'jo',
     });
     expect(await heldOf(desk.store, 'jo')).toMatchObject({ message: second, queue: 'complaints' });
-  }, 120_000);
+  }, 300_000);
 
   it('opens no link that is old, altered or used', async () => {
     const say = async (link: string) => {
@@ -140,7 +140,7 @@ describe.runIf(certificate !== null)('the deployed page for held messages in a b
     // The browser itself notes each 403.
     expect(watched.troubles.every((line) => line.includes('403'))).toBe(true);
     watched.troubles.length = 0;
-  }, 120_000);
+  }, 300_000);
 
   it('settles nothing that another site posts in a person’s name, with their cookie or without', async () => {
     await comeIn(page, linkFor('sam'));
@@ -160,7 +160,7 @@ describe.runIf(certificate !== null)('the deployed page for held messages in a b
     }
     expect(await heldOf(desk.store, 'sam')).toBeNull();
     expect(shownId(page)).toBe(id);
-  }, 120_000);
+  }, 300_000);
 
   it('runs, fetches and settles nothing that hostile mail asks for', async () => {
     await putHostileMail(desk.store);
@@ -169,7 +169,7 @@ describe.runIf(certificate !== null)('the deployed page for held messages in a b
     await expectHostileMailTame(page, url.origin);
     expect(await heldOf(desk.store, 'brave')).toBeNull();
     await takeHostileMail(desk.store);
-  }, 120_000);
+  }, 300_000);
 
   it('logged nothing but lines of JSON that name no message and nobody', async () => {
     const lines = one.output().split('\n').filter(Boolean);

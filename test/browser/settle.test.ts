@@ -92,7 +92,7 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
       await expectAccessible(page);
       await expectNoSideways(page);
     },
-    120_000,
+    300_000,
   );
 
   it('lets single keys be turned off, and works without them', async () => {
@@ -113,7 +113,7 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
     await page.waitForSelector('.last', { state: 'detached' });
     expect(await heldOf(desk.store, 'no keys')).toBeNull();
     await page.click('#keys');
-  }, 60_000);
+  }, 300_000);
 
   it('opens no link that is old, altered or used', async () => {
     const link = server.linkFor('once');
@@ -139,7 +139,7 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
     expect(await say(link)).toContain('too old');
     desk.setNow(Date.UTC(2026, 4, 6));
     watched.troubles.length = 0;
-  }, 60_000);
+  }, 300_000);
 
   it('runs, fetches and settles nothing that hostile mail asks for', async () => {
     await putHostileMail(desk.store);
@@ -148,7 +148,7 @@ describe.runIf(hasChromium)('the page for held messages in a browser', () => {
     await expectHostileMailTame(page, server.origin);
     expect(await heldOf(desk.store, 'brave')).toBeNull();
     await takeHostileMail(desk.store);
-  }, 120_000);
+  }, 300_000);
 
   it(`settles ${settled} messages by keyboard, which folds exactly ${settled} and makes the next ${next} better`, async () => {
     const truth = new Map(
