@@ -189,7 +189,7 @@ export const bounds = {
   ledgerJsonBytesMax: 8 * 1024 * 1024,
   /** Ids of absorbed segments, 23 bytes each: one batch a minute for five years. */
   absorbedBytesMax: 64 * 1024 * 1024,
-  /** Bases, tables and segments are read whole; a base of a million confirmations takes a tenth of it. */
+  /** Bases, tables and segments are read whole; a base of a million short messages takes a sixth of it. */
   modelBytesMax: 512 * 1024 * 1024,
   /** Messages drawn from the histories for fitting: enough for stable exponents, a bounded night's work. */
   fitSampleMax: 2_000,

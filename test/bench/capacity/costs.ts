@@ -17,10 +17,10 @@ export const costs: Costs = {
   // Assumed: two requests of 30 ms; half of the turns are lost to each other.
   commitSeconds: 0.06,
   commitShare: 0.5,
-  // Measured by test/bench/speed at 10,000 and 30,000 confirmations of 300 tokens: 9.56 and 12.50 s of processor time, 393 and
-  // 532 MB at the peak. (12.50 - 9.56) / 20,000 = 0.000147 s; (532 - 393) / 20,000 = 0.007 MB. Carried on in a straight line, which
-  // overstates: tokens come again, cells grew by the 0.82th power of the confirmations.
+  // Measured by test/bench/speed at 100,000 and 1,000,000 confirmations of 150 tokens, a day of them in segments: 16.3 and 55.5 s
+  // of processor time, 231 and 346 MB at the peak. (55.5 - 16.3) / 900,000 = 0.0000436 s; (346 - 231) / 900,000 = 0.000128 MB.
+  // Carried on in a straight line, which overstates: tokens come again, cells grew by the 0.82th power of the confirmations.
   // Assumed besides: 0.1 s for each listing of 1,000 histories.
-  compactSeconds: { fixed: 8.1, perConfirmation: 0.000147 + 0.0001 },
-  compactMb: { fixed: 323, perConfirmation: 0.007 },
+  compactSeconds: { fixed: 11.9, perConfirmation: 0.0000436 + 0.0001 },
+  compactMb: { fixed: 218, perConfirmation: 0.000128 },
 };
