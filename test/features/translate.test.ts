@@ -54,7 +54,9 @@ describe('features carried over to another schema', () => {
   it('are refused when tokens are drawn otherwise, or when they are not of the schema given', () => {
     const features = old.extract(mailOf());
     const [first, ...rest] = fresh.schema.regions;
-    expect(translateFeatures(features, old.schema, { ...fresh.schema, version: fresh.schema.version + 1 })).toBeNull();
+    expect(
+      translateFeatures(features, old.schema, { ...fresh.schema, version: fresh.schema.version + 1 }),
+    ).toBeNull();
     expect(translateFeatures(features, old.schema, { ...fresh.schema, regions: rest })).toBeNull();
     expect(
       translateFeatures(features, old.schema, {
