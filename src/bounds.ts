@@ -19,6 +19,8 @@ export const bounds = {
   droppedSeenMin: 5,
   /** Messages of a queue before and since that drift is looked for in: fewer show it only when it is plain to everybody. */
   driftMessagesMin: 10,
+  /** Messages of a queue that hold a token before it can tell of drift: rarer ones are new in any week. */
+  driftSeenMin: 4,
   /** Tokens named for each finding of drift: enough to tell what happened. */
   driftTokensMax: 10,
   /** Of messages that hardly differ, under one queue in one week, this many count for routing: enough to learn them by, too few to

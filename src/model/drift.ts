@@ -30,6 +30,8 @@ const priorMessages = 1;
  *
  *      log factor = Σ_t log(0.99 + 0.01 · B(earlier)·B(recent)/B(both))
  *
+ *  summed over the tokens that at least `driftSeenMin` of the queue's messages hold: names, numbers and rare words are always new,
+ *  in every week, and thousands of them, a little each, would outweigh everything.
  *  Queues with fewer than `driftMessagesMin` messages on either side are left out. Largest first. O(cells).
  *  Bayes factors and their scale: Kass and Raftery, JASA 90 (1995), section 3. */
 export function findDrift(counts: CountsView, recentEpochs: number): Drift[] {
@@ -68,7 +70,10 @@ export function findDrift(counts: CountsView, recentEpochs: number): Drift[] {
         }
         for (let i = 0; i < length; i++) {
           const k = touched[i];
-          const { factor, share } = factorOf(k, earlier[k], recent[k], seen);
+          const isTelling = earlier[k] + recent[k] >= bounds.driftSeenMin;
+          const { factor, share } = isTelling
+            ? factorOf(k, earlier[k], recent[k], seen)
+            : { factor: 0, share: 0 };
           logFactor[k] += share;
           if (factor > weakest[k]) {
             const hasRisen = recent[k] * messages[k][0] > earlier[k] * messages[k][1];

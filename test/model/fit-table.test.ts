@@ -306,6 +306,20 @@ describe('drift', () => {
     expect(first.tokens[0]).toMatchObject({ token: 777_777, hasRisen: true });
   });
 
+  test('names and numbers that are new in every message are none', () => {
+    let next = 1_000_000;
+    const named = steady.map((m) => ({
+      ...m,
+      features: {
+        ...m.features,
+        regions: m.features.regions.map((tokens, g) =>
+          g === 1 ? Float64Array.from([...tokens, next++, next++, next++]) : tokens,
+        ),
+      },
+    }));
+    for (const { logFactor } of findDrift(countsOf(named), 2)) expect(logFactor).toBeLessThan(1);
+  });
+
   test('queues with few messages on either side are left out', () => {
     expect(findDrift(countsOf(invent(40, 50, 0.5, 2900)), 2)).toEqual([]);
   });
