@@ -16,7 +16,7 @@ import type { ServedTable } from './served-table.ts';
 
 /** A table of few queues packs its tokens (see codec-counts), most of which stand in one queue, once, and would take 5 bytes to say
  *  so. With more queues than these there are more cells to share a token's bytes, and a table loads faster without. */
-const packedQueuesMax = 8;
+const packedQueuesMax = 4;
 
 /** A served table as bytes: reference epoch, half-life, vocabulary, pruned tokens, fit as JSON, counts, bursts. Canonical. */
 export function encodeTable(table: ServedTable): Uint8Array {

@@ -65,7 +65,7 @@ describe('encode, then decode, is the identity', () => {
     );
   });
 
-  test('of a served table in the first layout, to which tables of up to 8 queues were written otherwise', () => {
+  test('of a served table in the first layout, to which tables of few queues were written otherwise', () => {
     // What this version of the project wrote before cells were packed, for these three messages.
     const bytes = Buffer.from(
       '545002015601000000112233445566aadf160000000000000000020200000000c9017b2276657273696f6e223a312c22626c6f636b73223a5b5d2c22' +
