@@ -6,7 +6,7 @@ import type { Entry } from '../model/counts.ts';
 import { keys } from '../store/keys.ts';
 import { createAbsorbedReader, type HasAbsorbed } from './absorbed.ts';
 import { commit, readManifest } from './commit.ts';
-import { lastSegmentOf, type Settled, type Stored, settle } from './history.ts';
+import { isSameColumn, lastSegmentOf, type Settled, type Stored, settle } from './history.ts';
 import { editHistory, historyKey, type ReadHistory, readHistory } from './history-store.ts';
 import { newId } from './ids.ts';
 import { landingOf, openAmong } from './landing.ts';
@@ -72,6 +72,14 @@ function isHopeless(landing: Landing): boolean {
   return landing.kind === 'landed' || lastingFaults.has(landing.fault.code) || isLasting(landing.fault);
 }
 
+const noneAbsorbed: HasAbsorbed = () => false;
+
+/** Whether only the list of absorbed segments says what became of a history's last segment. */
+function needsAbsorbed(stored: Stored | null, manifest: Manifest): boolean {
+  const last = lastSegmentOf(stored);
+  return last !== null && !isNamed(manifest, last);
+}
+
 interface Opened {
   readonly work: Work;
   readonly read: ReadHistory;
@@ -135,11 +143,11 @@ class Round {
     return opened.filter((one) => one !== null);
   }
 
-  /** Reads the list of absorbed segments only when a history names a segment that is not beside the base. What turns up later
-   *  than that looks open, and is settled by the next round. */
-  async #absorbedFor(opened: readonly Opened[], manifest: Manifest): Promise<HasAbsorbed> {
-    const lasts = opened.flatMap(({ read }) => lastSegmentOf(read.stored) ?? []);
-    return lasts.some((id) => !isNamed(manifest, id)) ? this.#absorbedOf(manifest) : () => false;
+  /** Reads the list of absorbed segments only when a history names a segment that is not beside the base; null: none does. */
+  async #absorbedFor(opened: readonly Opened[], manifest: Manifest): Promise<HasAbsorbed | null> {
+    return opened.some(({ read }) => needsAbsorbed(read.stored, manifest))
+      ? this.#absorbedOf(manifest)
+      : null;
   }
 
   /** Takes the right to land from every segment that stands in the way: void before takeover. What turns out to have landed
@@ -151,7 +159,7 @@ class Round {
     const hasAbsorbed = await this.#absorbedFor(opened, first);
     const inTheWay = new Set<string>();
     const ready = opened.filter(({ work, read }) => {
-      const blocking = settle(read.stored, first, hasAbsorbed, null).open?.segment;
+      const blocking = settle(read.stored, first, hasAbsorbed ?? noneAbsorbed, null).open?.segment;
       if (blocking === undefined) return true;
       const isYoung = Math.abs(ageMs(blocking, this.#world.nowMs())) < this.#options.patienceMs;
       if (isYoung && !this.#own.has(blocking)) {
@@ -179,11 +187,15 @@ class Round {
     return { manifest: first, ready: [] };
   }
 
-  async #write({ work, read }: Opened, manifest: Manifest, hasAbsorbed: HasAbsorbed): Promise<void> {
+  async #write({ work, read }: Opened, manifest: Manifest, hasAbsorbed: HasAbsorbed | null): Promise<void> {
     if (this.#abandonedFor !== null) return;
     try {
       const edited = await editHistory(this.#world, work.message, read, (stored) => {
-        const settled = settle(stored, manifest, hasAbsorbed, this.#segment);
+        // Written by another since it was opened: without the list, what a compaction took in looks void. The next round reads it.
+        const isOwn = lastSegmentOf(stored) === this.#segment;
+        if (hasAbsorbed === null && !isOwn && needsAbsorbed(stored, manifest))
+          return { next: null, value: null };
+        const settled = settle(stored, manifest, hasAbsorbed ?? noneAbsorbed, this.#segment);
         if (settled.open) return { next: null, value: null };
         const planned = this.#plan(work, stored, settled, manifest);
         return { next: planned.next, value: planned };
@@ -205,7 +217,8 @@ class Round {
       admitted.length > 0
         ? plan(work.message, stored, settled, admitted, this.#segment, this.#schema.id)
         : { next: null, move: null, answers: [] };
-    if (move) decodeFeatures(move.encoded, this.#schema, historyKey(work.message));
+    if (move && !isSameColumn(move.minus, move.plus))
+      decodeFeatures(move.encoded, this.#schema, historyKey(work.message));
     const rest = [...answers];
     return {
       next,
@@ -219,7 +232,7 @@ class Round {
     const planned = [...this.#planned];
     const entries = planned.flatMap(([work, { move }]): Entry[] => {
       const { encoded, said, minus, plus } = move as NonNullable<Plan['move']>;
-      if (minus === null && plus === null) return [];
+      if (isSameColumn(minus, plus)) return [];
       return [
         { features: decodeFeatures(encoded, this.#schema, historyKey(work.message)), said, minus, plus },
       ];

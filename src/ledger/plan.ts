@@ -57,7 +57,7 @@ export interface Move {
 export interface Plan {
   /** The history to write; null: it is right as it is. */
   readonly next: Stored | null;
-  /** What the segment must hold for this message; null: nothing. */
+  /** What the segment must hold for this message: nothing when it leads from a column to the same; null: it needs no segment. */
   readonly move: Move | null;
   readonly answers: readonly Answer[];
 }
@@ -95,6 +95,8 @@ class Draft {
   #isErasing: boolean;
   readonly #landed: readonly Placement[];
   readonly #last: Placement | null;
+  /** When it was last placed, also in vain: what takes over an undo or an erasure keeps its time. */
+  readonly #placedAt: string;
   #erasedAt: string;
   #undoneAt: string | null = null;
 
@@ -112,7 +114,8 @@ class Draft {
     this.#landed = Object.hasOwn(this.#features, schema) ? settled.landed : [];
     this.#last = this.#landed.at(-1) ?? null;
     this.#isErasing = stored?.isErasing ?? false;
-    this.#erasedAt = stored?.placements.at(-1)?.at ?? '';
+    this.#placedAt = stored?.placements.at(-1)?.at ?? '';
+    this.#erasedAt = this.#placedAt;
   }
 
   carryOut(request: Request): Answer {
@@ -164,7 +167,9 @@ class Draft {
     // Before its features go, an erasure has a segment of its own that landed, also where nothing is to be subtracted: from
     // then on no restore can bring the message back.
     const isErased = this.#isErasing && (this.#last === null || isErasure(this.#last));
-    const isMoved = this.#isErasing ? !isErased : !isSameColumn(minus, plus);
+    // So has what takes back: a confirmation that was outranked changes no count, yet a restore to before must bring it back.
+    const takesBack = this.#confirmations.some((c) => c.undone === unstamped);
+    const isMoved = this.#isErasing ? !isErased : takesBack || !isSameColumn(minus, plus);
     // Without a move, what is new is accounted for by the placement that stands already.
     const stamp = isMoved ? segment : (this.#last?.segment ?? unstamped);
     const confirmations = this.#confirmations.map((c) => ({
@@ -204,7 +209,7 @@ class Draft {
   #placement(top: Recorded | null, segment: string): Placement {
     if (top !== null) return { queue: top.queue, by: top.by, at: top.at, segment };
     if (this.#isErasing) return { queue: null, by: erase, at: this.#erasedAt, segment };
-    return { queue: null, by: 'undo', at: this.#undoneAt ?? this.#last?.at ?? '', segment };
+    return { queue: null, by: 'undo', at: this.#undoneAt ?? this.#placedAt, segment };
   }
 
   #tombstone(stored: History | null): Stored {

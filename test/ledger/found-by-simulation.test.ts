@@ -193,4 +193,47 @@ describe('what the simulation found once stays mended:', () => {
       messages: 3,
     });
   });
+
+  it('a fold that read nothing of a message long ago sees that a compaction took it in since', async () => {
+    const inner = createMemoryStore();
+    const [world, other] = [testWorld(1, inner), testWorld(2, inner)];
+    let isFirst = true;
+    const store: Store = {
+      ...inner,
+      async get(key, options) {
+        // m1 is read before, and has no history yet; m2 after, and stands in a segment beside the base.
+        if (key === 'histories/m2.json' && isFirst) {
+          isFirst = false;
+          await fold(other, claim('m1', 'billing'));
+          await compact(other, desk, schema);
+          await inner.put('model/segments/0mm8eww00-000000000000', Buffer.from('an orphan: the floor rises'));
+          other.clock.ms += bounds.horizonMs + 2 * dayMs;
+          await compact(other, desk, schema);
+          await fold(other, claim('m2', 'billing'));
+          other.clock.ms += 3_600_000;
+          world.clock.ms = other.clock.ms;
+        }
+        return inner.get(key, options);
+      },
+    };
+    await fold({ ...world, store }, claim('m1', 'leaks', 1), claim('m2', 'leaks', 1));
+    expect(isFirst).toBe(false);
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'leaks', m2: 'leaks' });
+    expect(await recount(world, desk, schema)).toMatchObject({ fault: null, differences: [] });
+  });
+
+  it('a restore brings back a confirmation that was taken back when it was outranked', async () => {
+    const world = testWorld();
+    await fold(world, claim('m1', 'leaks', 5, 'bob'), claim('m2', 'leaks', 0, 'bob'));
+    await fold(world, claim('m1', 'billing', 1, 'ann'));
+    const scope = { sinceMs: 0, untilMs: world.clock.ms + dayMs };
+    expect(await undoConfirmations(world, schema, { by: 'ann', ...scope })).toMatchObject({
+      confirmations: 1,
+    });
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'leaks', m2: 'leaks' });
+    expect(await restoreVersion(world, desk, schema, 1)).toMatchObject({ kind: 'restored' });
+    await undoConfirmations(world, schema, { by: 'bob', ...scope });
+    expect(await standings(world, ['m1', 'm2'])).toEqual({ m1: 'billing' });
+    expect(await recount(world, desk, schema)).toMatchObject({ fault: null, differences: [] });
+  });
 });
