@@ -144,11 +144,12 @@ const nothingSettled: Settled = {
 };
 
 /** Reads a history by a manifest: what a restore took back is taken back, what is void is left out.
- *  `own`: the caller's uncommitted segment, which counts as void. `hasAbsorbed`: whether a segment is in the base. */
+ *  `own`: the caller's uncommitted segment, which counts as void. `hasAbsorbed`: whether a segment is in the base; null: not
+ *  known, and then nothing is known to be void either, since what was absorbed may lie below the floor. */
 export function settle(
   stored: Stored | null,
   manifest: Manifest,
-  hasAbsorbed: (segment: string) => boolean,
+  hasAbsorbed: ((segment: string) => boolean) | null,
   own: string | null,
 ): Settled {
   if (stored === null || isTombstone(stored)) return nothingSettled;
@@ -165,8 +166,9 @@ export function settle(
   for (const placement of stored.placements) {
     const isLast = placement === stored.placements.at(-1);
     if (dead.has(placement.segment)) continue;
-    if (!isLast || isLanded(manifest, hasAbsorbed, placement.segment)) landed.push(placement);
-    else if (placement.segment === own || isVoid(manifest, placement.segment)) inVain.add(placement.segment);
+    const { segment } = placement;
+    if (!isLast || isLanded(manifest, hasAbsorbed, segment)) landed.push(placement);
+    else if (segment === own || (hasAbsorbed !== null && isVoid(manifest, segment))) inVain.add(segment);
     else open = placement;
   }
   const isChanged =
@@ -177,10 +179,10 @@ export function settle(
 
 export function isLanded(
   manifest: Manifest,
-  hasAbsorbed: (segment: string) => boolean,
+  hasAbsorbed: ((segment: string) => boolean) | null,
   segment: string,
 ): boolean {
-  return manifest.segments.some((s) => s.id === segment) || hasAbsorbed(segment);
+  return manifest.segments.some((s) => s.id === segment) || (hasAbsorbed?.(segment) ?? false);
 }
 
 /** Where the message stands in the counts of one manifest, whatever happened since. */

@@ -72,14 +72,6 @@ function isHopeless(landing: Landing): boolean {
   return landing.kind === 'landed' || lastingFaults.has(landing.fault.code) || isLasting(landing.fault);
 }
 
-const noneAbsorbed: HasAbsorbed = () => false;
-
-/** Whether only the list of absorbed segments says what became of a history's last segment. */
-function needsAbsorbed(stored: Stored | null, manifest: Manifest): boolean {
-  const last = lastSegmentOf(stored);
-  return last !== null && !isNamed(manifest, last);
-}
-
 interface Opened {
   readonly work: Work;
   readonly read: ReadHistory;
@@ -145,9 +137,8 @@ class Round {
 
   /** Reads the list of absorbed segments only when a history names a segment that is not beside the base; null: none does. */
   async #absorbedFor(opened: readonly Opened[], manifest: Manifest): Promise<HasAbsorbed | null> {
-    return opened.some(({ read }) => needsAbsorbed(read.stored, manifest))
-      ? this.#absorbedOf(manifest)
-      : null;
+    const lasts = opened.flatMap(({ read }) => lastSegmentOf(read.stored) ?? []);
+    return lasts.some((id) => !isNamed(manifest, id)) ? this.#absorbedOf(manifest) : null;
   }
 
   /** Takes the right to land from every segment that stands in the way: void before takeover. What turns out to have landed
@@ -159,7 +150,7 @@ class Round {
     const hasAbsorbed = await this.#absorbedFor(opened, first);
     const inTheWay = new Set<string>();
     const ready = opened.filter(({ work, read }) => {
-      const blocking = settle(read.stored, first, hasAbsorbed ?? noneAbsorbed, null).open?.segment;
+      const blocking = settle(read.stored, first, hasAbsorbed, null).open?.segment;
       if (blocking === undefined) return true;
       const isYoung = Math.abs(ageMs(blocking, this.#world.nowMs())) < this.#options.patienceMs;
       if (isYoung && !this.#own.has(blocking)) {
@@ -191,11 +182,8 @@ class Round {
     if (this.#abandonedFor !== null) return;
     try {
       const edited = await editHistory(this.#world, work.message, read, (stored) => {
-        // Written by another since it was opened: without the list, what a compaction took in looks void. The next round reads it.
-        const isOwn = lastSegmentOf(stored) === this.#segment;
-        if (hasAbsorbed === null && !isOwn && needsAbsorbed(stored, manifest))
-          return { next: null, value: null };
-        const settled = settle(stored, manifest, hasAbsorbed ?? noneAbsorbed, this.#segment);
+        // Open also where another wrote it since and only the list of absorbed segments tells: the next round reads it.
+        const settled = settle(stored, manifest, hasAbsorbed, this.#segment);
         if (settled.open) return { next: null, value: null };
         const planned = this.#plan(work, stored, settled, manifest);
         return { next: planned.next, value: planned };
