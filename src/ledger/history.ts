@@ -118,10 +118,6 @@ export function columnOf(step: { readonly queue: string | null; readonly at: str
     : { queue: step.queue, epoch: epochAt(Date.parse(step.at)) };
 }
 
-export function isSameColumn(a: Column | null, b: Column | null): boolean {
-  return a === b || (a !== null && b !== null && a.queue === b.queue && a.epoch === b.epoch);
-}
-
 /** A history as one manifest reads it. */
 export interface Settled {
   readonly confirmations: readonly Recorded[];

@@ -2,11 +2,11 @@ import { bounds } from '../bounds.ts';
 import type { Fault } from '../errors.ts';
 import type { Features } from '../features/schema.ts';
 import type { Column, Said } from '../model/counts.ts';
+import { isSameColumn } from '../model/fold.ts';
 import {
   columnOf,
   type History,
   isSame,
-  isSameColumn,
   isTombstone,
   outranks,
   type Placement,

@@ -1,7 +1,8 @@
+import { createHash } from 'node:crypto';
 import { bounds } from '../bounds.ts';
 import type { Features, Schema } from '../features/schema.ts';
 import type { Column, Counts, Entry } from './counts.ts';
-import { emptyCounts, foldEntries, nameOf } from './fold.ts';
+import { emptyCounts, foldEntries, isSameColumn, nameOf } from './fold.ts';
 
 /** Messages that hardly differ, confirmed under one queue in one week: somebody's burst, or an alert that repeats. */
 export interface BurstGroup {
@@ -86,7 +87,7 @@ export function createBurstGuard(before: Bursts): BurstGuard {
   const find = (column: Column, { regions }: Features): OpenGroup | null => {
     for (const key of keysOf(keyed, regions))
       for (const group of byKey.get(key) ?? [])
-        if (isSame(group.column, column) && likeness(group.regions, regions) >= bounds.burstLikenessMin)
+        if (isSameColumn(group.column, column) && likeness(group.regions, regions) >= bounds.burstLikenessMin)
           return group;
     return null;
   };
@@ -169,10 +170,6 @@ function keysOf(keyed: readonly number[], regions: readonly Float64Array[]): num
   return keys;
 }
 
-function isSame(a: Column, b: Column): boolean {
-  return a.queue === b.queue && a.epoch === b.epoch;
-}
-
 /** Tokens in common over tokens in all: Jaccard's coefficient. */
 function likeness(a: readonly Float64Array[], b: readonly Float64Array[]): number {
   let common = 0;
@@ -194,22 +191,9 @@ function sizeOf(regions: readonly Float64Array[]): number {
   return regions.reduce((sum, tokens) => sum + tokens.length, 0);
 }
 
-/** What a message holds, and where it stands: slots and tokens hashed to 64 bits (FNV-1a over their numbers, twice). */
+/** What a message holds, and where it stands: 64 bits of the SHA-256 of slots and tokens, with the column. */
 export function memberKey({ slots, regions }: Features, column: Column): string {
-  let [a, b] = [0x811c9dc5, 0x9e3779b9];
-  const mix = (n: number) => {
-    a = Math.imul(a ^ n, 0x01000193);
-    b = Math.imul(b ^ n, 0x85ebca6b);
-    b ^= b >>> 15;
-  };
-  for (const value of slots) mix(value);
-  for (const tokens of regions) {
-    mix(tokens.length);
-    for (const token of tokens) {
-      mix((token % 2 ** 32) | 0);
-      mix(Math.floor(token / 2 ** 32));
-    }
-  }
-  const hex = (n: number) => (n >>> 0).toString(16).padStart(8, '0');
-  return `${hex(a)}${hex(b)} ${nameOf(column)}`;
+  const hash = createHash('sha256').update(Uint32Array.from([...slots, ...regions.map((t) => t.length)]));
+  for (const tokens of regions) hash.update(tokens);
+  return `${hash.digest('hex').slice(0, 16)} ${nameOf(column)}`;
 }

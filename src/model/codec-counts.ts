@@ -123,15 +123,24 @@ function writeRegion(out: ByteWriter, region: RegionCounts, scale: number, isPac
   }
   out.varint(region.count.length);
   for (let i = 0; i < region.tokens.length; i++) {
-    if (isSingle(i)) continue;
-    let next = 0;
-    for (let p = region.start[i]; p < region.start[i + 1]; p++) {
-      const isLast = p + 1 === region.start[i + 1];
-      const count = region.count[p] * scale;
-      out.varint((region.column[p] - next) * 4 + (isLast ? 2 : 0) + (count === 1 ? 0 : 1));
-      if (count !== 1) out.varint(count - 2);
-      next = region.column[p] + 1;
-    }
+    if (!isSingle(i)) writeRow(out, region, region.start[i], region.start[i + 1], scale);
+  }
+}
+
+/** The cells of one token, which stand at `from` to `end`, ascending by column. */
+export function writeRow(
+  out: ByteWriter,
+  { column, count: counts }: { readonly column: ArrayLike<number>; readonly count: ArrayLike<number> },
+  from: number,
+  end: number,
+  scale: number,
+): void {
+  let next = 0;
+  for (let p = from; p < end; p++) {
+    const count = counts[p] * scale;
+    out.varint((column[p] - next) * 4 + (p + 1 === end ? 2 : 0) + (count === 1 ? 0 : 1));
+    if (count !== 1) out.varint(count - 2);
+    next = column[p] + 1;
   }
 }
 

@@ -1,6 +1,6 @@
 import { tokenHex } from '../features/schema.ts';
 import type { CellDifference, Column, CountsView } from './counts.ts';
-import { nameOf } from './fold.ts';
+import { isSameColumn, nameOf } from './fold.ts';
 import { type Rows, rowsOf } from './rows.ts';
 
 /** Where two tables of one schema differ, cell by cell, in the order of the table; at most `max` cells, so that two
@@ -48,7 +48,8 @@ function diffRegion(
   note: (token: number, column: Column, left: number, right: number) => boolean,
 ): void {
   const [left, right] = [rowsOf(a.regions[g]), rowsOf(b.regions[g])];
-  const same = a.columns.length === b.columns.length && a.columns.every((c, i) => isSame(c, b.columns[i]));
+  const same =
+    a.columns.length === b.columns.length && a.columns.every((c, i) => isSameColumn(c, b.columns[i]));
   let [hasLeft, hasRight] = [left.next(), right.next()];
   while (hasLeft || hasRight) {
     const token = Math.min(hasLeft ? left.token : Infinity, hasRight ? right.token : Infinity);
@@ -64,10 +65,6 @@ function diffRegion(
     if (isMine) hasLeft = left.next();
     if (isOther) hasRight = right.next();
   }
-}
-
-function isSame(a: Column, b: Column): boolean {
-  return a.queue === b.queue && a.epoch === b.epoch;
 }
 
 function holdSame(left: Rows, right: Rows): boolean {

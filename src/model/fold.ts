@@ -247,6 +247,11 @@ export function nameOf(column: Column): string {
   return `${column.queue}@${column.epoch}`;
 }
 
+/** Null stands for no column. */
+export function isSameColumn(a: Column | null, b: Column | null): boolean {
+  return a === b || (a !== null && b !== null && a.queue === b.queue && a.epoch === b.epoch);
+}
+
 /** Distinct columns of both lists, ascending by queue (UTF-16 code units), then epoch. */
 export function unionOf(a: readonly Column[], b: readonly Column[]): Column[] {
   const distinct = new Map<string, Column>();

@@ -3,6 +3,7 @@ import { remapCounts } from './fold.ts';
 import type { Hits } from './hits.ts';
 import { Numbers } from './numbers.ts';
 import { rowCount, rowsOf } from './rows.ts';
+import { addToRow } from './sparse.ts';
 
 /** Aged counts are whole multiples of 1/weightUnit, so that they add exactly and Σ_v d = c holds exactly after ageing:
  *  every cell of a column is multiplied by the same whole number. Counts older than ten half-lives round to nothing. */
@@ -79,18 +80,7 @@ export function visitRows(
       if (k < 0) continue;
       const value = counted[p] * weight[c];
       seen += value;
-      // Nearly in order already: cells of a queue stand together.
-      let at = length;
-      while (at > 0 && queue[at - 1] > k) at--;
-      if (at > 0 && queue[at - 1] === k) {
-        count[at - 1] += value;
-        continue;
-      }
-      queue.copyWithin(at + 1, at, length);
-      count.copyWithin(at + 1, at, length);
-      queue[at] = k;
-      count[at] = value;
-      length++;
+      length = addToRow(queue, count, 0, length, k, value);
     }
     if (length === 0) continue;
     row.token = rows.token;

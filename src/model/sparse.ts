@@ -95,6 +95,29 @@ export function addArrays(
   });
 }
 
+/** Adds `value` to column `target` of the row that stands ascending at `from` to `end`; gives where the row ends then. Rows are
+ *  short and mostly filled in order: insertion keeps them sorted and adds where columns meet. */
+export function addToRow(
+  column: Uint32Array,
+  count: Float64Array,
+  from: number,
+  end: number,
+  target: number,
+  value: number,
+): number {
+  let at = end;
+  while (at > from && column[at - 1] > target) at--;
+  if (at > from && column[at - 1] === target) {
+    count[at - 1] += value;
+    return end;
+  }
+  column.copyWithin(at + 1, at, end);
+  count.copyWithin(at + 1, at, end);
+  column[at] = target;
+  count[at] = value;
+  return end + 1;
+}
+
 /** The region with every column renumbered: old column c becomes `to[c]` (-1 drops it), its counts times `weight[c]`.
  *  Columns that meet are added. Weights of zero drop the column. Rows stay ascending by the new column. */
 export function remapRegion(
@@ -115,18 +138,7 @@ export function remapRegion(
       const target = to[region.column[p]];
       const value = region.count[p] * weight[region.column[p]];
       if (target < 0 || value === 0) continue;
-      // Rows are short and mostly in order already: insertion keeps them sorted and adds where columns meet.
-      let at = cells;
-      while (at > first && column[at - 1] > target) at--;
-      if (at > first && column[at - 1] === target) {
-        count[at - 1] += value;
-        continue;
-      }
-      column.copyWithin(at + 1, at, cells);
-      count.copyWithin(at + 1, at, cells);
-      column[at] = target;
-      count[at] = value;
-      cells++;
+      cells = addToRow(column, count, first, cells, target, value);
     }
     if (cells > first) {
       tokens[held++] = region.tokens[i];

@@ -1,11 +1,11 @@
 import { TallypostError } from '../errors.ts';
 import { type Schema, tokenHex } from '../features/schema.ts';
 import { ByteWriter, createSealedWriter, sealWritten } from './bytes.ts';
-import { writeColumns } from './codec-counts.ts';
+import { writeColumns, writeRow } from './codec-counts.ts';
 import type { Column, CountsView, EncodedCounts, EncodedRegion, RegionCounts } from './counts.ts';
 import { indexOf, nameOf, schemaMismatch, unionOf } from './fold.ts';
 import { recordBands } from './record.ts';
-import { rowsOf } from './rows.ts';
+import { type Rows, rowsOf } from './rows.ts';
 import { negative } from './sparse.ts';
 
 /** Counts to be added, or to be taken out. */
@@ -136,8 +136,7 @@ function sumRegion(
   const sources = parts.map(({ counts }) => rowsOf(counts.regions[g]));
   const next = Float64Array.from(sources, (rows) => (rows.next() ? rows.token : Infinity));
   // The cells of one token: the sum so far, and where the next sum goes.
-  let sum = { column: new Int32Array(all.length), count: new Float64Array(all.length), length: 0 };
-  let more = { column: new Int32Array(all.length), count: new Float64Array(all.length), length: 0 };
+  let [sum, more] = [emptyRow(all.length), emptyRow(all.length)];
   let [previous, rows, cellsHeld] = [-1, 0, 0];
   for (;;) {
     let token = Infinity;
@@ -146,33 +145,8 @@ function sumRegion(
     sum.length = 0;
     for (let p = 0; p < next.length; p++) {
       if (next[p] !== token) continue;
-      const { column, count, from, to: end } = sources[p];
-      const place = to[p];
-      const { sign } = parts[p];
-      if (sum.length === 0) {
-        for (let i = from; i < end; i++) {
-          sum.column[sum.length] = place[column[i]];
-          sum.count[sum.length++] = sign * count[i];
-        }
-      } else {
-        let at = 0;
-        more.length = 0;
-        for (let i = from; i < end; i++) {
-          const c = place[column[i]];
-          while (at < sum.length && sum.column[at] < c) {
-            more.column[more.length] = sum.column[at];
-            more.count[more.length++] = sum.count[at++];
-          }
-          more.column[more.length] = c;
-          more.count[more.length++] =
-            at < sum.length && sum.column[at] === c ? sum.count[at++] + sign * count[i] : sign * count[i];
-        }
-        while (at < sum.length) {
-          more.column[more.length] = sum.column[at];
-          more.count[more.length++] = sum.count[at++];
-        }
-        [sum, more] = [more, sum];
-      }
+      addRow(more, sum, sources[p], to[p], parts[p].sign);
+      [sum, more] = [more, sum];
       next[p] = sources[p].next() ? sources[p].token : Infinity;
     }
     let held = 0;
@@ -188,13 +162,7 @@ function sumRegion(
     if (held === 0) continue;
     tokens.varint(token - previous - 1);
     previous = token;
-    let free = 0;
-    for (let i = 0; i < held; i++) {
-      const count = sum.count[i];
-      cells.varint((sum.column[i] - free) * 4 + (i + 1 === held ? 2 : 0) + (count === 1 ? 0 : 1));
-      if (count !== 1) cells.varint(count - 2);
-      free = sum.column[i] + 1;
-    }
+    writeRow(cells, sum, 0, held, 1);
     rows++;
     cellsHeld += held;
   }
@@ -213,6 +181,43 @@ function sumRegion(
   const [endAt, columns] = [out.length - base, head.columns.length];
   const bytes = new Uint8Array(0);
   return { total: totals, rows, cells: cellsHeld, columns, bytes, tokensAt, cellsAt, endAt, place };
+}
+
+/** Cells of one token, ascending by column. */
+interface Row {
+  readonly column: Int32Array;
+  readonly count: Float64Array;
+  length: number;
+}
+
+function emptyRow(columns: number): Row {
+  return { column: new Int32Array(columns), count: new Float64Array(columns), length: 0 };
+}
+
+/** Makes `out` the sum of `row` and `sign` times the present token of `rows`, whose column c is `to[c]`. */
+function addRow(
+  out: Row,
+  row: Row,
+  { column, count, from, to: end }: Rows,
+  to: Int32Array,
+  sign: 1 | -1,
+): void {
+  let [at, length] = [0, 0];
+  for (let i = from; i < end; i++) {
+    const c = to[column[i]];
+    for (; at < row.length && row.column[at] < c; length++) {
+      out.column[length] = row.column[at];
+      out.count[length] = row.count[at++];
+    }
+    const before = at < row.length && row.column[at] === c ? row.count[at++] : 0;
+    out.column[length] = c;
+    out.count[length++] = before + sign * count[i];
+  }
+  for (; at < row.length; length++) {
+    out.column[length] = row.column[at];
+    out.count[length] = row.count[at++];
+  }
+  out.length = length;
 }
 
 /** A column whose last message was taken out must be empty altogether; otherwise something was taken out of the wrong one. */
