@@ -2,7 +2,7 @@ import { randomUUID } from 'node:crypto';
 import { createServer, type IncomingMessage, type ServerResponse } from 'node:http';
 import type { AddressInfo } from 'node:net';
 import { bounds } from '../bounds.ts';
-import type { UrlEvent, UrlResult } from '../handlers/intake.ts';
+import type { UrlEvent, UrlResult } from '../handlers/url-event.ts';
 
 export interface IntakeServer {
   /** With a slash at its end, as the function's URL has one. */

@@ -2,22 +2,7 @@ import { answerRequest, type IntakeDesk, type IntakeWorld } from '../intake/answ
 import { replyProblem } from '../intake/reply.ts';
 import type { IntakeRequest } from '../intake/request.ts';
 import type { LogLine } from './handler-deps.ts';
-
-/** A function URL's event, payload format 2.0: the members that are read.
- *  Source: AWS Lambda Developer Guide, "Invoking Lambda function URLs", request payload format. */
-export interface UrlEvent {
-  readonly rawPath?: string;
-  readonly headers?: Readonly<Record<string, string | undefined>>;
-  readonly body?: string;
-  readonly isBase64Encoded?: boolean;
-  readonly requestContext: { readonly requestId?: string; readonly http: { readonly method: string } };
-}
-
-export interface UrlResult {
-  readonly statusCode: number;
-  readonly headers: Readonly<Record<string, string>>;
-  readonly body: string;
-}
+import { bodyOf, headersOf, methodOf, type UrlEvent, type UrlResult } from './url-event.ts';
 
 export interface IntakeDeps {
   readonly world: IntakeWorld;
@@ -27,18 +12,13 @@ export interface IntakeDeps {
 }
 
 function requestOf(event: UrlEvent): IntakeRequest | null {
-  const headers: Record<string, string> = {};
-  for (const [name, value] of Object.entries(event.headers ?? {})) {
-    if (value !== undefined) headers[name.toLowerCase()] = value;
-  }
   try {
     const path = (event.rawPath ?? '/').split('/').filter(Boolean).map(decodeURIComponent);
-    const body = Buffer.from(event.body ?? '', event.isBase64Encoded === true ? 'base64' : 'utf8');
     return {
-      method: event.requestContext.http.method.toUpperCase(),
+      method: methodOf(event),
       path,
-      headers,
-      body,
+      headers: headersOf(event),
+      body: bodyOf(event),
       trace: traceOf(event),
     };
   } catch {

@@ -11,10 +11,10 @@ import {
 import { ticketKeyOf } from '../settle/ticket.ts';
 import { createMarkedWaitingList } from '../settle/waiting-marks.ts';
 import type { HandlerDeps } from './handler-deps.ts';
-import type { UrlEvent, UrlResult } from './intake.ts';
 import { faultMembers } from './log-fault.ts';
 import { readMessage } from './read-message.ts';
 import { createBenchOpener } from './settle-bench.ts';
+import { bodyOf, headersOf, methodOf, type UrlEvent, type UrlResult } from './url-event.ts';
 
 /** A request to the page by its function URL, payload format 2.0: the members that are read beside the intake's.
  *  Source: AWS Lambda Developer Guide, "Invoking Lambda function URLs". */
@@ -45,23 +45,21 @@ export function createSettleHandler(
   const waiting = createMarkedWaitingList(deps.world);
   // The confirm function hears of a drop from the bucket.
   const onDropped = async () => {};
-  const apps = new Map<string, SettleApp>();
+  // A function has one address.
+  let last: { readonly origin: string; readonly app: SettleApp } | null = null;
   const appAt = (origin: string): SettleApp => {
-    const app =
-      apps.get(origin) ??
-      createSettleApp({
-        world: deps.world,
-        openBench,
-        readMessage: async (key) => (await readMessage(deps.world, key, () => true))?.message ?? null,
-        waiting,
-        ticketKey: ticketKeyOf(secret, origin),
-        origin,
-        base: '',
-        onDropped,
-      });
-    // One address a function; a map of them would grow with whatever a test says.
-    apps.clear();
-    apps.set(origin, app);
+    if (last?.origin === origin) return last.app;
+    const app = createSettleApp({
+      world: deps.world,
+      openBench,
+      readMessage: async (key) => (await readMessage(deps.world, key, () => true))?.message ?? null,
+      waiting,
+      ticketKey: ticketKeyOf(secret, origin),
+      origin,
+      base: '',
+      onDropped,
+    });
+    last = { origin, app };
     return app;
   };
 
@@ -109,15 +107,14 @@ function isRequest(event: unknown): event is SettleUrlEvent {
 }
 
 function requestOf(event: SettleUrlEvent): SettleRequest {
-  const headers: Record<string, string | undefined> = {};
-  for (const [name, value] of Object.entries(event.headers ?? {})) headers[name.toLowerCase()] = value;
+  const headers = headersOf(event);
   if (event.cookies !== undefined) headers.cookie = event.cookies.join('; ');
   return {
-    method: event.requestContext.http.method.toUpperCase(),
+    method: methodOf(event),
     path: event.rawPath ?? '/',
     query: new URLSearchParams(event.rawQueryString ?? ''),
     headers,
-    body: Buffer.from(event.body ?? '', event.isBase64Encoded === true ? 'base64' : 'utf8'),
+    body: bodyOf(event),
   };
 }
 

@@ -30,21 +30,30 @@ export interface Workbench extends OpenDesk {
   readonly segments?: number;
 }
 
+/** Loads the model as last committed; keeps it, so that one conditional read is all when nothing changed. */
+export function createModelLoader({ world }: HandlerDeps): (open: OpenDesk) => Promise<LoadedModel> {
+  let cached: { readonly schema: string; readonly model: LoadedModel } | null = null;
+  return async ({ desk, extractor: { schema } }) => {
+    const last = cached?.schema === schema.id ? cached.model : null;
+    const model = await loadModel(world, desk, schema, last);
+    cached = { schema: schema.id, model };
+    return model;
+  };
+}
+
 /** Opens the desk with the model as last committed, kept between calls: one conditional read when nothing changed.
  *  A model that is damaged, or counts otherwise than the desk's file now says, does not stop routing: what this process last
  *  routed with serves on, and without it guards still act and everything else is held. Failures of the store reject: they
  *  may pass. */
 export function createWorkbenchOpener(deps: HandlerDeps): () => Promise<Workbench> {
   const openDesk = createDeskOpener(deps);
-  let cached: { readonly schema: string; readonly model: LoadedModel } | null = null;
+  const load = createModelLoader(deps);
   let usable: Workbench | null = null;
   return async () => {
-    const { desk, extractor } = await openDesk();
-    const { schema } = extractor;
-    const last = cached?.schema === schema.id ? cached.model : null;
+    const open = await openDesk();
+    const { desk, extractor } = open;
     try {
-      const model = await loadModel(deps.world, desk, schema, last);
-      cached = { schema: schema.id, model };
+      const model = await load(open);
       const segments = model.parts.manifest.segments.length;
       const bench: Workbench = { desk: model.desk, extractor, model, segments };
       if (model.fault === null) {

@@ -1,7 +1,8 @@
 import { createHmac } from 'node:crypto';
 import { afterEach, beforeEach, describe, expect, it, vi } from 'vitest';
 import { bounds } from '../../src/bounds.ts';
-import { createIntakeHandler, type UrlEvent } from '../../src/handlers/intake.ts';
+import { createIntakeHandler } from '../../src/handlers/intake.ts';
+import type { UrlEvent } from '../../src/handlers/url-event.ts';
 import { createMemoryStore } from '../../src/store/memory.ts';
 import type { Store } from '../../src/store/store.ts';
 import { queues, settings } from './desk.ts';

@@ -2,7 +2,8 @@ import { createHmac } from 'node:crypto';
 import { readDesk } from '../../src/desk/read-desk.ts';
 import { createBackfillHandler } from '../../src/handlers/backfill.ts';
 import type { HandlerDeps, LogLine } from '../../src/handlers/handler-deps.ts';
-import { createIntakeHandler, type UrlEvent } from '../../src/handlers/intake.ts';
+import { createIntakeHandler } from '../../src/handlers/intake.ts';
+import type { UrlEvent } from '../../src/handlers/url-event.ts';
 import type { Store } from '../../src/store/store.ts';
 import { queues, settings } from './desk.ts';
 

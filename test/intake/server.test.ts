@@ -2,7 +2,7 @@ import { createConnection } from 'node:net';
 import { afterEach, describe, expect, it } from 'vitest';
 import { bounds } from '../../src/bounds.ts';
 import { type IntakeServer, startIntakeServer } from '../../src/cli/intake-server.ts';
-import type { UrlEvent } from '../../src/handlers/intake.ts';
+import type { UrlEvent } from '../../src/handlers/url-event.ts';
 import { createMemoryStore } from '../../src/store/memory.ts';
 import { open } from './requests.ts';
 

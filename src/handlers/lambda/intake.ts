@@ -1,5 +1,6 @@
-import { createIntakeHandler, type UrlEvent } from '../intake.ts';
+import { createIntakeHandler } from '../intake.ts';
 import { createIntakeDeskLoader } from '../intake-desk.ts';
+import type { UrlEvent } from '../url-event.ts';
 import { handlerFrom } from './environment.ts';
 
 /** TALLYPOST_WEBHOOK_SECRETS: secrets of the helpdesk's webhooks; may be empty. */
